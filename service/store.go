@@ -1,0 +1,190 @@
+package service
+
+import (
+	"context"
+	"errors"
+
+	"jointledger/service/ledger"
+)
+
+// The errors that a Store returns; any other error of it is a defect.
+var (
+	// ErrHeadMoved: somebody else appended first; read the head and try again.
+	ErrHeadMoved = errors.New("the ledger has moved on")
+	// ErrNotFound: there is no such row.
+	ErrNotFound = errors.New("not found")
+	// ErrUnavailable wraps every failure of the engine or of the way to it.
+	// After it an Append may have been stored or not.
+	ErrUnavailable = errors.New("the store is unavailable")
+)
+
+// Store keeps the ledger. Every method may be called from many goroutines and
+// may return ErrUnavailable.
+type Store interface {
+	// Ready reports whether the engine answers and its schema is this program's.
+	Ready(ctx context.Context) error
+	// Claim writes the log's identity where there is none yet and returns the
+	// one that stands.
+	Claim(ctx context.Context, id Identity) (Identity, error)
+
+	// Head returns size, root and checkpoint of the log.
+	Head(ctx context.Context) (Head, error)
+	// Append writes a batch in one transaction, or nothing. ErrHeadMoved when
+	// the head is not batch.Base any more.
+	Append(ctx context.Context, batch Batch) error
+	// Hashes returns stored tree hashes by their tlog index. ErrNotFound.
+	Hashes(ctx context.Context, indexes []int64) ([]ledger.Hash, error)
+	// Answered returns what was answered under each idempotency key that is
+	// known, by position in keys; nil for the others.
+	Answered(ctx context.Context, keys []IdempotencyKey) ([]*Answer, error)
+
+	// Entry returns the entry at an index, EntryByID the one with an id.
+	// ErrNotFound.
+	Entry(ctx context.Context, index int64) (Entry, error)
+	EntryByID(ctx context.Context, id string) (Entry, error)
+	// Entries calls yield for from <= index < to, in order, until it fails.
+	Entries(ctx context.Context, from, to int64, yield func(Entry) error) error
+	// About returns the sign-offs and withdrawals of each record, in order.
+	About(ctx context.Context, records []string) (map[string][]Entry, error)
+	// Records lists record entries, newest first, at most limit of those
+	// under the index before.
+	Records(ctx context.Context, filter Filter, before int64, limit int) ([]Summary, error)
+	// Latest returns the latest record of each joint, aspect and kind under
+	// exactly this part and revision.
+	Latest(ctx context.Context, part, revision string) ([]Entry, error)
+
+	// Key returns the key with this SHA-256, revoked or not. ErrNotFound.
+	Key(ctx context.Context, hash [32]byte) (Key, error)
+	// Keys lists all keys in the order of their making.
+	Keys(ctx context.Context) ([]Key, error)
+	// Touch notes that a key was used.
+	Touch(ctx context.Context, id, at string) error
+
+	// Close lets go of the engine.
+	Close() error
+}
+
+// Identity is what a log is known by; it never changes.
+type Identity struct {
+	Origin      string // the first line of its checkpoints
+	VerifierKey string // of a signed note
+}
+
+// Head is the state of the log.
+type Head struct {
+	Size       int64
+	Root       ledger.Hash
+	Checkpoint string // a signed note; empty while Size is 0
+}
+
+// Batch is what one transaction appends.
+type Batch struct {
+	Base    Head    // the head it was made on; its size and root are compared
+	Head    Head    // the head it leaves
+	Entries []Entry // dense, from index Base.Size
+	// Hashes are the tree hashes that the entries add, stored densely from
+	// the tlog index ledger.StoredHashCount(Base.Size).
+	Hashes  []ledger.Hash
+	Answers []Answer
+	Keys    []KeyChange
+}
+
+// Entry is an entry of the log as stored: its exact bytes, and columns for
+// lists and the gate that ColumnsOf makes of them.
+type Entry struct {
+	Index  int64
+	ID     string // UUIDv7
+	Type   string
+	At     string // UTC RFC 3339 with three decimals; sorts as text
+	Author string
+	Bytes  []byte // canonical
+	Leaf   ledger.Hash
+	Columns
+}
+
+// Columns repeat what an entry says, for finding it. Text is empty and Margin
+// nil where they do not apply.
+type Columns struct {
+	Subject
+	GeometryDigest string
+	Kind           string
+	Verdict        string
+	Margin         *float64
+	// Target is the record that a sign-off or withdrawal is about.
+	Target string
+	// Role is checked or approved, of a sign-off.
+	Role string
+	// Terms are the methods, materials and curve sets that a record rests on.
+	Terms []Term
+}
+
+// Term is one name that a record rests on.
+type Term struct {
+	Kind  string // method, material, curve-set
+	Value string
+}
+
+// Subject is what a record is about.
+type Subject struct {
+	Part     string `json:"part" validate:"id"`
+	Revision string `json:"revision" validate:"id"`
+	Joint    string `json:"joint" validate:"id"`
+	Aspect   string `json:"aspect,omitzero" validate:"omitempty,id"`
+}
+
+// State is what the entries about a record make of it.
+type State string
+
+// The states.
+const (
+	Recorded  State = "recorded"
+	Checked   State = "checked"
+	Approved  State = "approved"
+	Withdrawn State = "withdrawn"
+)
+
+// Filter selects records; an empty field selects all.
+type Filter struct {
+	Part, Revision, Joint, Kind, Verdict string
+	State                                State
+	Author, Method, Material, CurveSet   string
+	Since, Until                         string // At, inclusive and exclusive
+	// Latest keeps only the latest per part, revision, joint, aspect and kind.
+	Latest bool
+}
+
+// Summary is a record in a list.
+type Summary struct {
+	Entry // without Bytes and Terms
+	State State
+}
+
+// IdempotencyKey is a caller's name for one request.
+type IdempotencyKey struct {
+	Caller, Method, Path, Key string
+}
+
+// Answer remembers what a request with an idempotency key was answered: the
+// answer is made again from the entry that it appended.
+type Answer struct {
+	IdempotencyKey
+	RequestDigest [32]byte // SHA-256 of the request's body
+	Index         int64    // of the entry
+	State         State    // of the record right after, where there is one
+}
+
+// Key is an API key of a caller. The key itself is nowhere stored.
+type Key struct {
+	ID, Caller, Role string
+	Hash             [32]byte // SHA-256 of the key
+	Added            string
+	Revoked          string // empty while it stands
+	LastUsed         string // empty until then
+}
+
+// KeyChange is an added or revoked key, written with its entry.
+type KeyChange struct {
+	Add    *Key
+	Revoke string // id
+	At     string
+}

@@ -1,0 +1,332 @@
+// Package strictjson reads and writes JSON without leniency. It refuses what
+// JSON readers commonly let through: unknown, duplicate and wrongly cased
+// members, nulls, trailing data, numbers beyond float64, missing members and
+// deep nesting; and it writes the canonical form of RFC 8785.
+//
+// A struct field whose tag has omitzero is an optional member; every other
+// field is a required one.
+package strictjson
+
+import (
+	"bytes"
+	"errors"
+	"fmt"
+	"io"
+	"reflect"
+	"strconv"
+	"strings"
+	"sync"
+
+	"github.com/go-json-experiment/json"
+	"github.com/go-json-experiment/json/jsontext"
+)
+
+// MaxDepth is the deepest nesting of objects and arrays that Decode takes.
+const MaxDepth = 32
+
+// Error says where a document is not what it should be.
+type Error struct {
+	Pointer string // RFC 6901, of the member itself also where it is missing
+	Detail  string
+}
+
+func (e *Error) Error() string {
+	if e.Pointer == "" {
+		return e.Detail
+	}
+	return e.Pointer + ": " + e.Detail
+}
+
+// Words is a string type with a fixed set of values.
+type Words interface{ Words() []string }
+
+// Raw is a JSON value kept as it came.
+type Raw = jsontext.Value
+
+// Kinds of a Raw.
+const (
+	String = '"'
+	Number = '0'
+	Object = '{'
+	Array  = '['
+)
+
+// Decode reads one JSON document into a pointer. The error is an *Error.
+func Decode(data []byte, into any) error {
+	if err := inspect(data, reflect.TypeOf(into).Elem()); err != nil {
+		return err
+	}
+	if err := json.Unmarshal(data, into, json.RejectUnknownMembers(true)); err != nil {
+		return explain(err)
+	}
+	return nil
+}
+
+// Encode writes v as JSON in the order of its fields; a nil slice is [] and a
+// nil pointer null.
+func Encode(v any) ([]byte, error) { return json.Marshal(v, json.Deterministic(true)) }
+
+// Canonical writes v in the form of RFC 8785.
+func Canonical(v any) ([]byte, error) {
+	data, err := json.Marshal(v, json.Deterministic(true))
+	if err != nil {
+		return nil, err
+	}
+	value := jsontext.Value(data)
+	if err := value.Canonicalize(); err != nil {
+		return nil, err
+	}
+	return value, nil
+}
+
+// IsCanonical reports whether data is one JSON value in the form of RFC 8785.
+func IsCanonical(data []byte) bool {
+	value := jsontext.Value(bytes.Clone(data))
+	return value.Canonicalize() == nil && bytes.Equal(value, data)
+}
+
+// Either is a plain string or number, or an object in its place. Object is nil
+// for the plain form.
+type Either[A string | float64, B any] struct {
+	Plain  A
+	Object *B
+}
+
+// UnmarshalJSONFrom implements json.UnmarshalerFrom.
+func (e *Either[A, B]) UnmarshalJSONFrom(d *jsontext.Decoder) error {
+	if d.PeekKind() == Object {
+		e.Object = new(B)
+		return json.UnmarshalDecode(d, e.Object)
+	}
+	return json.UnmarshalDecode(d, &e.Plain)
+}
+
+// MarshalJSONTo implements json.MarshalerTo.
+func (e Either[A, B]) MarshalJSONTo(out *jsontext.Encoder) error {
+	if e.Object != nil {
+		return json.MarshalEncode(out, e.Object)
+	}
+	return json.MarshalEncode(out, e.Plain)
+}
+
+func (Either[A, B]) alternatives() (plain, object reflect.Type) {
+	return reflect.TypeFor[A](), reflect.TypeFor[B]()
+}
+
+type either interface {
+	alternatives() (plain, object reflect.Type)
+}
+
+// explain turns an error of the library into ours.
+func explain(err error) *Error {
+	var semantic *json.SemanticError
+	var syntactic *jsontext.SyntacticError
+	switch {
+	case errors.As(err, &syntactic):
+		detail := strings.TrimPrefix(syntactic.Err.Error(), "jsontext: ")
+		if errors.Is(err, io.ErrUnexpectedEOF) {
+			detail = "the document ends too early"
+		}
+		return &Error{string(syntactic.JSONPointer), fmt.Sprintf("not valid JSON at byte %d: %s", syntactic.ByteOffset, detail)}
+	case errors.As(err, &semantic):
+		switch {
+		case errors.Is(err, json.ErrUnknownName):
+			return &Error{string(semantic.JSONPointer), "there is no member of this name"}
+		case errors.Is(err, strconv.ErrRange):
+			return &Error{string(semantic.JSONPointer), "the number is out of range"}
+		}
+		return &Error{string(semantic.JSONPointer), "must be " + wanted(semantic.GoType)}
+	case errors.Is(err, io.ErrUnexpectedEOF), errors.Is(err, io.EOF):
+		return &Error{"", "the document ends too early"}
+	}
+	return &Error{"", err.Error()}
+}
+
+// wanted names a Go type in JSON's words.
+func wanted(t reflect.Type) string {
+	if t == nil {
+		return "of another type"
+	}
+	for t.Kind() == reflect.Pointer {
+		t = t.Elem()
+	}
+	if e, ok := reflect.Zero(t).Interface().(either); ok {
+		plain, _ := e.alternatives()
+		return wanted(plain) + " or an object"
+	}
+	switch t.Kind() {
+	case reflect.String:
+		return "a string"
+	case reflect.Float64:
+		return "a number"
+	case reflect.Int, reflect.Int64:
+		return "a whole number"
+	case reflect.Bool:
+		return "true or false"
+	case reflect.Slice:
+		return "an array"
+	case reflect.Array:
+		return fmt.Sprintf("an array of %d", t.Len())
+	case reflect.Struct, reflect.Map:
+		return "an object"
+	}
+	return "of another type"
+}
+
+// members is what inspect knows of a struct type.
+type members struct {
+	types    map[string]reflect.Type
+	required []string
+}
+
+var known sync.Map // reflect.Type → *members
+
+func membersOf(t reflect.Type) *members {
+	if m, ok := known.Load(t); ok {
+		return m.(*members)
+	}
+	m := &members{types: map[string]reflect.Type{}}
+	m.add(t)
+	known.Store(t, m)
+	return m
+}
+
+func (m *members) add(t reflect.Type) {
+	for _, f := range reflect.VisibleFields(t) {
+		if f.Anonymous || !f.IsExported() {
+			continue
+		}
+		name, options, _ := strings.Cut(f.Tag.Get("json"), ",")
+		m.types[name] = f.Type
+		if !strings.Contains(options, "omitzero") {
+			m.required = append(m.required, name)
+		}
+	}
+}
+
+var (
+	rawType   = reflect.TypeFor[Raw]()
+	wordsType = reflect.TypeFor[Words]()
+)
+
+// inspect finds what the library lets pass: nulls, missing members, unknown
+// words and deep nesting.
+func inspect(data []byte, t reflect.Type) error {
+	d := jsontext.NewDecoder(bytes.NewReader(data))
+	if err := inspectValue(d, t); err != nil {
+		var own *Error
+		if errors.As(err, &own) {
+			return own
+		}
+		return explain(err)
+	}
+	return nil
+}
+
+// inspectValue reads one value; t is nil where any value may stand.
+func inspectValue(d *jsontext.Decoder, t reflect.Type) error {
+	kind := d.PeekKind()
+	for t != nil && t.Kind() == reflect.Pointer {
+		t = t.Elem()
+	}
+	if t == rawType {
+		t = nil
+	}
+	if t != nil && t.Kind() == reflect.Struct {
+		if e, ok := reflect.Zero(t).Interface().(either); ok {
+			plain, object := e.alternatives()
+			if t = plain; kind == Object {
+				t = object
+			}
+		}
+	}
+	if (kind == Object || kind == Array) && d.StackDepth() >= MaxDepth {
+		return &Error{string(d.StackPointer()), fmt.Sprintf("nested deeper than %d", MaxDepth)}
+	}
+	switch kind {
+	case Object:
+		return inspectObject(d, t)
+	case Array:
+		var element reflect.Type
+		if t != nil && (t.Kind() == reflect.Slice || t.Kind() == reflect.Array) {
+			element = t.Elem()
+		}
+		if _, err := d.ReadToken(); err != nil {
+			return err
+		}
+		for d.PeekKind() != ']' {
+			if err := inspectValue(d, element); err != nil {
+				return err
+			}
+		}
+		_, err := d.ReadToken()
+		return err
+	case 'n':
+		if _, err := d.ReadToken(); err != nil {
+			return err
+		}
+		return &Error{string(d.StackPointer()), "must not be null; leave the member out"}
+	}
+	token, err := d.ReadToken()
+	if err != nil {
+		return err
+	}
+	if kind == String && t != nil && t.Implements(wordsType) {
+		words := reflect.Zero(t).Interface().(Words).Words()
+		for _, w := range words {
+			if w == token.String() {
+				return nil
+			}
+		}
+		return &Error{string(d.StackPointer()), "must be one of " + strings.Join(words, ", ")}
+	}
+	return nil
+}
+
+func inspectObject(d *jsontext.Decoder, t reflect.Type) error {
+	var known *members
+	var element reflect.Type
+	switch {
+	case t != nil && t.Kind() == reflect.Struct:
+		known = membersOf(t)
+	case t != nil && t.Kind() == reflect.Map:
+		element = t.Elem()
+	}
+	if _, err := d.ReadToken(); err != nil {
+		return err
+	}
+	object := d.StackPointer()
+	var found map[string]bool
+	if known != nil {
+		found = make(map[string]bool, len(known.required))
+	}
+	for d.PeekKind() != '}' {
+		token, err := d.ReadToken()
+		if err != nil {
+			return err
+		}
+		next := element
+		if known != nil {
+			name := token.String()
+			member, ok := known.types[name]
+			if !ok {
+				return &Error{string(d.StackPointer()), "there is no member of this name"}
+			}
+			found[name], next = true, member
+		}
+		if err := inspectValue(d, next); err != nil {
+			return err
+		}
+	}
+	if _, err := d.ReadToken(); err != nil {
+		return err
+	}
+	if known != nil {
+		for _, name := range known.required {
+			if !found[name] {
+				return &Error{string(object.AppendToken(name)), "is required"}
+			}
+		}
+	}
+	return nil
+}
