@@ -86,39 +86,52 @@ const (
 	BearingFull = 2.0
 )
 
-// BearingAt returns the bearing allowable p (Fbru or Fbry) in MPa at an edge
-// distance ratio e/D: by straight line between the given ratios and flat above
-// the last of them. The message says why there is none: nothing given, or an
-// e/D below the least one given, where tests are needed.
-func (m *Material) BearingAt(p Property, eOverD float64) (float64, Message) {
-	pick := func(b BearingStrength) float64 {
-		if p == Fbry {
-			return b.Fbry
-		}
-		return b.Fbru
+// Value returns the bearing allowable p, Fbru or Fbry.
+func (b BearingStrength) Value(p Property) float64 {
+	if p == Fbry {
+		return b.Fbry
 	}
+	return b.Fbru
+}
+
+// BearingBetween returns the two given bearing values between which p (Fbru or
+// Fbry) at an edge distance ratio e/D lies, the same one twice where it stands
+// alone: at a given ratio and above the last of them. The message says why
+// there is none: nothing given, or an e/D below the least one given, where
+// tests are needed.
+func (m *Material) BearingBetween(p Property, eOverD float64) (lo, hi BearingStrength, why Message) {
 	eOverD = min(eOverD, BearingFull)
-	var lo, hi *BearingStrength
-	for i := range m.Bearing {
-		b := &m.Bearing[i]
-		if pick(*b) == 0 {
+	below, above := -1, -1
+	for i, b := range m.Bearing {
+		if b.Value(p) == 0 {
 			continue
 		}
-		if AtMost(b.EOverD, eOverD) && (lo == nil || b.EOverD > lo.EOverD) {
-			lo = b
+		if AtMost(b.EOverD, eOverD) && (below < 0 || b.EOverD > m.Bearing[below].EOverD) {
+			below = i
 		}
-		if AtLeast(b.EOverD, eOverD) && (hi == nil || b.EOverD < hi.EOverD) {
-			hi = b
+		if AtLeast(b.EOverD, eOverD) && (above < 0 || b.EOverD < m.Bearing[above].EOverD) {
+			above = i
 		}
 	}
 	switch {
-	case lo == nil && hi == nil:
-		return 0, Say("the material %q has no %s", m.Name, p)
-	case lo == nil:
-		return 0, Say("e/D %.4g is below %.4g, the least for which %s is given; below it only tests count", eOverD, hi.EOverD, p)
-	case hi == nil || hi == lo || hi.EOverD <= lo.EOverD:
-		return pick(*lo), Message{}
+	case below < 0 && above < 0:
+		return lo, hi, Say("the material %q has no %s", m.Name, p)
+	case below < 0:
+		return lo, hi, Say("e/D %.4g is below %.4g, the least for which %s is given; below it only tests count", eOverD, m.Bearing[above].EOverD, p)
+	case above < 0 || m.Bearing[above].EOverD <= m.Bearing[below].EOverD:
+		above = below
 	}
-	share := (eOverD - lo.EOverD) / (hi.EOverD - lo.EOverD)
-	return pick(*lo) + float64(share*(pick(*hi)-pick(*lo))), Message{}
+	return m.Bearing[below], m.Bearing[above], Message{}
+}
+
+// BearingAt returns the bearing allowable p (Fbru or Fbry) in MPa at an edge
+// distance ratio e/D: by straight line between the given ratios and flat above
+// the last of them, or the message of BearingBetween.
+func (m *Material) BearingAt(p Property, eOverD float64) (float64, Message) {
+	lo, hi, why := m.BearingBetween(p, eOverD)
+	if !why.Empty() || lo == hi {
+		return lo.Value(p), why
+	}
+	share := (min(eOverD, BearingFull) - lo.EOverD) / (hi.EOverD - lo.EOverD)
+	return lo.Value(p) + float64(share*(hi.Value(p)-lo.Value(p))), Message{}
 }

@@ -1,0 +1,30 @@
+package lug_test
+
+import (
+	"testing"
+
+	"jointledger/lug"
+	"jointledger/strength"
+)
+
+func benchmarkCase(b *testing.B, j lug.Joint, method string, angle float64) {
+	p := prepare(b, j, methods(method), at(50000, angle))
+	out := make([]strength.Margin, len(p.Checks()))
+	b.ReportAllocs()
+	for b.Loop() {
+		p.Margins(0, out)
+	}
+}
+
+func BenchmarkElementaryAxial(b *testing.B)  { benchmarkCase(b, bare(), "elementary", 0) }
+func BenchmarkElementaryClevis(b *testing.B) { benchmarkCase(b, hinge(), "elementary", 0) }
+
+func BenchmarkPrepareElementaryClevis(b *testing.B) {
+	j, choices, cases := hinge(), methods("elementary"), at(50000, 0)
+	b.ReportAllocs()
+	for b.Loop() {
+		if _, wrong := lug.Prepare(j, choices, usual(), cases); wrong != nil {
+			b.Fatal(wrong)
+		}
+	}
+}

@@ -1,0 +1,267 @@
+package lug
+
+import (
+	"cmp"
+	"maps"
+	"slices"
+	"strconv"
+
+	"jointledger/strength"
+)
+
+// Prepared is a joint with its methods, ready for any number of load cases. It
+// implements strength.Calculation.
+type Prepared struct {
+	joint    Joint
+	lug      *part
+	clevis   *part // nil without one
+	factors  strength.Factors
+	loads    []load
+	checks   []strength.Check
+	laws     []prepared
+	findings []strength.Finding
+	cautions []string
+}
+
+var _ strength.Calculation = (*Prepared)(nil)
+
+// prepared is a check's law with what was settled about it.
+type prepared struct {
+	law
+	why    *strength.Message // without which there is no margin
+	factor [2]float64        // by the level of the load
+	demand [2]strength.Demand
+	write  func(*sheet) law
+	place  int // of its method in the request
+}
+
+// builder collects the checks of one method.
+type builder struct {
+	*Prepared
+	method  *Method
+	name    string // id@revision
+	choice  Choice
+	place   int // of the method in the request
+	read    fieldSet
+	found   *findings
+	special bool // special factors act on the method's own factors too
+}
+
+// Prepare settles a joint: it measures the geometry, finds every allowable
+// once, and works out each load case's direction. cases are kept, not copied.
+// The faults are all there are, with pointers into a lug request; with any
+// there is no calculation.
+func Prepare(j Joint, choices []Choice, f strength.Factors, cases []LoadCase) (*Prepared, []strength.Fault) {
+	var wrong faults
+	j.check(&wrong)
+	checkCases(cases, &wrong)
+	methods := make([]Method, len(choices))
+	asked, compared := 0, 0
+	for i, c := range choices {
+		pointer := "/methods/" + strconv.Itoa(asked)
+		if c.Compared {
+			pointer = "/compare/" + strconv.Itoa(compared)
+			compared++
+		} else {
+			asked++
+		}
+		m, ok := Find(c.Method)
+		if !ok {
+			wrong.add(pointer, "there is no method %q", c.Method)
+			continue
+		}
+		methods[i] = m
+		checkOptions(&m, c.Options, &wrong)
+	}
+	if asked == 0 {
+		wrong.add("/methods", "at least one method is needed")
+	}
+	if len(wrong) > 0 {
+		return nil, wrong
+	}
+
+	p := &Prepared{joint: j, factors: f, loads: make([]load, len(cases))}
+	for i := range cases {
+		p.loads[i] = newLoad(&cases[i])
+	}
+	p.place()
+	found := &findings{}
+	var read fieldSet
+	for i := range choices {
+		b := &builder{
+			Prepared: p, method: &methods[i], name: methods[i].Name(), choice: choices[i], place: i,
+			found: found,
+		}
+		b.special = b.flag("apply_special")
+		methods[i].prepare(b)
+		read |= b.read
+	}
+	p.sort()
+	p.conclude(found, read)
+	return p, nil
+}
+
+// place puts the heads of the joint in their places.
+func (p *Prepared) place() {
+	j := &p.joint
+	p.lug = &part{member: memberLug, bushingMember: memberBushing, head: &j.Lug, bushing: j.Bushing, pin: j.Pin, share: 1}
+	c := j.Clevis
+	if c == nil {
+		return
+	}
+	p.clevis = &part{
+		member: memberClevis, bushingMember: memberClevisBushing, at: fieldsOfHead,
+		head: &c.Head, bushing: c.Bushing, pin: j.Pin, share: 1,
+	}
+	if !j.SingleShear {
+		p.clevis.doubleLeg, p.clevis.share = true, cmp.Or(c.LegShare, 0.5)
+	}
+}
+
+// heads are the parts that have an outline.
+func (p *Prepared) heads() []*part {
+	if p.clevis == nil {
+		return []*part{p.lug}
+	}
+	return []*part{p.lug, p.clevis}
+}
+
+// check adds one check. write puts its steps on a sheet and gives its law; it
+// runs once now and again whenever the steps are asked for. source is the
+// document, section and equation of its allowable.
+func (b *builder) check(member string, mode strength.Mode, level strength.Level, unit strength.Unit,
+	safety strength.Safety, source *Equation, write func(*sheet) law,
+) {
+	c := strength.Check{
+		Member: member, Mode: mode, Level: level, Unit: unit,
+		Method: b.name, Source: source.source(), Compared: b.choice.Compared,
+	}
+	s := sheet{mark: source.Mark}
+	k := prepared{write: write, place: b.place}
+	k.law = write(&s)
+	k.why = s.why
+	c.Mark = s.mark
+	b.read |= s.read
+	for i, at := range [...]strength.Level{strength.Limit, strength.Ultimate} {
+		k.demand[i] = b.factors.Demand(c, at, safety, b.special)
+		k.factor[i] = k.demand[i].Factor()
+	}
+	b.checks = append(b.checks, c)
+	b.laws = append(b.laws, k)
+}
+
+// number is a numeric option, or its default.
+func (b *builder) number(name string) float64 { return b.value(name).Number }
+
+func (b *builder) flag(name string) bool { return b.value(name).Flag }
+
+// value is an option as chosen, or its default.
+func (b *builder) value(name string) Value {
+	if v, ok := b.choice.Options[name]; ok {
+		return v
+	}
+	o, _ := b.method.option(name)
+	return o.Default
+}
+
+// sort puts the checks in the order of answers: member, method, mode.
+func (p *Prepared) sort() {
+	order := make([]int, len(p.checks))
+	for i := range order {
+		order[i] = i
+	}
+	slices.SortStableFunc(order, func(i, j int) int {
+		a, b := &p.checks[i], &p.checks[j]
+		return cmp.Or(
+			cmp.Compare(memberRank(a.Member), memberRank(b.Member)),
+			cmp.Compare(p.laws[i].place, p.laws[j].place),
+			cmp.Compare(a.Mode, b.Mode),
+		)
+	})
+	checks, laws := make([]strength.Check, len(order)), make([]prepared, len(order))
+	for to, from := range order {
+		checks[to], laws[to] = p.checks[from], p.laws[from]
+	}
+	p.checks, p.laws = checks, laws
+}
+
+// Checks returns the checks in the order of answers. Not to be changed.
+func (p *Prepared) Checks() []strength.Check { return p.checks }
+
+// Margins fills out for load case i.
+func (p *Prepared) Margins(i int, out []strength.Margin) {
+	l := &p.loads[i]
+	for c := range p.laws {
+		k := &p.laws[c]
+		switch {
+		case k.sides&l.sides == 0:
+			out[c] = strength.Margin{}
+		case k.why != nil:
+			out[c] = strength.Unknown(k.why)
+		default:
+			out[c] = k.margin(l, k.factor[l.level])
+		}
+	}
+}
+
+// Workings returns the steps behind check c that no load case changes.
+func (p *Prepared) Workings(c int) []strength.Working {
+	s := p.fresh(c, "")
+	p.laws[c].write(s)
+	return s.lines
+}
+
+// fresh is a sheet on which the steps of a check are written to be read.
+func (p *Prepared) fresh(c int, loadCase string) *sheet {
+	check := &p.checks[c]
+	return &sheet{recording: true, heading: strength.Working{
+		Member: check.Member, Method: check.Method, Mode: check.Mode, Level: check.Level, LoadCase: loadCase,
+	}}
+}
+
+// CaseWorkings returns the steps behind check c that load case i makes: the
+// load, what its direction does, the factors, the demand and the margin.
+func (p *Prepared) CaseWorkings(i, c int) []strength.Working {
+	l, k := &p.loads[i], &p.laws[c]
+	if k.sides&l.sides == 0 {
+		return nil
+	}
+	s := p.fresh(c, l.ID)
+	s.input("", "P", l.Force, strength.Force, fieldForce)
+	s.input("", "α", l.angle, strength.Degrees, fieldAngle)
+	if k.why != nil {
+		return s.lines
+	}
+	if k.trace != nil {
+		k.trace(s, l)
+	}
+	m := k.margin(l, k.factor[l.level])
+	if m.Status == strength.Undetermined {
+		return s.lines
+	}
+	demand := k.demand[l.level]
+	if k.ratio != nil {
+		factored := k.factor[l.level] * l.Force
+		steps := demand.Workings(s.heading, p.factors, "P", factored, strength.Force)
+		steps[len(steps)-1].Symbol = "P_d"
+		s.lines = append(s.lines, steps...)
+		s.apply(&eqUnity, m.Demand)
+		k.ratio(s, l, factored)
+	} else {
+		s.lines = append(s.lines, demand.Workings(s.heading, p.factors, cmp.Or(k.measure, "P"), m.Demand, p.checks[c].Unit)...)
+	}
+	s.apply(&eqMargin, m.Margin)
+	return s.lines
+}
+
+// eqUnity is the demand of a combined check.
+var eqUnity = Equation{Symbol: "demand", Text: "1", Unit: strength.None, Source: "combined checks: the allowable is the factor on the load that reaches the limit curve", Mark: strength.Given}
+
+// Findings returns what is to be said about the joint and its load cases.
+func (p *Prepared) Findings() []strength.Finding { return p.findings }
+
+// Cautions returns what the calculation leaves to the user.
+func (p *Prepared) Cautions() []string { return p.cautions }
+
+// sortedNames returns the keys of options in order.
+func sortedNames(o Options) []string { return slices.Sorted(maps.Keys(o)) }

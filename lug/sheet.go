@@ -1,0 +1,103 @@
+package lug
+
+import "jointledger/strength"
+
+// sheet is what a calculation is written on. The same code runs twice: once to
+// find the numbers, when the sheet keeps only the weakest mark, the fields that
+// were read and the first value that was missing; and again, recording, when
+// somebody asks to see the steps.
+type sheet struct {
+	heading   strength.Working // member, method, mode, level, load case of each step
+	recording bool
+	lines     []strength.Working
+	mark      strength.Mark
+	read      fieldSet
+	why       *strength.Message // the first reason for which there is no value
+}
+
+// lack notes that the calculation has no value, and why. What is written after
+// it means nothing and is not kept.
+func (s *sheet) lack(why strength.Message) {
+	if s.why == nil {
+		s.why = &why
+	}
+}
+
+// known reports whether nothing was lacking so far.
+func (s *sheet) known() bool { return s.why == nil }
+
+// apply writes the value of an equation and returns it.
+func (s *sheet) apply(e *Equation, value float64) float64 {
+	s.mark = strength.Weakest(s.mark, e.Mark)
+	if s.recording && s.known() {
+		w := s.heading
+		w.Symbol, w.Value, w.Unit, w.Equation, w.Source, w.Mark = e.Symbol, value, e.Unit, e.Text, e.source(), e.Mark
+		s.keep(w)
+	}
+	return value
+}
+
+// input writes a value of the caller, which every method shares, and returns
+// it. where is the field's path in the request.
+func (s *sheet) input(member, symbol string, value float64, unit strength.Unit, f field) float64 {
+	s.read.add(f)
+	if s.recording {
+		w := strength.Working{Member: member, Symbol: symbol, Value: value, Unit: unit, Source: "input: " + f.path()}
+		if f == fieldForce || f == fieldAngle {
+			w.LoadCase = s.heading.LoadCase
+		}
+		s.keep(w)
+	}
+	return value
+}
+
+// option writes a number of the method's options.
+func (s *sheet) option(symbol string, value float64, source string, mark strength.Mark) float64 {
+	s.mark = strength.Weakest(s.mark, mark)
+	if s.recording {
+		w := s.heading
+		w.Mode, w.Level = 0, 0
+		w.Symbol, w.Value, w.Source, w.Mark = symbol, value, source, mark
+		s.keep(w)
+	}
+	return value
+}
+
+// property writes a value of a material under its symbol, or lacks it.
+func (s *sheet) property(member string, m *strength.Material, p strength.Property, symbol string) float64 {
+	value := m.Value(p)
+	if value == 0 {
+		s.lack(strength.Say("the material %q of the %s has no %s", m.Name, member, p))
+		return 0
+	}
+	s.mark = strength.Weakest(s.mark, m.MarkOf(p))
+	if s.recording {
+		unit := strength.Stress
+		if p == strength.Nu || p == strength.Elongation {
+			unit = strength.None
+		}
+		s.keep(strength.Working{
+			Member: member, Symbol: symbol, Value: value, Unit: unit,
+			Source: materialSource(m), Mark: m.MarkOf(p),
+		})
+	}
+	return value
+}
+
+// materialSource says where a material's values stand.
+func materialSource(m *strength.Material) string {
+	if m.Source == "" {
+		return "input: material " + m.Name
+	}
+	return m.Source + ": " + m.Name
+}
+
+// keep adds a line unless it stands there already.
+func (s *sheet) keep(w strength.Working) {
+	for i := range s.lines {
+		if s.lines[i] == w {
+			return
+		}
+	}
+	s.lines = append(s.lines, w)
+}
