@@ -1,0 +1,96 @@
+package fastener
+
+import (
+	"cmp"
+	"math"
+	"slices"
+)
+
+// neighbour is the nearest other fastener; the index is -1 where there is none.
+type neighbour struct {
+	index    int
+	distance float64
+}
+
+// grove is a balanced k-d tree laid out in one slice of indices: the middle of
+// a range is its root, split along the longer side of the range's box.
+type grove struct {
+	fasteners []Fastener
+	order     []int32
+	byY       []bool // how the root at this place splits
+}
+
+// nearestNeighbours finds each fastener's nearest other one in O(n log² n),
+// however they lie. Of equally near ones it returns any.
+func nearestNeighbours(fasteners []Fastener) []neighbour {
+	g := grove{fasteners: fasteners, order: make([]int32, len(fasteners)), byY: make([]bool, len(fasteners))}
+	for i := range g.order {
+		g.order[i] = int32(i)
+	}
+	g.plant(0, len(g.order))
+	near := make([]neighbour, len(fasteners))
+	for i := range near {
+		near[i] = neighbour{-1, math.Inf(1)}
+		g.search(0, len(g.order), i, &near[i])
+	}
+	return near
+}
+
+func (g *grove) at(place int, byY bool) float64 {
+	if f := &g.fasteners[g.order[place]]; byY {
+		return f.Y
+	} else {
+		return f.X
+	}
+}
+
+func (g *grove) plant(from, to int) {
+	if to-from < 2 {
+		return
+	}
+	loX, hiX, loY, hiY := math.Inf(1), math.Inf(-1), math.Inf(1), math.Inf(-1)
+	for _, i := range g.order[from:to] {
+		f := &g.fasteners[i]
+		loX, hiX, loY, hiY = min(loX, f.X), max(hiX, f.X), min(loY, f.Y), max(hiY, f.Y)
+	}
+	byY := hiY-loY > hiX-loX
+	slices.SortFunc(g.order[from:to], func(a, b int32) int {
+		if byY {
+			return cmp.Compare(g.fasteners[a].Y, g.fasteners[b].Y)
+		}
+		return cmp.Compare(g.fasteners[a].X, g.fasteners[b].X)
+	})
+	middle := (from + to) / 2
+	g.byY[middle] = byY
+	g.plant(from, middle)
+	g.plant(middle+1, to)
+}
+
+func (g *grove) search(from, to, i int, best *neighbour) {
+	if from >= to {
+		return
+	}
+	middle := (from + to) / 2
+	f := &g.fasteners[i]
+	if root := int(g.order[middle]); root != i {
+		other := &g.fasteners[root]
+		if d := math.Hypot(other.X-f.X, other.Y-f.Y); d < best.distance {
+			*best = neighbour{root, d}
+		}
+	}
+	ahead := f.X - g.at(middle, false)
+	if g.byY[middle] {
+		ahead = f.Y - g.at(middle, true)
+	}
+	if ahead < 0 {
+		g.search(from, middle, i, best)
+		if -ahead < best.distance {
+			g.search(middle+1, to, i, best)
+		}
+		return
+	}
+	g.search(middle+1, to, i, best)
+	if ahead <= best.distance {
+		g.search(from, middle, i, best)
+	}
+}

@@ -1,0 +1,222 @@
+package fastener
+
+import (
+	"jointledger/strength"
+)
+
+// Fastener is one fastener of a pattern, with its centre in the faying surface.
+type Fastener struct {
+	ID             string
+	X, Y, Diameter float64 // mm
+	Type           *Type   // nil: sharing only
+	ShearPlanes    int     // 1 or 2; 0 is 1
+	// ShearStiffness and TensionStiffness are read by stiffness `given` only;
+	// their ratios alone matter.
+	ShearStiffness, TensionStiffness float64
+	E, Nu                            float64
+	Installation                     string
+	SlotAngle                        *float64 // degrees
+}
+
+// Plate is one of the plates that the fasteners of a pattern join. The first is
+// the attached member, on which the loads act.
+type Plate struct {
+	ID               string
+	Thickness        float64            // mm
+	Material         *strength.Material // nil: none given, no check
+	Outline          [][2]float64       // mm, a polygon; empty: not given
+	CountersinkDepth float64            // mm
+	// LoadShare is the part of a fastener's load that this plate bears; 0 is
+	// its default: 1, but for plates after the first at a fastener in double
+	// shear, which are outer plates and bear half each.
+	LoadShare float64
+}
+
+// Pattern is a group of fasteners through one stack of plates.
+type Pattern struct {
+	Stiffness   string // "equal", "area" or "given"
+	Fasteners   []Fastener
+	Plates      []Plate
+	Rules       []RuleSet
+	Interaction string // "" or a word of Methods' interactions
+	InPlane     string // "" or "elastic"
+	OutOfPlane  string // "" or "centroid"
+}
+
+// PatternCase is one load on the attached member, at Point.
+type PatternCase struct {
+	ID                   string
+	Level                strength.Level
+	Point, Force, Moment [3]float64 // mm, N, N·mm
+}
+
+// Share is what one fastener takes of a load case, before factors: the shear
+// that the attached member puts on it, and its tension, positive when a force
+// along +z stretches it.
+type Share struct {
+	Shear              [2]float64
+	Resultant, Tension float64
+}
+
+// PreparedPattern is a pattern ready for any number of load cases.
+type PreparedPattern struct {
+	pattern     Pattern
+	factors     strength.Factors
+	cases       []PatternCase
+	sharing     *elastic
+	loads       []centred
+	outlines    [][]side
+	checks      []strength.Check
+	assessments []assessment
+	state       caseState
+	findings    []strength.Finding
+}
+
+// caseState is what the assessments of one load case read.
+type caseState struct {
+	level  strength.Level
+	shares []Share
+}
+
+// assessment compares one demand with one allowable in every load case.
+type assessment interface {
+	check() strength.Check
+	margin(c *caseState) strength.Margin
+	// steps are the static workings, caseSteps those of load case i with its
+	// state; both without place and method, which the pattern stamps.
+	steps() []strength.Working
+	caseSteps(c *caseState, i int) []strength.Working
+}
+
+// PreparePattern prepares a pattern for its load cases, or says everything that
+// keeps it from being calculated.
+func PreparePattern(p Pattern, f strength.Factors, cases []PatternCase) (*PreparedPattern, []strength.Fault) {
+	prepared := &PreparedPattern{pattern: p, factors: f, cases: cases, outlines: make([][]side, len(p.Plates))}
+	faults := prepared.inputFaults()
+	if len(p.Fasteners) == 0 {
+		return nil, append(faults, strength.Fault{Pointer: "/fasteners", Message: strength.Say("a pattern needs at least one fastener")})
+	}
+	near := nearestNeighbours(p.Fasteners)
+	faults = append(faults, coincidenceFaults(p.Fasteners, near)...)
+	if len(faults) > 0 {
+		return nil, faults
+	}
+	prepared.sharing = newElastic(p)
+	prepared.loads = make([]centred, len(cases))
+	for i, c := range cases {
+		load, fault := prepared.sharing.centre(c, i)
+		if !fault.Message.Empty() {
+			faults = append(faults, fault)
+		}
+		prepared.loads[i] = load
+	}
+	if len(faults) > 0 {
+		return nil, faults
+	}
+	edges := prepared.edgeDistances()
+	prepared.addAssessments(edges)
+	prepared.checks = make([]strength.Check, len(prepared.assessments))
+	for i, a := range prepared.assessments {
+		prepared.checks[i] = a.check()
+	}
+	prepared.state.shares = make([]Share, len(p.Fasteners))
+	prepared.findings = prepared.allFindings(edges, near)
+	return prepared, nil
+}
+
+// edgeDistances returns, for each plate with an outline, the edge distance of
+// each fastener; nil for a plate without.
+func (p *PreparedPattern) edgeDistances() [][]edgeDistance {
+	edges := make([][]edgeDistance, len(p.pattern.Plates))
+	for k, outline := range p.outlines {
+		if outline == nil {
+			continue
+		}
+		edges[k] = make([]edgeDistance, len(p.pattern.Fasteners))
+		for i, f := range p.pattern.Fasteners {
+			e, which, along := nearest(outline, f.X, f.Y)
+			edges[k][i] = edgeDistance{e, outline[which], along}
+		}
+	}
+	return edges
+}
+
+// addAssessments lists the checks in the order of answers: each fastener, then
+// the plates at it.
+func (p *PreparedPattern) addAssessments(edges [][]edgeDistance) {
+	for i := range p.pattern.Fasteners {
+		p.addFastenerStrength(i)
+		for k := range p.pattern.Plates {
+			p.addBearing(i, k, edges[k])
+		}
+	}
+}
+
+// Centroid returns the centroid of the shear stiffness, in mm.
+func (p *PreparedPattern) Centroid() [2]float64 { return [2]float64{p.sharing.xc, p.sharing.yc} }
+
+// Shares fills out, one for each fastener in order, with the shares of load
+// case i at the level given, before factors. The residual is the largest error
+// of equilibrium relative to the load.
+func (p *PreparedPattern) Shares(i int, out []Share) (residual float64) {
+	return p.sharing.share(p.loads[i], out)
+}
+
+// Checks implements strength.Calculation.
+func (p *PreparedPattern) Checks() []strength.Check { return p.checks }
+
+// Margins implements strength.Calculation.
+func (p *PreparedPattern) Margins(i int, out []strength.Margin) {
+	p.enter(i)
+	for c, a := range p.assessments {
+		out[c] = a.margin(&p.state)
+	}
+}
+
+func (p *PreparedPattern) enter(i int) {
+	p.state.level = p.cases[i].Level
+	p.Shares(i, p.state.shares)
+}
+
+// Workings implements strength.Calculation. Steps of the sharing have the
+// member "pattern" and no mode: they are the same in every check.
+func (p *PreparedPattern) Workings(c int) []strength.Working {
+	return p.stamp(c, "", p.assessments[c].steps())
+}
+
+// CaseWorkings implements strength.Calculation.
+func (p *PreparedPattern) CaseWorkings(i, c int) []strength.Working {
+	p.enter(i)
+	return p.stamp(c, p.cases[i].ID, p.assessments[c].caseSteps(&p.state, i))
+}
+
+// stamp writes the place of a check into steps that have none of their own.
+func (p *PreparedPattern) stamp(c int, loadCase string, steps []strength.Working) []strength.Working {
+	check := p.checks[c]
+	for i := range steps {
+		s := &steps[i]
+		s.LoadCase = loadCase
+		if s.Member == memberPattern {
+			continue
+		}
+		s.Member, s.Fastener, s.Method, s.Mode, s.Level = check.Member, check.Fastener, check.Method, check.Mode, check.Level
+	}
+	return steps
+}
+
+// Findings implements strength.Calculation.
+func (p *PreparedPattern) Findings() []strength.Finding { return p.findings }
+
+// Cautions implements strength.Calculation.
+func (p *PreparedPattern) Cautions() []string {
+	return []string{
+		"The attached member is taken as rigid: prying and the flexibility of flanges and plates are left out and may raise the tension and shear of single fasteners.",
+		"Each fastener is taken to fill its hole and to share by stiffness alone: clearances, friction and yielding are left out.",
+	}
+}
+
+// The members of a pattern's workings and checks that are no plate.
+const (
+	memberPattern  = "pattern"
+	memberFastener = "fastener"
+)

@@ -1,0 +1,107 @@
+package fastener
+
+import (
+	"fmt"
+	"slices"
+
+	"jointledger/strength"
+)
+
+func field(list string, index int, name string) string {
+	return fmt.Sprintf("/%s/%d/%s", list, index, name)
+}
+
+func caseField(index int, name string) string { return field("load_cases", index, name) }
+
+// The words that a pattern's choices take.
+var (
+	stiffnessWords  = []string{"equal", "area", "given"}
+	interactionWord = []string{"", "2-2"}
+	inPlaneWords    = []string{"", "elastic"}
+	outOfPlaneWords = []string{"", "centroid"}
+	threadForms     = []string{"unified", "iso"}
+)
+
+// inputFaults checks everything but where the fasteners stand to each other,
+// and fills the outlines.
+func (p *PreparedPattern) inputFaults() []strength.Fault {
+	var faults []strength.Fault
+	fault := func(pointer, format string, args ...any) {
+		faults = append(faults, strength.Fault{Pointer: pointer, Message: strength.Say(format, args...)})
+	}
+	word := func(pointer, found string, allowed []string) {
+		if !slices.Contains(allowed, found) {
+			fault(pointer, "%q is not known; allowed are %q", found, slices.DeleteFunc(slices.Clone(allowed), func(s string) bool { return s == "" }))
+		}
+	}
+	word("/stiffness", p.pattern.Stiffness, stiffnessWords)
+	word("/interaction", p.pattern.Interaction, interactionWord)
+	word("/in_plane", p.pattern.InPlane, inPlaneWords)
+	word("/out_of_plane", p.pattern.OutOfPlane, outOfPlaneWords)
+	for i, f := range p.pattern.Fasteners {
+		if f.ShearPlanes < 0 || f.ShearPlanes > 2 {
+			fault(field("fasteners", i, "shear_planes"), "found %d, allowed are 1 and 2", f.ShearPlanes)
+		}
+		if p.pattern.Stiffness == "given" {
+			if f.ShearStiffness <= 0 {
+				fault(field("fasteners", i, "shear_stiffness"), "stiffness \"given\" needs a positive shear stiffness, found %g", f.ShearStiffness)
+			}
+			if f.TensionStiffness <= 0 {
+				fault(field("fasteners", i, "tension_stiffness"), "stiffness \"given\" needs a positive tension stiffness, found %g", f.TensionStiffness)
+			}
+		}
+		if f.Type == nil || f.Type.Thread == nil {
+			continue
+		}
+		if thread := f.Type.Thread; !slices.Contains(threadForms, thread.Form) {
+			word(field("fasteners", i, "type/thread/form"), thread.Form, threadForms)
+		} else if deepest := f.Diameter / thread.pitchFactor(); thread.Pitch <= 0 || thread.Pitch >= deepest {
+			fault(field("fasteners", i, "type/thread/pitch"), "found %v, allowed is more than 0 and less than %v, which leaves no area on a diameter of %v",
+				strength.Length.Of(thread.Pitch), strength.Length.Of(deepest), strength.Length.Of(f.Diameter))
+		}
+	}
+	for k, plate := range p.pattern.Plates {
+		if plate.CountersinkDepth < 0 || plate.CountersinkDepth > plate.Thickness {
+			fault(field("plates", k, "countersink_depth"), "found %v, allowed is 0 to the thickness %v",
+				strength.Length.Of(plate.CountersinkDepth), strength.Length.Of(plate.Thickness))
+		}
+		if plate.LoadShare < 0 || plate.LoadShare > 1 {
+			fault(field("plates", k, "load_share"), "found %g, allowed is more than 0, at most 1", plate.LoadShare)
+		}
+		if len(plate.Outline) == 0 {
+			continue
+		}
+		pointer := field("plates", k, "outline")
+		if why := outlineFault(plate.Outline); !why.Empty() {
+			faults = append(faults, strength.Fault{Pointer: pointer, Message: why})
+			continue
+		}
+		p.outlines[k] = sides(plate.Outline)
+		for _, f := range p.pattern.Fasteners {
+			e, _, _ := nearest(p.outlines[k], f.X, f.Y)
+			switch {
+			case !contains(p.outlines[k], f.X, f.Y):
+				fault(pointer, "the centre of fastener %q is not inside the outline", f.ID)
+			case strength.AtMost(e, f.Diameter/2):
+				fault(pointer, "the hole of fastener %q reaches the outline: its centre is %v from it, more than half its diameter, %v, is allowed",
+					f.ID, strength.Length.Of(e), strength.Length.Of(f.Diameter/2))
+			}
+		}
+	}
+	return faults
+}
+
+// coincidenceFaults names fasteners that stand in the hole of an earlier one.
+func coincidenceFaults(fasteners []Fastener, near []neighbour) []strength.Fault {
+	var faults []strength.Fault
+	for i, n := range near {
+		if n.index < 0 || n.index > i || n.distance > strength.Within*fasteners[i].Diameter {
+			continue
+		}
+		faults = append(faults, strength.Fault{
+			Pointer: field("fasteners", i, "x"),
+			Message: strength.Say("fastener %q stands in the same place as fastener %q", fasteners[i].ID, fasteners[n.index].ID),
+		})
+	}
+	return faults
+}
