@@ -75,8 +75,8 @@ func (r Rule) bound(d, t float64) float64 {
 	return float64(r.Diameters*d) + float64(r.Thicknesses*t)
 }
 
-// asks writes the bound in symbols.
-func (r Rule) asks() string {
+// Asks writes the bound in symbols.
+func (r Rule) Asks() string {
 	if r.Thicknesses > 0 {
 		return fmt.Sprintf("%g t", r.Thicknesses)
 	}
@@ -118,7 +118,7 @@ func (p *PreparedPattern) layoutFindings(set RuleSet, edges [][]edgeDistance, ne
 			e := edges[k][i].e
 			if rule, broken := set.worst(EdgeDistance, e, d, plate.Thickness, false); broken {
 				report(rule, subject, strength.Say("edge distance %v (%.4g D) in plate %q is less than %v (%s)",
-					strength.Length.Of(e), e/d, plate.ID, strength.Length.Of(rule.bound(d, plate.Thickness)), rule.asks()))
+					strength.Length.Of(e), e/d, plate.ID, strength.Length.Of(rule.bound(d, plate.Thickness)), rule.Asks()))
 			}
 		}
 		if near[i].index < 0 {
@@ -127,13 +127,13 @@ func (p *PreparedPattern) layoutFindings(set RuleSet, edges [][]edgeDistance, ne
 		if rule, broken := set.worst(Pitch, near[i].distance, d, 0, false); broken {
 			report(rule, subject, strength.Say("pitch %v (%.4g D) to fastener %q is less than %v (%s)",
 				strength.Length.Of(near[i].distance), near[i].distance/d, p.pattern.Fasteners[near[i].index].ID,
-				strength.Length.Of(rule.bound(d, 0)), rule.asks()))
+				strength.Length.Of(rule.bound(d, 0)), rule.Asks()))
 		}
 	}
 	for _, plate := range p.pattern.Plates {
 		if rule, broken := set.worst(CountersinkDepth, plate.CountersinkDepth, 0, plate.Thickness, true); broken {
 			report(rule, "plate "+plate.ID, strength.Say("countersink depth %v is more than %v (%s)",
-				strength.Length.Of(plate.CountersinkDepth), strength.Length.Of(rule.bound(0, plate.Thickness)), rule.asks()))
+				strength.Length.Of(plate.CountersinkDepth), strength.Length.Of(rule.bound(0, plate.Thickness)), rule.Asks()))
 		}
 	}
 	return findings
