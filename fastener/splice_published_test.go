@@ -1,0 +1,201 @@
+package fastener
+
+import (
+	"bytes"
+	"encoding/json"
+	"math"
+	"os"
+	"path/filepath"
+	"slices"
+	"strconv"
+	"strings"
+	"testing"
+
+	"jointledger/strength"
+)
+
+// wireSplice is the request of a splice as it comes over the wire.
+type wireSplice struct {
+	Units, Title string
+	Members      []struct {
+		ID           string
+		E            float64
+		FirstRow     int       `json:"first_row"`
+		LastRow      int       `json:"last_row"`
+		RowThickness []float64 `json:"row_thickness"`
+		Bays         []Bay
+		Expansion    float64
+	}
+	Pitches []float64
+	Rows    []struct {
+		Count                       int
+		Diameter, E, Nu, Compliance float64
+		Installation                string
+		Clearance                   float64
+	}
+	Compliance        string
+	CompareCompliance []string `json:"compare_compliance"`
+	Symmetric         bool
+	Factors           struct{ Ultimate, Fitting float64 }
+	LoadCases         []struct {
+		ID, Level    string
+		Ends         []End
+		Temperatures []TemperatureChange
+	} `json:"load_cases"`
+}
+
+// scales turns the values of a system of units into N and mm.
+func scales(t *testing.T, units string) (force, length float64) {
+	switch units {
+	case "SI":
+		return 1, 1
+	case "US":
+		return 4.4482216152605, 25.4
+	}
+	t.Fatalf("units %q", units)
+	return 0, 0
+}
+
+// decode turns a request into the types of this package.
+func (w *wireSplice) decode(t *testing.T) (Splice, strength.Factors, []SpliceCase) {
+	force, length := scales(t, w.Units)
+	stress := force / (length * length)
+	s := Splice{Compliance: w.Compliance, CompareCompliance: w.CompareCompliance, Symmetric: w.Symmetric}
+	for _, m := range w.Members {
+		member := Member{ID: m.ID, E: m.E * stress, FirstRow: m.FirstRow, LastRow: m.LastRow, Expansion: m.Expansion}
+		for _, thickness := range m.RowThickness {
+			member.RowThickness = append(member.RowThickness, thickness*length)
+		}
+		for _, b := range m.Bays {
+			member.Bays = append(member.Bays, Bay{b.Thickness * length, b.Width * length})
+		}
+		s.Members = append(s.Members, member)
+	}
+	for _, p := range w.Pitches {
+		s.Pitches = append(s.Pitches, p*length)
+	}
+	for _, r := range w.Rows {
+		s.Rows = append(s.Rows, Row{
+			Count: r.Count, Diameter: r.Diameter * length, E: r.E * stress, Nu: r.Nu, Installation: r.Installation,
+			Compliance: r.Compliance * length / force, Clearance: r.Clearance * length,
+		})
+	}
+	var cases []SpliceCase
+	for _, c := range w.LoadCases {
+		level := map[string]strength.Level{"limit": strength.Limit, "ultimate": strength.Ultimate}[c.Level]
+		if level == 0 {
+			t.Fatalf("level %q", c.Level)
+		}
+		made := SpliceCase{ID: c.ID, Level: level, Temperatures: c.Temperatures}
+		for _, e := range c.Ends {
+			made.Ends = append(made.Ends, End{e.Member, e.Left * force, e.Right * force})
+		}
+		cases = append(cases, made)
+	}
+	return s, strength.Factors{Ultimate: w.Factors.Ultimate, Fitting: w.Factors.Fitting}, cases
+}
+
+// printed reads a value and the half unit of its last digit.
+func printed(t *testing.T, text string) (value, half float64) {
+	value, err := strconv.ParseFloat(text, 64)
+	if err != nil {
+		t.Fatal(err)
+	}
+	mantissa, exponent, _ := strings.Cut(strings.ToLower(text), "e")
+	power := 0
+	if exponent != "" {
+		if power, err = strconv.Atoi(exponent); err != nil {
+			t.Fatal(err)
+		}
+	}
+	if _, decimals, ok := strings.Cut(mantissa, "."); ok {
+		power -= len(decimals)
+	}
+	return value, 0.5 * math.Pow(10, float64(power))
+}
+
+// TestPublishedSplices holds every case of the data against its source.
+func TestPublishedSplices(t *testing.T) {
+	type expected struct {
+		LoadCase string `json:"load_case"`
+		Row      int
+		Between  []string
+		Share    string
+		Symbol   string
+		Value    string
+	}
+	var files []string
+	for _, pattern := range []string{"splice-*.json", "compliance-*.json"} {
+		found, err := filepath.Glob(filepath.Join("..", "testdata", "published", pattern))
+		if err != nil || len(found) == 0 {
+			t.Fatalf("no data %s: %v", pattern, err)
+		}
+		files = append(files, found...)
+	}
+	compared := 0
+	for _, file := range files {
+		data, err := os.ReadFile(file)
+		if err != nil {
+			t.Fatal(err)
+		}
+		var published struct {
+			About string
+			Cases []struct {
+				Title, Source, Mark string
+				Hand                []string
+				Input               wireSplice
+				Expect              struct{ Transfers, Workings []expected }
+			}
+		}
+		decoder := json.NewDecoder(bytes.NewReader(data))
+		decoder.DisallowUnknownFields()
+		if err := decoder.Decode(&published); err != nil {
+			t.Fatalf("%s: %v", file, err)
+		}
+		for _, c := range published.Cases {
+			t.Run(c.Title, func(t *testing.T) {
+				if _, ok := strength.ParseMark(c.Mark); !ok || c.Source == "" || len(c.Expect.Transfers)+len(c.Expect.Workings) == 0 {
+					t.Fatalf("mark %q, source %q, or nothing expected", c.Mark, c.Source)
+				}
+				s, f, cases := c.Input.decode(t)
+				p, faults := PrepareSplice(s, f, cases)
+				if len(faults) > 0 {
+					t.Fatalf("faults: %v", faults)
+				}
+				force, length := scales(t, c.Input.Units)
+				out := p.NewTransfers()
+				for _, e := range c.Expect.Transfers {
+					i := slices.IndexFunc(cases, func(c SpliceCase) bool { return c.ID == e.LoadCase })
+					p.Transfers(i, &out)
+					k := slices.IndexFunc(out.Interfaces, func(l InterfaceLoad) bool {
+						return l.Row == e.Row && s.Members[l.First].ID == e.Between[0] && s.Members[l.Second].ID == e.Between[1]
+					})
+					if k < 0 {
+						t.Fatalf("no interface %v at row %d", e.Between, e.Row)
+					}
+					want, half := printed(t, e.Share)
+					if got := out.Interfaces[k].Share; math.Abs(got-want) > half*(1+1e-9) {
+						t.Errorf("row %d: share %.7f, printed %s", e.Row, got, e.Share)
+					}
+					compared++
+				}
+				for _, e := range c.Expect.Workings {
+					workings := p.ComplianceWorkings(e.Row)
+					k := slices.IndexFunc(workings, func(w strength.Working) bool { return w.Symbol == e.Symbol })
+					if k < 0 {
+						t.Fatalf("no working %s at row %d", e.Symbol, e.Row)
+					}
+					unit := math.Pow(force, float64(workings[k].Unit.Force)) * math.Pow(length, float64(workings[k].Unit.Length))
+					want, half := printed(t, e.Value)
+					if got := workings[k].Value / unit; math.Abs(got-want) > half*(1+1e-9) {
+						t.Errorf("row %d: %s = %.8g, printed %s", e.Row, e.Symbol, got, e.Value)
+					}
+					compared++
+				}
+			})
+		}
+	}
+	if compared < 80 {
+		t.Errorf("only %d values were compared", compared)
+	}
+}

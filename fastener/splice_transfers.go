@@ -1,0 +1,112 @@
+package fastener
+
+import (
+	"math"
+
+	"jointledger/strength"
+)
+
+// Undetermined says why there is no sharing at all: the compliance formula has
+// no form for this joint. It is empty otherwise.
+func (p *PreparedSplice) Undetermined() strength.Message { return p.main.why }
+
+// NewTransfers makes room for the transfers of a load case.
+func (p *PreparedSplice) NewTransfers() Transfers {
+	return Transfers{
+		Interfaces: make([]InterfaceLoad, p.stack.interfaces()),
+		Members:    make([]MemberLoad, len(p.stack.nodes)),
+	}
+}
+
+// Transfers fills out, made by NewTransfers, with the loads of load case i at
+// the level given, before factors. It allocates nothing. When the splice is
+// Undetermined it leaves out as it is.
+func (p *PreparedSplice) Transfers(i int, out *Transfers) {
+	if p.main.why.Empty() {
+		p.enter(i)
+		p.main.transfers(&p.cases[i], out)
+	}
+}
+
+// Compared lists the further compliances that were asked for.
+func (p *PreparedSplice) Compared() []ComparedCompliance {
+	all := make([]ComparedCompliance, len(p.compared))
+	for k := range p.compared {
+		all[k] = ComparedCompliance{p.compared[k].name, p.compared[k].why}
+	}
+	return all
+}
+
+// ComparedCompliance is a further compliance beside that of the splice.
+type ComparedCompliance struct {
+	Name string           // as asked
+	Why  strength.Message // it has no form for this joint; empty otherwise
+}
+
+// ComparedTransfers fills out with the loads of load case i by further
+// compliance k; one that has no form for this joint leaves out as it is.
+func (p *PreparedSplice) ComparedTransfers(k, i int, out *Transfers) {
+	if v := &p.compared[k].solver; v.why.Empty() {
+		v.solve(&p.cases[i])
+		v.transfers(&p.cases[i], out)
+	}
+}
+
+// enter solves load case i unless it is the one solved last.
+func (p *PreparedSplice) enter(i int) {
+	if p.solved != i {
+		p.main.solve(&p.cases[i])
+		p.solved = i
+	}
+}
+
+// transfers writes the present solution down.
+func (v *solver) transfers(c *preparedCase, out *Transfers) {
+	k := v.stack
+	out.Through = c.through
+	largest := c.through
+	for x, node := range k.nodes {
+		left, right := v.sides(x, c)
+		bearing, bypass := bearingBypass(left, right)
+		out.Members[x] = MemberLoad{Row: node.row + 1, Member: node.member, Bearing: bearing, Bypass: bypass}
+		if k.inner(x) {
+			load := v.transfer[x-node.row]
+			largest = max(largest, math.Abs(load))
+			out.Interfaces[x-node.row] = InterfaceLoad{
+				Row: node.row + 1, First: node.member, Second: k.nodes[x+1].member, Load: load,
+			}
+		}
+	}
+	out.Residual = 0
+	if largest > 0 {
+		out.Residual = v.residual / largest
+	}
+	if c.through > 0 {
+		v.shares(out)
+	}
+}
+
+// shares refers each interface's load to the load through the joint, positive
+// the way that all rows between its two members carry together.
+func (v *solver) shares(out *Transfers) {
+	net := v.net
+	clear(net)
+	for i := range out.Interfaces {
+		net[v.stack.pair[i]] += out.Interfaces[i].Load
+	}
+	for i := range out.Interfaces {
+		f := &out.Interfaces[i]
+		if f.Share = f.Load / out.Through; net[v.stack.pair[i]] < -strength.Within*out.Through {
+			f.Share = -f.Share
+		}
+	}
+}
+
+// bearingBypass parts a member's loads left and right of a row into the load
+// that passes the row and the load that the row's fasteners put on the member.
+func bearingBypass(left, right float64) (bearing, bypass float64) {
+	if math.Abs(left) < math.Abs(right) {
+		left, right = right, left
+	}
+	return left - right, right
+}
