@@ -64,7 +64,7 @@ func newElastic(p Pattern) *elastic {
 	e.x, e.y, e.cx, e.cy, e.sumV = offsets(p.Fasteners, e.kv)
 	e.xc, e.yc = e.x0+e.cx, e.y0+e.cy
 	for i := range n {
-		e.j += e.kv[i] * (float64(e.x[i]*e.x[i]) + float64(e.y[i]*e.y[i]))
+		e.j += float64(e.kv[i] * (float64(e.x[i]*e.x[i]) + float64(e.y[i]*e.y[i])))
 		e.reach = max(e.reach, math.Hypot(e.x[i], e.y[i]))
 	}
 	var x, y []float64
@@ -123,9 +123,9 @@ func (e *elastic) principal(x, y []float64) {
 		if !line {
 			e.v[i] = float64(e.cos*y[i]) - float64(e.sin*x[i])
 		}
-		e.iu += e.kt[i] * e.v[i] * e.v[i]
-		e.iv += e.kt[i] * e.u[i] * e.u[i]
-		e.iuv += e.kt[i] * e.u[i] * e.v[i]
+		e.iu += float64(e.kt[i] * e.v[i] * e.v[i])
+		e.iv += float64(e.kt[i] * e.u[i] * e.u[i])
+		e.iuv += float64(e.kt[i] * e.u[i] * e.v[i])
 	}
 }
 
@@ -147,9 +147,9 @@ func axis(x, y, k []float64) (cos, sin float64) {
 	mx, my = mx/sum, my/sum
 	for i := range x {
 		dx, dy := x[i]-mx, y[i]-my
-		xx += weight(i) * dx * dx
-		yy += weight(i) * dy * dy
-		xy += weight(i) * dx * dy
+		xx += float64(weight(i) * dx * dx)
+		yy += float64(weight(i) * dy * dy)
+		xy += float64(weight(i) * dx * dy)
 	}
 	sin, cos = math.Sincos(math.Atan2(2*xy, xx-yy) / 2)
 	switch {
@@ -271,9 +271,9 @@ func (e *elastic) distribute(load centred, out []Share) {
 	out = out[:len(e.x)]
 	for i := range x {
 		s := &out[i]
-		s.Shear[0] += kv[i] * (dx - float64(turn*y[i]))
-		s.Shear[1] += kv[i] * (dy + float64(turn*x[i]))
-		s.Tension += kt[i] * (dz + float64(a*v[i]) - float64(b*u[i]))
+		s.Shear[0] += float64(kv[i] * (dx - float64(turn*y[i])))
+		s.Shear[1] += float64(kv[i] * (dy + float64(turn*x[i])))
+		s.Tension += float64(kt[i] * (dz + float64(a*v[i]) - float64(b*u[i])))
 	}
 }
 

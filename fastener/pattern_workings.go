@@ -136,9 +136,9 @@ func (e *elastic) second() (xx, yy, xy float64) {
 	for i := range e.u {
 		x := float64(e.cos*e.u[i]) - float64(e.sin*e.v[i])
 		y := float64(e.sin*e.u[i]) + float64(e.cos*e.v[i])
-		xx += e.kt[i] * y * y
-		yy += e.kt[i] * x * x
-		xy += e.kt[i] * x * y
+		xx += float64(e.kt[i] * y * y)
+		yy += float64(e.kt[i] * x * x)
+		xy += float64(e.kt[i] * x * y)
 	}
 	return xx, yy, xy
 }

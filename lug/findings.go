@@ -129,7 +129,7 @@ func (p *part) bodyStress(l *load) float64 {
 	if h.BodyWidth != 0 {
 		w = h.BodyWidth
 	}
-	arm := h.BodyLength * math.Abs(l.sin)
+	arm := float64(h.BodyLength * math.Abs(l.sin))
 	if !h.BodyRestrained {
 		arm += math.Abs(h.Offset * l.cos)
 	}

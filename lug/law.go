@@ -37,7 +37,7 @@ func newLoad(c *LoadCase) load {
 		l.angle += 360
 	}
 	// An angle within the tolerance of geometry limits of a quarter turn is one.
-	if quarter := math.Round(l.angle/90) * 90; math.Abs(l.angle-quarter) <= strength.Within*90 {
+	if quarter := float64(math.Round(l.angle/90) * 90); math.Abs(l.angle-quarter) <= strength.Within*90 {
 		l.angle = math.Mod(quarter, 360)
 	}
 	l.sin, l.cos = sinDegrees(l.angle), cosDegrees(l.angle)
