@@ -200,7 +200,7 @@ func (v *solver) gradient(out []float64, c *preparedCase) {
 		}
 	}
 	for i, span := range k.spans {
-		elongation := v.flexibility[i] * v.load[i]
+		elongation := float64(v.flexibility[i] * v.load[i])
 		if c.change != nil {
 			elongation += float64(v.stretch[i] * c.change[span.member])
 		}
