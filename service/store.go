@@ -53,6 +53,11 @@ type Store interface {
 	// exactly this part and revision.
 	Latest(ctx context.Context, part, revision string) ([]Entry, error)
 
+	// CurveSet returns the entry of the curve set with this id@version, or of
+	// the latest with this id. ErrNotFound. CurveSets returns all, in order.
+	CurveSet(ctx context.Context, name string) (Entry, error)
+	CurveSets(ctx context.Context) ([]Entry, error)
+
 	// Key returns the key with this SHA-256, revoked or not. ErrNotFound.
 	Key(ctx context.Context, hash [32]byte) (Key, error)
 	// Keys lists all keys in the order of their making.
@@ -120,7 +125,9 @@ type Columns struct {
 
 // Term is one name that a record rests on.
 type Term struct {
-	Kind  string // method, material, curve-set
+	// Kind is method, material or curve-set of a record; an entry of the type
+	// curve-set has its own name as curve-set and its id as curve-set-id.
+	Kind  string
 	Value string
 }
 

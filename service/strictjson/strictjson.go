@@ -4,7 +4,7 @@
 // deep nesting; and it writes the canonical form of RFC 8785.
 //
 // A struct field whose tag has omitzero is an optional member; every other
-// field is a required one.
+// field is a required one, which may be null only when it is a pointer.
 package strictjson
 
 import (
@@ -13,6 +13,7 @@ import (
 	"fmt"
 	"io"
 	"reflect"
+	"slices"
 	"strconv"
 	"strings"
 	"sync"
@@ -61,6 +62,10 @@ func Decode(data []byte, into any) error {
 	}
 	return nil
 }
+
+// DecodeAny reads a document of our own making, nulls included, into maps,
+// slices, strings, numbers, booleans and nil.
+func DecodeAny(data []byte, into *any) error { return json.Unmarshal(data, into) }
 
 // Encode writes v as JSON in the order of its fields; a nil slice is [] and a
 // nil pointer null.
@@ -207,6 +212,7 @@ func (m *members) add(t reflect.Type) {
 var (
 	rawType   = reflect.TypeFor[Raw]()
 	wordsType = reflect.TypeFor[Words]()
+	nullable  = reflect.TypeFor[struct{}]() // stands for a member that is null and may be
 )
 
 // inspect finds what the library lets pass: nulls, missing members, unknown
@@ -229,8 +235,8 @@ func inspectValue(d *jsontext.Decoder, t reflect.Type) error {
 	for t != nil && t.Kind() == reflect.Pointer {
 		t = t.Elem()
 	}
-	if t == rawType {
-		t = nil
+	if t == rawType && kind != 'n' {
+		t = nil // whoever decodes it inspects it
 	}
 	if t != nil && t.Kind() == reflect.Struct {
 		if e, ok := reflect.Zero(t).Interface().(either); ok {
@@ -262,7 +268,7 @@ func inspectValue(d *jsontext.Decoder, t reflect.Type) error {
 		_, err := d.ReadToken()
 		return err
 	case 'n':
-		if _, err := d.ReadToken(); err != nil {
+		if _, err := d.ReadToken(); err != nil || t == nullable || t == nil {
 			return err
 		}
 		return &Error{string(d.StackPointer()), "must not be null; leave the member out"}
@@ -313,6 +319,9 @@ func inspectObject(d *jsontext.Decoder, t reflect.Type) error {
 				return &Error{string(d.StackPointer()), "there is no member of this name"}
 			}
 			found[name], next = true, member
+			if d.PeekKind() == 'n' && member.Kind() == reflect.Pointer && slices.Contains(known.required, name) {
+				next = nullable
+			}
 		}
 		if err := inspectValue(d, next); err != nil {
 			return err
