@@ -47,14 +47,14 @@ func tateSingle(i Interface, s *complianceSheet) float64 {
 	}
 	s.inputs(i, true)
 	t1, t2, d := i.T1, i.T2, i.Diameter
-	bolt := term("C_bearing,bolt", 1/(i.Ef*t1)+1/(i.Ef*t2), "1 / (E_f t_1) + 1 / (E_f t_2)")
-	plates := term("C_bearing,plates", 1/(i.E1*t1)+1/(i.E2*t2), "1 / (E_1 t_1) + 1 / (E_2 t_2)")
+	bolt := term("C_bolt", 1/(i.Ef*t1)+1/(i.Ef*t2), "1 / (E_f t_1) + 1 / (E_f t_2)")
+	plates := term("C_plates", 1/(i.E1*t1)+1/(i.E2*t2), "1 / (E_1 t_1) + 1 / (E_2 t_2)")
 	shear := term("C_shear", 32*(t1+t2)*(1+i.Nuf)/(9*i.Ef*math.Pi*d*d),
 		"32 (t_1 + t_2) (1 + ν_f) / (9 E_f π d²)")
 	cubes := float64(t1*t1*t1) + float64(5*t1*t1*t2) + float64(5*t1*t2*t2) + float64(t2*t2*t2)
 	bending := term("C_bending", 8*cubes/(5*i.Ef*math.Pi*d*d*d*d),
 		"8 (t_1³ + 5 t_1² t_2 + 5 t_1 t_2² + t_2³) / (5 E_f π d⁴)")
-	return term("C", bolt+plates+shear+bending, "C_bearing,bolt + C_bearing,plates + C_shear + C_bending")
+	return term("C", bolt+plates+shear+bending, "C_bolt + C_plates + C_shear + C_bending")
 }
 
 func tateDouble(i Interface, s *complianceSheet) float64 {
@@ -72,10 +72,10 @@ func tateDouble(i Interface, s *complianceSheet) float64 {
 	cubes := float64(8*ts*ts*ts) + float64(16*ts*ts*tp) + float64(8*ts*tp*tp) + float64(tp*tp*tp)
 	bending := term("C_bending", cubes/(192*i.Ef*inertia), strength.Compliance,
 		"(8 t_2³ + 16 t_2² t_1 + 8 t_2 t_1² + t_1³) / (192 E_f I)")
-	bolt := term("C_bearing,bolt", length/(ts*tp*i.Ef), strength.Compliance, "(2 t_2 + t_1) / (t_2 t_1 E_f)")
-	plates := term("C_bearing,plates", 1/(ts*i.E2)+2/(tp*i.E1), strength.Compliance, "1 / (t_2 E_2) + 2 / (t_1 E_1)")
+	bolt := term("C_bolt", length/(ts*tp*i.Ef), strength.Compliance, "(2 t_2 + t_1) / (t_2 t_1 E_f)")
+	plates := term("C_plates", 1/(ts*i.E2)+2/(tp*i.E1), strength.Compliance, "1 / (t_2 E_2) + 2 / (t_1 E_1)")
 	onPlane := term("C_b", shear+bending+bolt+plates, strength.Compliance,
-		"C_shear + C_bending + C_bearing,bolt + C_bearing,plates")
+		"C_shear + C_bending + C_bolt + C_plates")
 	return s.add("C", onPlane/2, strength.Compliance, "C_b / 2",
 		sourceTate+"; on the bolt's whole load, half of which passes each shear plane", mark)
 }

@@ -44,21 +44,18 @@ type wireSplice struct {
 	} `json:"load_cases"`
 }
 
-// unitScales turns the values of a system of units into N and mm.
-func unitScales(t *testing.T, units string) (force, length float64) {
-	switch units {
-	case "SI":
-		return 1, 1
-	case "US":
-		return 4.4482216152605, 25.4
+// unitsOf is the size of a system's units of force and length in N and mm.
+func unitsOf(t *testing.T, units string) (force, length float64) {
+	s, ok := scales[units]
+	if !ok {
+		t.Fatalf("units %q", units)
 	}
-	t.Fatalf("units %q", units)
-	return 0, 0
+	return s.force, s.length
 }
 
 // decode turns a request into the types of this package.
 func (w *wireSplice) decode(t *testing.T) (Splice, strength.Factors, []SpliceCase) {
-	force, length := unitScales(t, w.Units)
+	force, length := unitsOf(t, w.Units)
 	stress := force / (length * length)
 	s := Splice{Compliance: w.Compliance, CompareCompliance: w.CompareCompliance, Symmetric: w.Symmetric}
 	for _, m := range w.Members {
@@ -82,7 +79,7 @@ func (w *wireSplice) decode(t *testing.T) (Splice, strength.Factors, []SpliceCas
 	}
 	var cases []SpliceCase
 	for _, c := range w.LoadCases {
-		level := map[string]strength.Level{"limit": strength.Limit, "ultimate": strength.Ultimate}[c.Level]
+		level := levels[c.Level]
 		if level == 0 {
 			t.Fatalf("level %q", c.Level)
 		}
@@ -95,8 +92,8 @@ func (w *wireSplice) decode(t *testing.T) (Splice, strength.Factors, []SpliceCas
 	return s, strength.Factors{Ultimate: w.Factors.Ultimate, Fitting: w.Factors.Fitting}, cases
 }
 
-// readPrinted reads a value and the half unit of its last digit.
-func readPrinted(t *testing.T, text string) (value, half float64) {
+// printedDigits reads a value and the half unit of its last digit.
+func printedDigits(t *testing.T, text string) (value, half float64) {
 	value, err := strconv.ParseFloat(text, 64)
 	if err != nil {
 		t.Fatal(err)
@@ -162,7 +159,7 @@ func TestPublishedSplices(t *testing.T) {
 				if len(faults) > 0 {
 					t.Fatalf("faults: %v", faults)
 				}
-				force, length := unitScales(t, c.Input.Units)
+				force, length := unitsOf(t, c.Input.Units)
 				out := p.NewTransfers()
 				for _, e := range c.Expect.Transfers {
 					i := slices.IndexFunc(cases, func(c SpliceCase) bool { return c.ID == e.LoadCase })
@@ -173,7 +170,7 @@ func TestPublishedSplices(t *testing.T) {
 					if k < 0 {
 						t.Fatalf("no interface %v at row %d", e.Between, e.Row)
 					}
-					want, half := readPrinted(t, e.Share)
+					want, half := printedDigits(t, e.Share)
 					if got := out.Interfaces[k].Share; math.Abs(got-want) > half*(1+1e-9) {
 						t.Errorf("row %d: share %.7f, printed %s", e.Row, got, e.Share)
 					}
@@ -186,7 +183,7 @@ func TestPublishedSplices(t *testing.T) {
 						t.Fatalf("no working %s at row %d", e.Symbol, e.Row)
 					}
 					unit := math.Pow(force, float64(workings[k].Unit.Force)) * math.Pow(length, float64(workings[k].Unit.Length))
-					want, half := readPrinted(t, e.Value)
+					want, half := printedDigits(t, e.Value)
 					if got := workings[k].Value / unit; math.Abs(got-want) > half*(1+1e-9) {
 						t.Errorf("row %d: %s = %.8g, printed %s", e.Row, e.Symbol, got, e.Value)
 					}
