@@ -90,6 +90,8 @@ type Transfers struct {
 	// Residual is the largest error of equilibrium at any member and row, or of
 	// compatibility around any bay turned into a load, over the load through.
 	Residual float64
+	// Contact tells how clearances were taken up.
+	Contact Contact
 }
 
 // InterfaceLoad is what the fasteners of a row pass between two members.

@@ -24,7 +24,7 @@ type solver struct {
 	flexibility []float64 // f of each span, mm/N
 	compliance  []float64 // c of each interface of all fasteners of the row, mm/N
 	stretch     []float64 // α p of each span, mm per degree
-	diagonal    []float64
+	diagonal    []float64 // of the system factored last
 
 	factor   blas64.TriangularBand // Cholesky
 	unknown  []float64
@@ -32,7 +32,9 @@ type solver struct {
 	total    []float64 // load of all members in each bay
 	load     []float64 // N of each span
 	transfer []float64 // R of each interface
+	taken    []float64 // clearance taken up at each interface, signed as R, mm
 	residual float64
+	contact  *contact  // nil without clearance
 	net      []float64 // by pair of members, while shares are made
 }
 
@@ -56,25 +58,31 @@ func (v *solver) prepare(k *stack, s *Splice, compliance []float64) (faults faul
 	v.total = make([]float64, len(s.Pitches))
 	v.load = make([]float64, len(k.spans))
 	v.transfer = make([]float64, k.interfaces())
+	v.taken = make([]float64, k.interfaces())
 	v.net = make([]float64, len(k.pairs))
+	v.contact = newContact(k, s)
 	if k.unknowns == 0 {
 		return nil
 	}
 	v.unknown = make([]float64, k.unknowns)
 	v.misfit = make([]float64, k.unknowns)
-	if !v.factorize() {
+	v.diagonal = make([]float64, k.unknowns)
+	v.factor.Data = make([]float64, k.unknowns*(k.band+1))
+	if !v.factorInto(&v.factor, v.compliance) {
 		faults.add("/rows", "the compliances of the rows and the flexibilities of the bays differ by so much that their equations cannot be solved in double precision")
 	}
 	return faults
 }
 
-// factorize builds and factors the system. It calls the factorisation of
-// mat.BandCholesky directly, since that type also estimates a condition number,
-// in a time that grows with the square of the rows.
-func (v *solver) factorize() bool {
+// factorInto factors the system with the given compliances of the interfaces,
+// in the memory of factor. It calls the factorisation of mat.BandCholesky
+// directly, since that type also estimates a condition number, in a time that
+// grows with the square of the rows.
+func (v *solver) factorInto(factor *blas64.TriangularBand, compliance []float64) (ok bool) {
 	k := v.stack
 	width := k.band + 1
-	data := make([]float64, k.unknowns*width)
+	data := factor.Data
+	clear(data)
 	spring := func(a, b term, c float64) {
 		if a == b {
 			return
@@ -91,36 +99,47 @@ func (v *solver) factorize() bool {
 	}
 	for x, node := range k.nodes {
 		if k.inner(x) {
-			spring(node.left, node.right, v.compliance[x-node.row])
+			spring(node.left, node.right, compliance[x-node.row])
 		}
 	}
 	for i, span := range k.spans {
 		spring(span.above, span.below, v.flexibility[i])
 	}
-	v.diagonal = make([]float64, k.unknowns)
 	for i := range v.diagonal {
 		v.diagonal[i] = data[i*width]
 		if !(v.diagonal[i] > 0) || math.IsInf(v.diagonal[i], 0) {
 			return false
 		}
 	}
-	factor, ok := lapack64.Pbtrf(blas64.SymmetricBand{Uplo: blas.Upper, N: k.unknowns, K: k.band, Stride: width, Data: data})
-	v.factor = factor
+	*factor, ok = lapack64.Pbtrf(blas64.SymmetricBand{Uplo: blas.Upper, N: k.unknowns, K: k.band, Stride: width, Data: data})
 	return ok
+}
+
+// backSolve solves the factored system in place.
+func backSolve(factor blas64.TriangularBand, b []float64) {
+	lapack64.Pbtrs(factor, blas64.General{Rows: len(b), Cols: 1, Stride: 1, Data: b})
 }
 
 // solve finds the loads of case c. It allocates nothing.
 func (v *solver) solve(c *preparedCase) {
 	v.sumEnds(c)
 	clear(v.unknown)
+	clear(v.taken)
 	v.spread(c)
 	if len(v.unknown) > 0 {
 		v.gradient(v.unknown, c)
 		for i := range v.unknown {
 			v.unknown[i] = -v.unknown[i]
 		}
-		lapack64.Pbtrs(v.factor, blas64.General{Rows: len(v.unknown), Cols: 1, Stride: 1, Data: v.unknown})
+		backSolve(v.factor, v.unknown)
 		v.spread(c)
+	}
+	switch {
+	case v.contact == nil:
+	case len(v.unknown) == 0:
+		v.determinate()
+	default:
+		v.settle(c)
 	}
 	v.findResidual(c)
 }
@@ -196,7 +215,8 @@ func (v *solver) gradient(out []float64, c *preparedCase) {
 	}
 	for x, node := range k.nodes {
 		if k.inner(x) {
-			add(node.left, node.right, v.compliance[x-node.row]*v.transfer[x-node.row])
+			i := x - node.row
+			add(node.left, node.right, float64(v.compliance[i]*v.transfer[i])+v.taken[i])
 		}
 	}
 	for i, span := range k.spans {

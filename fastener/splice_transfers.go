@@ -63,7 +63,10 @@ func (p *PreparedSplice) enter(i int) {
 // transfers writes the present solution down.
 func (v *solver) transfers(c *preparedCase, out *Transfers) {
 	k := v.stack
-	out.Through = c.through
+	out.Through, out.Contact = c.through, Contact{}
+	if v.contact != nil {
+		out.Contact = v.contact.result
+	}
 	largest := c.through
 	for x, node := range k.nodes {
 		left, right := v.sides(x, c)
