@@ -29,12 +29,16 @@ func (m Method) Name() string { return fmt.Sprintf("%s@%d", m.ID, m.Revision) }
 // The names that checks carry.
 const (
 	methodElastic     = "elastic-centroid@1"
+	methodCentre      = "instantaneous-centre@1"
 	methodShear       = "fastener-shear@1"
 	methodTension     = "fastener-tension@1"
 	methodBearing     = "plate-bearing@1"
 	methodInteract22  = "interaction-2-2@1"
 	sourceInPlane     = "NASA RP-1228, eccentric shear: direct share plus moment share about the centroid of stiffness"
 	sourceOutOfPlane  = "rigid attached member on linear springs about the centroid of their stiffness"
+	sourceSlotted     = "rigid attached member on springs that resist nothing along a slot"
+	sourceHeel        = "rigid attached member turning about the side or vertex of its outline that stays in contact"
+	sourceCentre      = "AISC Steel Construction Manual part 7, instantaneous centre of rotation"
 	sourceBearing     = "MIL-HDBK-5J section 1.4.7: bearing stress on D t, by straight line between e/D 1.5 and 2.0"
 	sourceShear       = "NASA RP-1228: F_su times the area in the shear plane, or the rated strength"
 	sourceTension     = "the part standard's rated strength, else F_tu times the tensile stress area"
@@ -57,6 +61,17 @@ func Methods() []Method {
 				{"1", "V_x = k_v (P_x/K_v - M_z (y - y_c)/J)", sourceInPlane, strength.Seen},
 				{"2", "V_y = k_v (P_y/K_v + M_z (x - x_c)/J)", sourceInPlane, strength.Seen},
 				{"3", "T = k_t (P_z/K_t + a (y - y_t) - b (x - x_t))", sourceOutOfPlane, strength.Derived},
+				{"4", "T = k_t l M_h / Σ(k_t l²), heel on a side", sourceHeel, strength.Derived},
+				{"5", "V = k_v (1 - s sᵀ) δ, slotted along s", sourceSlotted, strength.Derived},
+			},
+		},
+		{
+			ID: "instantaneous-centre", Revision: 1, Kind: "pattern",
+			Title: "Eccentric shear at ultimate about the instantaneous centre", Source: sourceCentre,
+			Range: "high-strength steel bolts in bearing, at ultimate; others with a caution",
+			Mark:  strength.FromMemory(95),
+			Equations: []Equation{
+				{"1", "R = V_u (1 - exp(-10 Δ))^0.55, Δ in inches, 0.34 in at the farthest", sourceCentre, strength.FromMemory(95)},
 			},
 		},
 		{

@@ -15,7 +15,9 @@ type Fastener struct {
 	ShearStiffness, TensionStiffness float64
 	E, Nu                            float64
 	Installation                     string
-	SlotAngle                        *float64 // degrees
+	// SlotAngle is the direction of a slotted hole in degrees from x: along it
+	// the fastener resists nothing; nil for a round hole.
+	SlotAngle *float64
 }
 
 // Plate is one of the plates that the fasteners of a pattern join. The first is
@@ -39,8 +41,8 @@ type Pattern struct {
 	Plates      []Plate
 	Rules       []RuleSet
 	Interaction string // "" or a word of Methods' interactions
-	InPlane     string // "" or "elastic"
-	OutOfPlane  string // "" or "centroid"
+	InPlane     string // "" or "elastic", or "instantaneous-centre" at ultimate
+	OutOfPlane  string // "" or "centroid", or "heel" about plates[0]'s outline
 }
 
 // PatternCase is one load on the attached member, at Point.
@@ -64,6 +66,7 @@ type PreparedPattern struct {
 	factors     strength.Factors
 	cases       []PatternCase
 	sharing     *elastic
+	centre      *instantaneous // nil unless asked for and possible
 	loads       []centred
 	outlines    [][]side
 	checks      []strength.Check
@@ -74,8 +77,12 @@ type PreparedPattern struct {
 
 // caseState is what the assessments of one load case read.
 type caseState struct {
-	level  strength.Level
-	shares []Share
+	index int
+	level strength.Level
+	// shares for the checks at each level: the same elastic ones, but those at
+	// ultimate where the instantaneous centre gives them.
+	shares   [strength.Ultimate + 1][]Share
+	ultimate atUltimate
 }
 
 // assessment compares one demand with one allowable in every load case.
@@ -119,7 +126,11 @@ func PreparePattern(p Pattern, f strength.Factors, cases []PatternCase) (*Prepar
 	for i, a := range prepared.assessments {
 		prepared.checks[i] = a.check()
 	}
-	prepared.state.shares = make([]Share, len(p.Fasteners))
+	shares := make([]Share, len(p.Fasteners))
+	prepared.state.shares = [...][]Share{nil, shares, shares}
+	if prepared.centre != nil {
+		prepared.state.shares[strength.Ultimate] = make([]Share, len(p.Fasteners))
+	}
 	prepared.findings = prepared.allFindings(edges, near)
 	return prepared, nil
 }
@@ -144,6 +155,9 @@ func (p *PreparedPattern) edgeDistances() [][]edgeDistance {
 // addAssessments lists the checks in the order of answers: each fastener, then
 // the plates at it.
 func (p *PreparedPattern) addAssessments(edges [][]edgeDistance) {
+	if p.pattern.InPlane == inPlaneCentre {
+		p.addCentre()
+	}
 	for i := range p.pattern.Fasteners {
 		p.addFastenerStrength(i)
 		for k := range p.pattern.Plates {
@@ -156,10 +170,17 @@ func (p *PreparedPattern) addAssessments(edges [][]edgeDistance) {
 func (p *PreparedPattern) Centroid() [2]float64 { return [2]float64{p.sharing.xc, p.sharing.yc} }
 
 // Shares fills out, one for each fastener in order, with the shares of load
-// case i at the level given, before factors. The residual is the largest error
-// of equilibrium relative to the load.
+// case i at the level given, before factors; by the instantaneous centre, a case
+// given at ultimate has those at its ultimate value, scaled to it. The residual
+// is the largest error of equilibrium relative to the load. It allocates
+// nothing and may be called from one goroutine at a time.
 func (p *PreparedPattern) Shares(i int, out []Share) (residual float64) {
-	return p.sharing.share(p.loads[i], out)
+	residual = p.sharing.share(p.loads[i], out)
+	if p.centre != nil && p.cases[i].Level == strength.Ultimate {
+		p.centre.share(p.sharing, p.loads[i], out)
+		residual = p.sharing.settleShears(p.loads[i], out)
+	}
+	return residual
 }
 
 // Checks implements strength.Calculation.
@@ -174,8 +195,16 @@ func (p *PreparedPattern) Margins(i int, out []strength.Margin) {
 }
 
 func (p *PreparedPattern) enter(i int) {
-	p.state.level = p.cases[i].Level
-	p.Shares(i, p.state.shares)
+	s := &p.state
+	s.index, s.level = i, p.cases[i].Level
+	elastic := s.shares[strength.Limit]
+	p.sharing.share(p.loads[i], elastic)
+	if p.centre != nil {
+		ultimate := s.shares[strength.Ultimate]
+		copy(ultimate, elastic)
+		s.ultimate = p.centre.share(p.sharing, p.loads[i], ultimate)
+		p.sharing.settleShears(p.loads[i], ultimate)
+	}
 }
 
 // Workings implements strength.Calculation. Steps of the sharing have the

@@ -13,12 +13,14 @@ func field(list string, index int, name string) string {
 
 func caseField(index int, name string) string { return field("load_cases", index, name) }
 
+const inPlaneCentre = "instantaneous-centre"
+
 // The words that a pattern's choices take.
 var (
 	stiffnessWords  = []string{"equal", "area", "given"}
 	interactionWord = []string{"", "2-2"}
-	inPlaneWords    = []string{"", "elastic"}
-	outOfPlaneWords = []string{"", "centroid"}
+	inPlaneWords    = []string{"", "elastic", inPlaneCentre}
+	outOfPlaneWords = []string{"", "centroid", "heel"}
 	threadForms     = []string{"unified", "iso"}
 )
 
@@ -38,7 +40,18 @@ func (p *PreparedPattern) inputFaults() []strength.Fault {
 	word("/interaction", p.pattern.Interaction, interactionWord)
 	word("/in_plane", p.pattern.InPlane, inPlaneWords)
 	word("/out_of_plane", p.pattern.OutOfPlane, outOfPlaneWords)
+	if p.pattern.OutOfPlane == "heel" {
+		switch {
+		case len(p.pattern.Plates) == 0:
+			fault("/plates", "out_of_plane \"heel\" needs the outline of the attached member, plates[0]")
+		case len(p.pattern.Plates[0].Outline) == 0:
+			fault("/plates/0/outline", "out_of_plane \"heel\" needs the outline of the attached member")
+		}
+	}
 	for i, f := range p.pattern.Fasteners {
+		if f.SlotAngle != nil && p.pattern.InPlane == inPlaneCentre {
+			fault(field("fasteners", i, "slot_angle"), "in_plane \"instantaneous-centre\" does not go with slotted holes")
+		}
 		if f.ShearPlanes < 0 || f.ShearPlanes > 2 {
 			fault(field("fasteners", i, "shear_planes"), "found %d, allowed are 1 and 2", f.ShearPlanes)
 		}

@@ -65,12 +65,12 @@ func (p *PreparedPattern) caseFindings() []strength.Finding {
 		tension            float64
 		fastener, loadCase string
 	}{}
-	shares := p.state.shares
+	shares := p.state.shares[strength.Limit]
 	for i, c := range p.cases {
 		if c.Level == strength.Ultimate {
 			ultimate++
 		}
-		p.Shares(i, shares)
+		p.sharing.share(p.loads[i], shares)
 		scale := 0.0
 		for _, s := range shares {
 			scale = max(scale, s.Resultant, s.Tension, -s.Tension)

@@ -36,12 +36,14 @@ type elastic struct {
 	xt, yt    float64
 	sumV, j   float64
 	sumT      float64
-	cos, sin  float64 // direction of u
-	iu, iv    float64 // Σ k_t v² and Σ k_t u²
-	iuv       float64 // Σ k_t u v
-	reach     float64 // the farthest fastener from the shear centroid
-	length    float64 // extent along u
-	breadth   float64 // extent along v
+	cos, sin  float64  // direction of u
+	iu, iv    float64  // Σ k_t v² and Σ k_t u²
+	iuv       float64  // Σ k_t u v
+	reach     float64  // the farthest fastener from the shear centroid
+	length    float64  // extent along u
+	breadth   float64  // extent along v
+	slots     *slotted // nil without slots
+	heel      *heel    // nil unless the member turns about its outline
 }
 
 // centred is a load about the centroids: forces, the moment about z at the
@@ -71,6 +73,10 @@ func newElastic(p Pattern) *elastic {
 	x, y, e.tx, e.ty, e.sumT = offsets(p.Fasteners, e.kt)
 	e.xt, e.yt = e.x0+e.tx, e.y0+e.ty
 	e.principal(x, y)
+	e.slots = newSlotted(e)
+	if p.OutOfPlane == "heel" {
+		e.heel = newHeel(e, p.Plates[0].Outline)
+	}
 	return e
 }
 
@@ -203,22 +209,28 @@ func (e *elastic) centre(c PatternCase, index int) (centred, strength.Fault) {
 	if moment == 0 {
 		pointer = caseField(index, "point")
 	}
-	fault := func(format string, args ...any) (centred, strength.Fault) {
-		return load, strength.Fault{Pointer: pointer, Message: strength.Say(format, args...)}
+	fault := func(m strength.Message) (centred, strength.Fault) {
+		return load, strength.Fault{Pointer: pointer, Message: m}
 	}
-	if len(e.fasteners) == 1 {
-		id := e.fasteners[0].ID
-		if settle(&load.mz) {
-			return fault("nothing resists turning in the plane about fastener %q, which is alone: the load makes a moment of %v about its axis", id, strength.Moment.Of(load.mz))
+	alone := len(e.fasteners) == 1
+	switch {
+	case e.slots != nil:
+		if m := e.slots.drift(e, load, nothing); !m.Empty() {
+			return fault(m)
 		}
-		if settle(&load.mu) || settle(&load.mv) {
-			return fault("nothing resists rocking out of the plane about fastener %q, which is alone: the load makes a moment of %v there", id, strength.Moment.Of(math.Hypot(load.mu, load.mv)))
-		}
-		return load, strength.Fault{}
+	case alone && settle(&load.mz):
+		return fault(strength.Say("nothing resists turning in the plane about fastener %q, which is alone: the load makes a moment of %v about its axis",
+			e.fasteners[0].ID, strength.Moment.Of(load.mz)))
 	}
-	if e.breadth <= slender*e.length && settle(&load.mu) {
+	switch {
+	case e.heel != nil:
+	case alone && (settle(&load.mu) || settle(&load.mv)):
+		return fault(strength.Say("nothing resists rocking out of the plane about fastener %q, which is alone: the load makes a moment of %v there",
+			e.fasteners[0].ID, strength.Moment.Of(math.Hypot(load.mu, load.mv))))
+	case !alone && e.breadth <= slender*e.length && settle(&load.mu):
 		angle := math.Atan2(e.sin, e.cos) * 180 / math.Pi
-		return fault("nothing resists turning about the line through the fasteners (%.4g° from the x axis): the load makes a moment of %v about it", angle, strength.Moment.Of(load.mu))
+		return fault(strength.Say("nothing resists turning about the line through the fasteners (%.4g° from the x axis): the load makes a moment of %v about it",
+			angle, strength.Moment.Of(load.mu)))
 	}
 	return load, strength.Fault{}
 }
@@ -227,6 +239,10 @@ func (e *elastic) centre(c PatternCase, index int) (centred, strength.Fault) {
 func (e *elastic) share(load centred, out []Share) float64 {
 	for i := range out {
 		out[i] = Share{}
+	}
+	whole := load
+	if e.heel != nil {
+		load.z, load.mu, load.mv = 0, 0, 0
 	}
 	e.distribute(load, out)
 	rest, residual := e.imbalance(load, out)
@@ -242,8 +258,40 @@ func (e *elastic) share(load centred, out []Share) float64 {
 		}
 		rest, residual = better, smaller
 	}
+	if e.heel != nil {
+		residual = max(residual, e.heel.stretch(e, whole, out))
+	}
+	resultants(out)
+	return residual
+}
+
+func resultants(out []Share) {
 	for i := range out {
-		out[i].Resultant = math.Sqrt(float64(out[i].Shear[0]*out[i].Shear[0]) + float64(out[i].Shear[1]*out[i].Shear[1]))
+		s := &out[i]
+		s.Resultant = math.Sqrt(float64(s.Shear[0]*s.Shear[0]) + float64(s.Shear[1]*s.Shear[1]))
+	}
+}
+
+// settleShears completes shares whose shears came from elsewhere and returns
+// the residual of these.
+func (e *elastic) settleShears(load centred, out []Share) float64 {
+	resultants(out)
+	rest := load
+	for i := range out {
+		rest.x -= out[i].Shear[0]
+		rest.y -= out[i].Shear[1]
+		rest.mz -= float64(e.x[i]*out[i].Shear[1]) - float64(e.y[i]*out[i].Shear[0])
+	}
+	force := math.Sqrt(float64(load.x*load.x) + float64(load.y*load.y))
+	if e.reach > 0 {
+		force += math.Abs(load.mz) / e.reach
+	}
+	if force == 0 {
+		return 0
+	}
+	residual := max(math.Abs(rest.x), math.Abs(rest.y)) / force
+	if e.reach > 0 {
+		residual = max(residual, math.Abs(rest.mz)/(force*e.reach))
 	}
 	return residual
 }
@@ -261,6 +309,11 @@ func (e *elastic) tilt(mu, mv float64) (a, b float64) {
 }
 
 func (e *elastic) distribute(load centred, out []Share) {
+	if e.slots != nil {
+		e.slots.distribute(e, load, out)
+		e.stretch(load, out)
+		return
+	}
 	dx, dy, dz := load.x/e.sumV, load.y/e.sumV, load.z/e.sumT
 	turn := 0.0
 	if e.j > 0 {
@@ -274,6 +327,14 @@ func (e *elastic) distribute(load centred, out []Share) {
 		s.Shear[0] += float64(kv[i] * (dx - float64(turn*y[i])))
 		s.Shear[1] += float64(kv[i] * (dy + float64(turn*x[i])))
 		s.Tension += float64(kt[i] * (dz + float64(a*v[i]) - float64(b*u[i])))
+	}
+}
+
+// stretch adds the tensions of a load.
+func (e *elastic) stretch(load centred, out []Share) {
+	a, b := e.tilt(load.mu, load.mv)
+	for i := range out {
+		out[i].Tension += e.kt[i] * (load.z/e.sumT + float64(a*e.v[i]) - float64(b*e.u[i]))
 	}
 }
 

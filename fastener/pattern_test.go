@@ -91,7 +91,7 @@ func TestWorkingsClose(t *testing.T) {
 var identifier = regexp.MustCompile(`[\p{L}][\p{L}\p{Nd}_']*`)
 
 // functions are the identifiers that are no symbols.
-var functions = map[string]bool{"sqrt": true, "min": true, "max": true, "Σ": true, "π": true, "cos": true, "sin": true}
+var functions = map[string]bool{"sqrt": true, "min": true, "max": true, "exp": true, "with": true, "and": true, "at": true, "once": true, "Σ": true, "π": true, "cos": true, "sin": true}
 
 func assertClosed(t *testing.T, check strength.Check, m strength.Margin, steps []strength.Working) {
 	t.Helper()
@@ -132,6 +132,12 @@ func variants() map[string]func(*Pattern) {
 		"equal": func(*Pattern) {},
 		"area":  func(p *Pattern) { p.Stiffness = "area" },
 		"given": func(p *Pattern) { p.Stiffness = "given" },
+		"slots": func(p *Pattern) {
+			along, skew := 0.0, 40.0
+			p.Stiffness, p.Fasteners[1].SlotAngle, p.Fasteners[4].SlotAngle = "given", &along, &skew
+		},
+		"heel":                 func(p *Pattern) { p.OutOfPlane = "heel" },
+		"instantaneous centre": func(p *Pattern) { p.InPlane = "instantaneous-centre" },
 	}
 }
 

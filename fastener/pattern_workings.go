@@ -55,12 +55,15 @@ func patternStep(symbol string, value float64, unit strength.Unit, equation, sou
 // shearSteps are the static steps of in-plane sharing.
 func (e *elastic) shearSteps() []strength.Working {
 	k := e.weightUnit()
-	return append(e.stiffnessSteps("k_v", e.kv),
+	steps := append(e.stiffnessSteps("k_v", e.kv),
 		patternStep("K_v", e.sumV, k, "Σ k_v", "over all fasteners", strength.Seen),
 		patternStep("x_c", e.xc, strength.Length, "Σ(k_v x) / K_v", sourceInPlane, strength.Seen),
 		patternStep("y_c", e.yc, strength.Length, "Σ(k_v y) / K_v", sourceInPlane, strength.Seen),
-		patternStep("J", e.j, k.Times(strength.Area), "Σ(k_v ((x - x_c)² + (y - y_c)²))", sourceInPlane, strength.Seen),
 	)
+	if e.slots != nil {
+		return append(steps, e.slots.steps(e)...)
+	}
+	return append(steps, patternStep("J", e.j, k.Times(strength.Area), "Σ(k_v ((x - x_c)² + (y - y_c)²))", sourceInPlane, strength.Seen))
 }
 
 func givenLoad(c PatternCase, symbols ...string) []strength.Working {
@@ -88,7 +91,13 @@ func (e *elastic) shearCaseSteps(c PatternCase, load centred, i int, share Share
 	steps := append(givenLoad(c, "P_x", "P_y", "p_x", "p_y", "M_oz"),
 		patternStep("M_z", load.mz, strength.Moment, "M_oz + (p_x - x_c) P_y - (p_y - y_c) P_x", "moment about the centroid", strength.Seen))
 	x, y := "k_v (P_x/K_v - M_z (y - y_c)/J)", "k_v (P_y/K_v + M_z (x - x_c)/J)"
-	if e.j == 0 {
+	source, mark := sourceInPlane, strength.Seen
+	switch {
+	case e.slots != nil:
+		steps = append(steps, e.slots.caseSteps(e, load)...)
+		x, y = "k_xx (u - θ (y - y_c)) + k_xy (v + θ (x - x_c))", "k_xy (u - θ (y - y_c)) + k_yy (v + θ (x - x_c))"
+		source, mark = sourceSlotted, strength.Derived
+	case e.j == 0:
 		x, y = "k_v P_x/K_v", "k_v P_y/K_v"
 	}
 	for _, s := range []struct {
@@ -99,7 +108,7 @@ func (e *elastic) shearCaseSteps(c PatternCase, load centred, i int, share Share
 		{"V_y", y, share.Shear[1]},
 		{"V", "sqrt(V_x² + V_y²)", share.Resultant},
 	} {
-		step := patternStep(s.symbol, s.value, strength.Force, s.equation, sourceInPlane, strength.Seen)
+		step := patternStep(s.symbol, s.value, strength.Force, s.equation, source, mark)
 		step.Fastener = e.fasteners[i].ID
 		steps = append(steps, step)
 	}
@@ -108,6 +117,14 @@ func (e *elastic) shearCaseSteps(c PatternCase, load centred, i int, share Share
 
 // tensionSteps are the static steps of out-of-plane sharing.
 func (e *elastic) tensionSteps() []strength.Working {
+	if e.heel != nil {
+		return e.stiffnessSteps("k_t", e.kt)
+	}
+	return e.centroidSteps()
+}
+
+// centroidSteps are those of sharing about the centroid of tension stiffness.
+func (e *elastic) centroidSteps() []strength.Working {
 	k := e.weightUnit()
 	steps := append(e.stiffnessSteps("k_t", e.kt),
 		patternStep("K_t", e.sumT, k, "Σ k_t", "over all fasteners", strength.Derived),
@@ -145,7 +162,26 @@ func (e *elastic) second() (xx, yy, xy float64) {
 
 // tensionCaseSteps are the steps from a load case to the tension of fastener i.
 func (e *elastic) tensionCaseSteps(c PatternCase, load centred, i int, share Share) []strength.Working {
-	steps := givenLoad(c, "P_z")
+	steps := e.stretchSteps(c, load, i, share)
+	step := steps[len(steps)-1]
+	step.Symbol, step.Value, step.Equation, step.Source = "T_p", math.Max(share.Tension, 0), "max(T, 0)", "pushing together is borne by contact of the plates"
+	return append(steps, step)
+}
+
+// stretchSteps end at the tension T of fastener i.
+func (e *elastic) stretchSteps(c PatternCase, load centred, i int, share Share) []strength.Working {
+	if e.heel != nil {
+		return e.heel.caseSteps(e, c, load, i, share)
+	}
+	return e.centroidTension(c, load, i, share)
+}
+
+func (e *elastic) centroidTension(c PatternCase, load centred, i int, share Share) []strength.Working {
+	var steps []strength.Working
+	if e.heel != nil {
+		steps = e.centroidSteps()[4*len(e.fasteners):]
+	}
+	steps = append(steps, givenLoad(c, "P_z")...)
 	equation := "k_t P_z/K_t"
 	if e.iv > 0 {
 		mx := float64(e.cos*load.mu) - float64(e.sin*load.mv)
@@ -169,7 +205,5 @@ func (e *elastic) tensionCaseSteps(c PatternCase, load centred, i int, share Sha
 	}
 	step := patternStep("T", share.Tension, strength.Force, equation, sourceOutOfPlane, strength.Derived)
 	step.Fastener = e.fasteners[i].ID
-	steps = append(steps, step)
-	step.Symbol, step.Value, step.Equation, step.Source = "T_p", math.Max(share.Tension, 0), "max(T, 0)", "pushing together is borne by contact of the plates"
 	return append(steps, step)
 }

@@ -33,7 +33,7 @@ func (p *PreparedPattern) addBearing(i, k int, edges []edgeDistance) {
 		check := strength.Check{
 			Member: plate.ID, Mode: strength.Bearing, Level: level, Unit: strength.Force,
 			Method: methodBearing, Source: sourceBearing,
-			Mark: strength.Weakest(strength.Seen, capacity.mark()),
+			Mark: strength.Weakest(p.shearMark(level), capacity.mark()),
 		}
 		p.assessments = append(p.assessments, &bearingCheck{
 			p.place(i, check), k, p.loadShare(i, k), edge, capacity.value, reason(capacity.why),
@@ -140,7 +140,7 @@ func (a *allowable) addBearingStress(m *strength.Material, stress strength.Prope
 }
 
 func (a *bearingCheck) margin(c *caseState) strength.Margin {
-	return compare(c.shares[a.i].Resultant*a.share*a.factor[c.level], a.capacity, a.why)
+	return compare(c.shares[a.c.Level][a.i].Resultant*a.share*a.factor[c.level], a.capacity, a.why)
 }
 
 func (a *bearingCheck) steps() []strength.Working {
@@ -153,12 +153,12 @@ func (a *bearingCheck) steps() []strength.Working {
 		}
 	}
 	capacity.add("ψ", a.share, strength.None, "", source, strength.Given)
-	return append(a.p.sharing.shearSteps(), capacity.steps...)
+	return append(a.p.shearSteps(a.c.Level), capacity.steps...)
 }
 
 func (a *bearingCheck) caseSteps(c *caseState, i int) []strength.Working {
-	share := c.shares[a.i]
-	steps := append(a.p.sharing.shearCaseSteps(a.p.cases[i], a.p.loads[i], a.i, share),
+	share := c.shares[a.c.Level][a.i]
+	steps := append(a.p.shearCaseSteps(c, i, a.c.Level, a.i),
 		strength.Working{Symbol: "P_b", Value: share.Resultant * a.share, Unit: strength.Force, Equation: "ψ V", Source: "load of this plate"})
 	capacity := "P_bru"
 	if a.c.Level == strength.Limit {

@@ -102,8 +102,10 @@ func (p *PreparedPattern) addFastenerStrength(i int) {
 	check := strength.Check{Member: memberFastener, Level: strength.Ultimate, Unit: strength.Force}
 
 	check.Mode, check.Method, check.Source = strength.Shear, methodShear, sourceShear
-	check.Mark = strength.Weakest(strength.Seen, shear.mark())
-	p.assessments = append(p.assessments, &shearCheck{p.place(i, check), shear.value, reason(shear.why)})
+	check.Mark = strength.Weakest(p.shearMark(check.Level), shear.mark())
+	if p.pattern.InPlane != inPlaneCentre {
+		p.assessments = append(p.assessments, &shearCheck{p.place(i, check), shear.value, reason(shear.why)})
+	}
 
 	check.Mode, check.Method, check.Source = strength.Tension, methodTension, sourceTension
 	check.Mark = strength.Weakest(strength.Derived, tension.mark())
@@ -118,7 +120,7 @@ func (p *PreparedPattern) addFastenerStrength(i int) {
 		why = tension.why
 	}
 	check.Mode, check.Unit, check.Method, check.Source = strength.ShearTension, strength.None, curve.method, curve.source
-	check.Mark = strength.Weakest(strength.Derived, curve.mark, shear.mark(), tension.mark())
+	check.Mark = strength.Weakest(strength.Derived, p.shearMark(check.Level), curve.mark, shear.mark(), tension.mark())
 	p.assessments = append(p.assessments, &interactionCheck{p.place(i, check), curve, shear.value, tension.value, reason(why)})
 }
 
@@ -126,22 +128,22 @@ func (p *PreparedPattern) addFastenerStrength(i int) {
 func (f *Fastener) planes() int { return max(f.ShearPlanes, 1) }
 
 func (a *shearCheck) margin(c *caseState) strength.Margin {
-	return compare(c.shares[a.i].Resultant*a.factor[c.level], a.capacity, a.why)
+	return compare(c.shares[a.c.Level][a.i].Resultant*a.factor[c.level], a.capacity, a.why)
 }
 
 func (a *shearCheck) steps() []strength.Working {
 	f := &a.p.pattern.Fasteners[a.i]
-	return append(a.p.sharing.shearSteps(), f.Type.shear(f.Diameter, f.planes()).steps...)
+	return append(a.p.shearSteps(a.c.Level), f.Type.shear(f.Diameter, f.planes()).steps...)
 }
 
 func (a *shearCheck) caseSteps(c *caseState, i int) []strength.Working {
-	share := c.shares[a.i]
-	return append(a.p.sharing.shearCaseSteps(a.p.cases[i], a.p.loads[i], a.i, share),
+	share := c.shares[a.c.Level][a.i]
+	return append(a.p.shearCaseSteps(c, i, a.c.Level, a.i),
 		a.demandSteps(c, "V", share.Resultant, "V_u", a.margin(c))...)
 }
 
 func (a *tensionCheck) margin(c *caseState) strength.Margin {
-	return compare(max(c.shares[a.i].Tension, 0)*a.factor[c.level], a.capacity, a.why)
+	return compare(max(c.shares[a.c.Level][a.i].Tension, 0)*a.factor[c.level], a.capacity, a.why)
 }
 
 func (a *tensionCheck) steps() []strength.Working {
@@ -150,14 +152,14 @@ func (a *tensionCheck) steps() []strength.Working {
 }
 
 func (a *tensionCheck) caseSteps(c *caseState, i int) []strength.Working {
-	share := c.shares[a.i]
+	share := c.shares[a.c.Level][a.i]
 	return append(a.p.sharing.tensionCaseSteps(a.p.cases[i], a.p.loads[i], a.i, share),
 		a.demandSteps(c, "T_p", max(share.Tension, 0), "T_u", a.margin(c))...)
 }
 
 // ratios are the demands over the allowables.
 func (a *interactionCheck) ratios(c *caseState) (s, t float64) {
-	share := &c.shares[a.i]
+	share := &c.shares[a.c.Level][a.i]
 	factor := a.factor[c.level]
 	return share.Resultant * factor / a.shear, max(share.Tension, 0) * factor / a.tension
 }
@@ -165,7 +167,7 @@ func (a *interactionCheck) ratios(c *caseState) (s, t float64) {
 // margin is exercised by shear and tension together; either alone has its own
 // check.
 func (a *interactionCheck) margin(c *caseState) strength.Margin {
-	share := &c.shares[a.i]
+	share := &c.shares[a.c.Level][a.i]
 	if !(share.Resultant > 0 && share.Tension > 0) {
 		return strength.Margin{}
 	}
@@ -178,14 +180,14 @@ func (a *interactionCheck) margin(c *caseState) strength.Margin {
 
 func (a *interactionCheck) steps() []strength.Working {
 	f := &a.p.pattern.Fasteners[a.i]
-	steps := append(a.p.sharing.shearSteps(), a.p.sharing.tensionSteps()...)
+	steps := append(a.p.shearSteps(a.c.Level), a.p.sharing.tensionSteps()...)
 	steps = append(steps, f.Type.shear(f.Diameter, f.planes()).steps...)
 	return append(steps, f.Type.tension(f.Diameter).steps...)
 }
 
 func (a *interactionCheck) caseSteps(c *caseState, i int) []strength.Working {
-	share, load, loadCase := c.shares[a.i], a.p.loads[i], a.p.cases[i]
-	steps := append(a.p.sharing.shearCaseSteps(loadCase, load, a.i, share), a.p.sharing.tensionCaseSteps(loadCase, load, a.i, share)...)
+	share, load, loadCase := c.shares[a.c.Level][a.i], a.p.loads[i], a.p.cases[i]
+	steps := append(a.p.shearCaseSteps(c, i, a.c.Level, a.i), a.p.sharing.tensionCaseSteps(loadCase, load, a.i, share)...)
 	if a.why != nil {
 		return steps
 	}
