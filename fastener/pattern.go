@@ -13,8 +13,9 @@ type Fastener struct {
 	// ShearStiffness and TensionStiffness are read by stiffness `given` only;
 	// their ratios alone matter.
 	ShearStiffness, TensionStiffness float64
-	E, Nu                            float64
-	Installation                     string
+	// E in MPa, Nu and Installation are read by compliance formulas.
+	E, Nu        float64
+	Installation string
 	// SlotAngle is the direction of a slotted hole in degrees from x: along it
 	// the fastener resists nothing; nil for a round hole.
 	SlotAngle *float64
@@ -36,7 +37,7 @@ type Plate struct {
 
 // Pattern is a group of fasteners through one stack of plates.
 type Pattern struct {
-	Stiffness   string // "equal", "area" or "given"
+	Stiffness   string // "equal", "area", "given" or a compliance formula
 	Fasteners   []Fastener
 	Plates      []Plate
 	Rules       []RuleSet
@@ -108,7 +109,11 @@ func PreparePattern(p Pattern, f strength.Factors, cases []PatternCase) (*Prepar
 	if len(faults) > 0 {
 		return nil, faults
 	}
-	prepared.sharing = newElastic(p)
+	weights, faults := patternWeights(p)
+	if len(faults) > 0 {
+		return nil, faults
+	}
+	prepared.sharing = newElastic(p, weights)
 	prepared.loads = make([]centred, len(cases))
 	for i, c := range cases {
 		load, fault := prepared.sharing.centre(c, i)

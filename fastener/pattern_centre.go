@@ -89,7 +89,7 @@ func (c *instantaneous) solve(e *elastic, load centred) (u, v, turn float64) {
 	mx, my = mx/sum, my/sum
 	for i, k := range c.weight {
 		dx, dy := e.x[i]-mx, e.y[i]-my
-		j += k * (float64(dx*dx) + float64(dy*dy))
+		j += float64(k * (float64(dx*dx) + float64(dy*dy)))
 	}
 	if j > 0 {
 		turn = (load.mz - float64(mx*load.y) + float64(my*load.x)) / j
@@ -191,7 +191,7 @@ type centreCheck struct {
 func (p *PreparedPattern) addCentre() {
 	c := &instantaneous{strength: make([]float64, len(p.pattern.Fasteners)), weight: make([]float64, len(p.pattern.Fasteners))}
 	p.centre = c
-	mark := strength.Weakest(strength.Seen, strength.FromMemory(95))
+	mark := strength.Weakest(strength.Seen, strength.FromMemory(95), p.sharing.mark)
 	var why strength.Message
 	for i := range p.pattern.Fasteners {
 		f := &p.pattern.Fasteners[i]
@@ -259,9 +259,9 @@ func (p *PreparedPattern) shearMark(level strength.Level) strength.Mark {
 	case p.centre != nil && level == strength.Ultimate:
 		return p.centre.mark
 	case p.sharing.slots != nil:
-		return strength.Derived
+		return strength.Weakest(strength.Derived, p.sharing.mark)
 	}
-	return strength.Seen
+	return strength.Weakest(strength.Seen, p.sharing.mark)
 }
 
 // shearSteps are the static steps to the shears that checks at a level take.

@@ -17,12 +17,19 @@ const inPlaneCentre = "instantaneous-centre"
 
 // The words that a pattern's choices take.
 var (
-	stiffnessWords  = []string{"equal", "area", "given"}
 	interactionWord = []string{"", "2-2"}
 	inPlaneWords    = []string{"", "elastic", inPlaneCentre}
 	outOfPlaneWords = []string{"", "centroid", "heel"}
 	threadForms     = []string{"unified", "iso"}
 )
+
+func stiffnessWords() []string {
+	words := []string{stiffnessEqual, stiffnessArea, stiffnessGiven}
+	for _, f := range ComplianceFormulas() {
+		words = append(words, f.ID, f.Name())
+	}
+	return words
+}
 
 // inputFaults checks everything but where the fasteners stand to each other,
 // and fills the outlines.
@@ -36,7 +43,7 @@ func (p *PreparedPattern) inputFaults() []strength.Fault {
 			fault(pointer, "%q is not known; allowed are %q", found, slices.DeleteFunc(slices.Clone(allowed), func(s string) bool { return s == "" }))
 		}
 	}
-	word("/stiffness", p.pattern.Stiffness, stiffnessWords)
+	word("/stiffness", p.pattern.Stiffness, stiffnessWords())
 	word("/interaction", p.pattern.Interaction, interactionWord)
 	word("/in_plane", p.pattern.InPlane, inPlaneWords)
 	word("/out_of_plane", p.pattern.OutOfPlane, outOfPlaneWords)
@@ -55,7 +62,7 @@ func (p *PreparedPattern) inputFaults() []strength.Fault {
 		if f.ShearPlanes < 0 || f.ShearPlanes > 2 {
 			fault(field("fasteners", i, "shear_planes"), "found %d, allowed are 1 and 2", f.ShearPlanes)
 		}
-		if p.pattern.Stiffness == "given" {
+		if p.pattern.Stiffness == stiffnessGiven {
 			if f.ShearStiffness <= 0 {
 				fault(field("fasteners", i, "shear_stiffness"), "stiffness \"given\" needs a positive shear stiffness, found %g", f.ShearStiffness)
 			}

@@ -13,7 +13,7 @@ import (
 // The lift w = w0 + a y - b x is nowhere negative on the outline and makes the
 // energy ½ Σ k w² less the work of the load least; of the candidates that lift
 // everywhere (free, turning about a side, about a vertex, shut), that is the one
-// whose load does the most work. Holes lie inside the outline, so no fastener
+// whose contact only presses, which is also the one whose load does most work. Holes lie inside the outline, so no fastener
 // is pushed together. Only the outline's convex hull can touch.
 //
 // Source: T = k l (M + N l_N) / Σ(k l²) about a side in contact, common in
@@ -61,7 +61,7 @@ func newHeel(e *elastic, outline [][2]float64) *heel {
 		s.offset = -float64(s.normal[0]*p[0]) - float64(s.normal[1]*p[1])
 		for k := range e.u {
 			l := float64(s.normal[0]*e.u[k]) + float64(s.normal[1]*e.v[k]) + s.offset
-			s.second += e.kt[k] * l * l
+			s.second += float64(e.kt[k] * l * l)
 		}
 		h.side = append(h.side, s)
 	}
@@ -119,7 +119,7 @@ func (h *heel) find(e *elastic, load centred) contact {
 			up = up && lift(c, p) >= -1e-12*size
 		}
 		if up {
-			try(c)
+			return c
 		}
 	}
 	for i, s := range h.side {
@@ -130,63 +130,81 @@ func (h *heel) find(e *elastic, load centred) contact {
 	}
 	n := len(h.hull)
 	for i, p := range h.hull {
-		// About the vertex the second moments are those of the centroid moved.
-		iu := e.iu + float64(e.sumT*p[1]*p[1])
-		iv := e.iv + float64(e.sumT*p[0]*p[0])
-		iuv := e.iuv + float64(e.sumT*p[0]*p[1])
-		d := float64(iu*iv) - float64(iuv*iuv)
-		if d <= 1e-12*iu*iv {
+		c := contact{kind: heelVertexContact, index: i}
+		var ok bool
+		if c.a, c.b, ok = h.about(e, p, load.mu-float64(load.z*p[1]), load.mv+float64(load.z*p[0])); !ok {
 			continue
 		}
-		mu, mv := load.mu-float64(load.z*p[1]), load.mv+float64(load.z*p[0])
-		c := contact{kind: heelVertexContact, index: i}
-		c.a = (float64(mu*iv) + float64(mv*iuv)) / d
-		c.b = (float64(mv*iu) + float64(mu*iuv)) / d
 		c.w0 = float64(c.b*p[0]) - float64(c.a*p[1])
 		size := func(q [2]float64) float64 { return math.Abs(c.a*(q[1]-p[1])) + math.Abs(c.b*(q[0]-p[0])) }
 		rises := func(q [2]float64) bool {
 			return float64(c.a*(q[1]-p[1]))-float64(c.b*(q[0]-p[0])) >= -1e-12*size(q)
 		}
 		if rises(h.hull[(i+1)%n]) && rises(h.hull[(i+n-1)%n]) {
+			// Where the vertex also presses nothing does more work; asking for
+			// that beats comparing works, which differ little near a tie.
+			if float64(e.sumT*c.w0) >= load.z {
+				return c
+			}
 			try(c)
 		}
 	}
 	return best
 }
 
-// stretch sets the tensions of a load and returns the residual: the error of
-// the equilibrium that the contact cannot make good, a moment about the side or
-// vertex in contact.
-func (h *heel) stretch(e *elastic, load centred, out []Share) float64 {
-	c := h.find(e, load)
-	var z, mu, mv float64
-	for i := range out {
-		t := e.kt[i] * (c.w0 + float64(c.a*e.v[i]) - float64(c.b*e.u[i]))
-		out[i].Tension = max(t, 0)
-		z += out[i].Tension
-		mu += float64(e.v[i] * out[i].Tension)
-		mv -= float64(e.u[i] * out[i].Tension)
+// about returns the turns about vertex p under moments about it.
+func (h *heel) about(e *elastic, p [2]float64, mu, mv float64) (a, b float64, ok bool) {
+	// The second moments are those about the centroid, moved.
+	iu := e.iu + float64(e.sumT*p[1]*p[1])
+	iv := e.iv + float64(e.sumT*p[0]*p[0])
+	iuv := e.iuv + float64(e.sumT*p[0]*p[1])
+	d := float64(iu*iv) - float64(iuv*iuv)
+	if d <= 1e-12*iu*iv {
+		return 0, 0, false
 	}
-	z, mu, mv = load.z-z, load.mu-mu, load.mv-mv
+	return (float64(mu*iv) + float64(mv*iuv)) / d, (float64(mv*iu) + float64(mu*iuv)) / d, true
+}
+
+// stretch sets the tensions of a load that presses the outline somewhere, and
+// returns the residual: the error of the equilibrium that the contact cannot
+// make good, a moment about the side or vertex in contact.
+func (h *heel) stretch(e *elastic, load centred, c contact, out []Share) float64 {
 	size := 0.0
 	for _, p := range h.hull {
 		size = max(size, math.Hypot(p[0], p[1]))
 	}
 	force := math.Sqrt(float64(load.x*load.x)+float64(load.y*load.y)+float64(load.z*load.z)) + math.Hypot(load.mu, load.mv)/size
-	if force == 0 {
-		return 0
+	residual := 0.0
+	// A second pass shares out what rounding of very unequal stiffnesses left.
+	for range 2 {
+		var z, mu, mv float64
+		for i := range out {
+			out[i].Tension = max(e.kt[i]*(c.w0+float64(c.a*e.v[i])-float64(c.b*e.u[i])), 0)
+			z += out[i].Tension
+			mu += float64(e.v[i] * out[i].Tension)
+			mv -= float64(e.u[i] * out[i].Tension)
+		}
+		if force == 0 {
+			return 0
+		}
+		z, mu, mv = load.z-z, load.mu-mu, load.mv-mv
+		switch c.kind {
+		case heelSideContact:
+			s := h.side[c.index]
+			rest := float64(z*s.offset) + float64(mu*s.normal[1]) - float64(mv*s.normal[0])
+			residual = math.Abs(rest) / (force * size)
+			turn := rest / s.second
+			c.w0, c.a, c.b = c.w0+float64(turn*s.offset), c.a+float64(turn*s.normal[1]), c.b-float64(turn*s.normal[0])
+		case heelVertexContact:
+			p := h.hull[c.index]
+			mu, mv = mu-float64(z*p[1]), mv+float64(z*p[0])
+			residual = max(math.Abs(mu), math.Abs(mv)) / (force * size)
+			a, b, _ := h.about(e, p, mu, mv)
+			c.a, c.b = c.a+a, c.b+b
+			c.w0 = float64(c.b*p[0]) - float64(c.a*p[1])
+		}
 	}
-	switch c.kind {
-	case heelSideContact:
-		s := h.side[c.index]
-		return math.Abs(float64(z*s.offset)+float64(mu*s.normal[1])-float64(mv*s.normal[0])) / (force * size)
-	case heelVertexContact:
-		p := h.hull[c.index]
-		return max(math.Abs(mu-float64(z*p[1])), math.Abs(mv+float64(z*p[0]))) / (force * size)
-	case heelFree:
-		return max(math.Abs(z)/force, math.Abs(mu)/(force*size), math.Abs(mv)/(force*size))
-	}
-	return 0
+	return residual
 }
 
 // place turns a point of the hull back to the axes of the pattern.
@@ -202,7 +220,7 @@ func (h *heel) caseSteps(e *elastic, c PatternCase, load centred, i int, share S
 		step := patternStep(symbol, value, unit, equation, source, strength.Derived)
 		steps = append(steps, step)
 	}
-	k := e.weightUnit()
+	k := e.unit
 	second := k.Times(strength.Area)
 	turn := strength.Force.Over(k).Over(strength.Length)
 	equation := ""

@@ -24,26 +24,24 @@ const straight = 1e-12
 // Source: in plane NASA RP-1228 (seen); out of plane derived from equilibrium
 // of a rigid member on linear springs.
 type elastic struct {
-	fasteners []Fastener
-	stiffness string
-	kv, kt    []float64
-	x, y      []float64 // offsets from the shear centroid
-	u, v      []float64 // offsets from the tension centroid, principal axes
-	x0, y0    float64   // the first fastener: origin of small numbers
-	cx, cy    float64   // shear centroid from there
-	tx, ty    float64   // tension centroid from there
-	xc, yc    float64
-	xt, yt    float64
-	sumV, j   float64
-	sumT      float64
-	cos, sin  float64  // direction of u
-	iu, iv    float64  // Σ k_t v² and Σ k_t u²
-	iuv       float64  // Σ k_t u v
-	reach     float64  // the farthest fastener from the shear centroid
-	length    float64  // extent along u
-	breadth   float64  // extent along v
-	slots     *slotted // nil without slots
-	heel      *heel    // nil unless the member turns about its outline
+	weights
+	x, y     []float64 // offsets from the shear centroid
+	u, v     []float64 // offsets from the tension centroid, principal axes
+	x0, y0   float64   // the first fastener: origin of small numbers
+	cx, cy   float64   // shear centroid from there
+	tx, ty   float64   // tension centroid from there
+	xc, yc   float64
+	xt, yt   float64
+	sumV, j  float64
+	sumT     float64
+	cos, sin float64  // direction of u
+	iu, iv   float64  // Σ k_t v² and Σ k_t u²
+	iuv      float64  // Σ k_t u v
+	reach    float64  // the farthest fastener from the shear centroid
+	length   float64  // extent along u
+	breadth  float64  // extent along v
+	slots    *slotted // nil without slots
+	heel     *heel    // nil unless the member turns about its outline
 }
 
 // centred is a load about the centroids: forces, the moment about z at the
@@ -53,15 +51,11 @@ type centred struct {
 	mz, mu, mv float64
 }
 
-func newElastic(p Pattern) *elastic {
+func newElastic(p Pattern, w weights) *elastic {
 	n := len(p.Fasteners)
 	e := &elastic{
-		fasteners: p.Fasteners, stiffness: p.Stiffness,
-		kv: make([]float64, n), kt: make([]float64, n),
-		x0: p.Fasteners[0].X, y0: p.Fasteners[0].Y,
-	}
-	for i, f := range p.Fasteners {
-		e.kv[i], e.kt[i] = stiffnesses(p.Stiffness, f)
+		weights: w,
+		x0:      p.Fasteners[0].X, y0: p.Fasteners[0].Y,
 	}
 	e.x, e.y, e.cx, e.cy, e.sumV = offsets(p.Fasteners, e.kv)
 	e.xc, e.yc = e.x0+e.cx, e.y0+e.cy
@@ -78,17 +72,6 @@ func newElastic(p Pattern) *elastic {
 		e.heel = newHeel(e, p.Plates[0].Outline)
 	}
 	return e
-}
-
-// stiffnesses returns the relative shear and tension stiffness of a fastener.
-func stiffnesses(word string, f Fastener) (shear, tension float64) {
-	switch word {
-	case "area":
-		return f.Diameter * f.Diameter, f.Diameter * f.Diameter
-	case "given":
-		return f.ShearStiffness, f.TensionStiffness
-	}
-	return 1, 1
 }
 
 // offsets returns the places of the fasteners from the centroid of weights k,
@@ -240,9 +223,11 @@ func (e *elastic) share(load centred, out []Share) float64 {
 	for i := range out {
 		out[i] = Share{}
 	}
-	whole := load
+	whole, touch := load, contact{}
 	if e.heel != nil {
-		load.z, load.mu, load.mv = 0, 0, 0
+		if touch = e.heel.find(e, load); touch.kind != heelFree {
+			load.z, load.mu, load.mv = 0, 0, 0
+		}
 	}
 	e.distribute(load, out)
 	rest, residual := e.imbalance(load, out)
@@ -258,8 +243,8 @@ func (e *elastic) share(load centred, out []Share) float64 {
 		}
 		rest, residual = better, smaller
 	}
-	if e.heel != nil {
-		residual = max(residual, e.heel.stretch(e, whole, out))
+	if touch.kind != heelFree {
+		residual = max(residual, e.heel.stretch(e, whole, touch, out))
 	}
 	resultants(out)
 	return residual
@@ -334,7 +319,7 @@ func (e *elastic) distribute(load centred, out []Share) {
 func (e *elastic) stretch(load centred, out []Share) {
 	a, b := e.tilt(load.mu, load.mv)
 	for i := range out {
-		out[i].Tension += e.kt[i] * (load.z/e.sumT + float64(a*e.v[i]) - float64(b*e.u[i]))
+		out[i].Tension += float64(e.kt[i] * (load.z/e.sumT + float64(a*e.v[i]) - float64(b*e.u[i])))
 	}
 }
 

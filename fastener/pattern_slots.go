@@ -152,7 +152,7 @@ func (s *slotted) drift(e *elastic, load centred, nothing float64) strength.Mess
 		}
 	}
 	size := math.Sqrt(float64(m[0]*m[0]) + float64(m[1]*m[1]) + float64(m[2]*m[2]))
-	if size <= strength.Within*math.Hypot(load.x, load.y)+nothing/s.reach {
+	if size <= float64(strength.Within*math.Hypot(load.x, load.y))+nothing/s.reach {
 		return strength.Message{}
 	}
 	if math.Abs(m[2]) <= slender*size {
@@ -179,8 +179,8 @@ func (s *slotted) distribute(e *elastic, load centred, out []Share) {
 			along := float64(n[0]*dx) + float64(n[1]*dy)
 			dx, dy = along*n[0], along*n[1]
 		}
-		out[i].Shear[0] += e.kv[i] * dx
-		out[i].Shear[1] += e.kv[i] * dy
+		out[i].Shear[0] += float64(e.kv[i] * dx)
+		out[i].Shear[1] += float64(e.kv[i] * dy)
 	}
 }
 
@@ -188,7 +188,7 @@ func (s *slotted) distribute(e *elastic, load centred, out []Share) {
 func (s *slotted) steps(e *elastic) []strength.Working {
 	var steps []strength.Working
 	var xx, xy, yy, xt, yt, tt float64
-	k := e.weightUnit()
+	k := e.unit
 	for i, f := range e.fasteners {
 		add := func(symbol string, value float64, unit strength.Unit, equation, source string, mark strength.Mark) {
 			step := patternStep(symbol, value, unit, equation, source, mark)
@@ -198,7 +198,7 @@ func (s *slotted) steps(e *elastic) []strength.Working {
 		kxx, kxy, kyy := e.kv[i], 0.0, e.kv[i]
 		equations := [3]string{"k_v", "0", "k_v"}
 		if n := s.cross[i]; n != [2]float64{} {
-			kxx, kxy, kyy = e.kv[i]*n[0]*n[0], e.kv[i]*n[0]*n[1], e.kv[i]*n[1]*n[1]
+			kxx, kxy, kyy = float64(e.kv[i]*n[0]*n[0]), float64(e.kv[i]*n[0]*n[1]), float64(e.kv[i]*n[1]*n[1])
 			equations = [3]string{"k_v sin(α)²", "- k_v sin(α) cos(α)", "k_v cos(α)²"}
 			add("α", *f.SlotAngle, strength.Degrees, "", "input: fasteners.slot_angle", strength.Given)
 		}
@@ -226,7 +226,7 @@ func (s *slotted) steps(e *elastic) []strength.Working {
 // caseSteps are the motion under a load case, which three equations fix.
 func (s *slotted) caseSteps(e *elastic, load centred) []strength.Working {
 	u, v, turn := s.motion(load)
-	move := strength.Force.Over(e.weightUnit())
+	move := strength.Force.Over(e.unit)
 	return []strength.Working{
 		patternStep("u", u, move, "(P_x - K_xy v - K_xθ θ) / K_xx, with v and θ at once", sourceSlotted, strength.Derived),
 		patternStep("v", v, move, "(P_y - K_xy u - K_yθ θ) / K_yy, with u and θ at once", sourceSlotted, strength.Derived),

@@ -88,7 +88,7 @@ func TestWorkingsClose(t *testing.T) {
 	}
 }
 
-var identifier = regexp.MustCompile(`[\p{L}][\p{L}\p{Nd}_']*`)
+var identifier = regexp.MustCompile(`[\p{L}][\p{L}\p{Nd}_']*(?:,[\p{L}\p{Nd}_']+)*`)
 
 // functions are the identifiers that are no symbols.
 var functions = map[string]bool{"sqrt": true, "min": true, "max": true, "exp": true, "with": true, "and": true, "at": true, "once": true, "Σ": true, "π": true, "cos": true, "sin": true}
@@ -132,6 +132,17 @@ func variants() map[string]func(*Pattern) {
 		"equal": func(*Pattern) {},
 		"area":  func(p *Pattern) { p.Stiffness = "area" },
 		"given": func(p *Pattern) { p.Stiffness = "given" },
+		"tate-rosenfeld": func(p *Pattern) {
+			p.Stiffness = "tate-rosenfeld"
+			for i := range p.Fasteners {
+				p.Fasteners[i].E, p.Fasteners[i].Nu = 200e3, 0.3
+			}
+			for k := range p.Plates {
+				m := *p.Plates[k].Material
+				m.E = 71e3
+				p.Plates[k].Material = &m
+			}
+		},
 		"slots": func(p *Pattern) {
 			along, skew := 0.0, 40.0
 			p.Stiffness, p.Fasteners[1].SlotAngle, p.Fasteners[4].SlotAngle = "given", &along, &skew

@@ -6,45 +6,6 @@ import (
 	"jointledger/strength"
 )
 
-// stiffnessSteps write each fastener's place and stiffness; weight is "k_v" or
-// "k_t".
-func (e *elastic) stiffnessSteps(weight string, k []float64) []strength.Working {
-	steps := make([]strength.Working, 0, 4*len(k))
-	for i, f := range e.fasteners {
-		at := func(symbol string, value float64, unit strength.Unit, equation, source string) {
-			steps = append(steps, strength.Working{
-				Member: memberPattern, Fastener: f.ID, Symbol: symbol, Value: value, Unit: unit,
-				Equation: equation, Source: source,
-			})
-		}
-		at("x", f.X, strength.Length, "", "input: fasteners.x")
-		at("y", f.Y, strength.Length, "", "input: fasteners.y")
-		switch e.stiffness {
-		case "area":
-			at("D", f.Diameter, strength.Length, "", "input: fasteners.diameter")
-			at(weight, k[i], strength.Area, "D²", "stiffness: area")
-		case "given":
-			word := "shear_stiffness"
-			if weight == "k_t" {
-				word = "tension_stiffness"
-			}
-			at(weight, k[i], e.weightUnit(), "", "input: fasteners."+word)
-		default:
-			at(weight, k[i], strength.None, "", "stiffness: equal")
-		}
-	}
-	return steps
-}
-
-// weightUnit is what the weights measure: only their ratios matter, so given
-// ones keep the number that was typed.
-func (e *elastic) weightUnit() strength.Unit {
-	if e.stiffness == "area" {
-		return strength.Area
-	}
-	return strength.None
-}
-
 func patternStep(symbol string, value float64, unit strength.Unit, equation, source string, mark strength.Mark) strength.Working {
 	return strength.Working{
 		Member: memberPattern, Method: methodElastic, Symbol: symbol, Value: value, Unit: unit,
@@ -54,8 +15,8 @@ func patternStep(symbol string, value float64, unit strength.Unit, equation, sou
 
 // shearSteps are the static steps of in-plane sharing.
 func (e *elastic) shearSteps() []strength.Working {
-	k := e.weightUnit()
-	steps := append(e.stiffnessSteps("k_v", e.kv),
+	k := e.unit
+	steps := append(e.shearStiffnessSteps(),
 		patternStep("K_v", e.sumV, k, "Σ k_v", "over all fasteners", strength.Seen),
 		patternStep("x_c", e.xc, strength.Length, "Σ(k_v x) / K_v", sourceInPlane, strength.Seen),
 		patternStep("y_c", e.yc, strength.Length, "Σ(k_v y) / K_v", sourceInPlane, strength.Seen),
@@ -118,15 +79,15 @@ func (e *elastic) shearCaseSteps(c PatternCase, load centred, i int, share Share
 // tensionSteps are the static steps of out-of-plane sharing.
 func (e *elastic) tensionSteps() []strength.Working {
 	if e.heel != nil {
-		return e.stiffnessSteps("k_t", e.kt)
+		return e.tensionStiffnessSteps()
 	}
-	return e.centroidSteps()
+	return append(e.tensionStiffnessSteps(), e.centroidSteps()...)
 }
 
 // centroidSteps are those of sharing about the centroid of tension stiffness.
 func (e *elastic) centroidSteps() []strength.Working {
-	k := e.weightUnit()
-	steps := append(e.stiffnessSteps("k_t", e.kt),
+	k := e.unit
+	steps := append([]strength.Working(nil),
 		patternStep("K_t", e.sumT, k, "Σ k_t", "over all fasteners", strength.Derived),
 		patternStep("x_t", e.xt, strength.Length, "Σ(k_t x) / K_t", sourceOutOfPlane, strength.Derived),
 		patternStep("y_t", e.yt, strength.Length, "Σ(k_t y) / K_t", sourceOutOfPlane, strength.Derived),
@@ -179,7 +140,7 @@ func (e *elastic) stretchSteps(c PatternCase, load centred, i int, share Share) 
 func (e *elastic) centroidTension(c PatternCase, load centred, i int, share Share) []strength.Working {
 	var steps []strength.Working
 	if e.heel != nil {
-		steps = e.centroidSteps()[4*len(e.fasteners):]
+		steps = e.centroidSteps()
 	}
 	steps = append(steps, givenLoad(c, "P_z")...)
 	equation := "k_t P_z/K_t"
@@ -192,7 +153,7 @@ func (e *elastic) centroidTension(c PatternCase, load centred, i int, share Shar
 			patternStep("M_y", my, strength.Moment, "M_oy + p_z P_x - (p_x - x_t) P_z", "moment about the centroid", strength.Derived))
 		a, b := e.tilt(load.mu, load.mv)
 		// A turn times a length is a stretch, a weight times a stretch a force.
-		turn := strength.Force.Over(e.weightUnit()).Over(strength.Length)
+		turn := strength.Force.Over(e.unit).Over(strength.Length)
 		if e.iu == 0 {
 			steps = append(steps, patternStep("M_l", -load.mv, strength.Moment, "M_x s - M_y c", sourceOutOfPlane, strength.Derived))
 			equation = "k_t (P_z/K_t + M_l (c (x - x_t) + s (y - y_t))/I_l)"
