@@ -13,8 +13,9 @@ import (
 // The lift w = w0 + a y - b x is nowhere negative on the outline and makes the
 // energy ½ Σ k w² less the work of the load least; of the candidates that lift
 // everywhere (free, turning about a side, about a vertex, shut), that is the one
-// whose contact only presses, which is also the one whose load does most work. Holes lie inside the outline, so no fastener
-// is pushed together. Only the outline's convex hull can touch.
+// whose contact only presses, which is also the one whose load does most work.
+// Holes lie inside the outline, so no fastener is pushed together. Only the
+// outline's convex hull can touch.
 //
 // Source: T = k l (M + N l_N) / Σ(k l²) about a side in contact, common in
 // hand analysis of brackets; the choice of the side derived from equilibrium.
@@ -40,8 +41,8 @@ const (
 	heelShut
 )
 
-// contact is the motion that a load makes: the lift w0 + a v - b u.
-type contact struct {
+// heelContact is the motion that a load makes: the lift w0 + a v - b u.
+type heelContact struct {
 	kind     heelKind
 	index    int
 	w0, a, b float64
@@ -100,18 +101,18 @@ func convexHull(points [][2]float64) [][2]float64 {
 }
 
 // find returns how the member lifts under a load.
-func (h *heel) find(e *elastic, load centred) contact {
-	best, most := contact{kind: heelShut}, 0.0
-	try := func(c contact) {
+func (h *heel) find(e *elastic, load centred) heelContact {
+	best, most := heelContact{kind: heelShut}, 0.0
+	try := func(c heelContact) {
 		if work := float64(load.z*c.w0) + float64(load.mu*c.a) + float64(load.mv*c.b); work > most {
 			best, most = c, work
 		}
 	}
-	lift := func(c contact, p [2]float64) float64 {
+	lift := func(c heelContact, p [2]float64) float64 {
 		return c.w0 + float64(c.a*p[1]) - float64(c.b*p[0])
 	}
 	if e.iu > 0 || load.mu == 0 {
-		c := contact{kind: heelFree, w0: load.z / e.sumT}
+		c := heelContact{kind: heelFree, w0: load.z / e.sumT}
 		c.a, c.b = e.tilt(load.mu, load.mv)
 		up := true
 		for _, p := range h.hull {
@@ -125,12 +126,12 @@ func (h *heel) find(e *elastic, load centred) contact {
 	for i, s := range h.side {
 		turn := (float64(load.z*s.offset) + float64(load.mu*s.normal[1]) - float64(load.mv*s.normal[0])) / s.second
 		if turn > 0 {
-			try(contact{heelSideContact, i, turn * s.offset, turn * s.normal[1], -turn * s.normal[0]})
+			try(heelContact{heelSideContact, i, turn * s.offset, turn * s.normal[1], -turn * s.normal[0]})
 		}
 	}
 	n := len(h.hull)
 	for i, p := range h.hull {
-		c := contact{kind: heelVertexContact, index: i}
+		c := heelContact{kind: heelVertexContact, index: i}
 		var ok bool
 		if c.a, c.b, ok = h.about(e, p, load.mu-float64(load.z*p[1]), load.mv+float64(load.z*p[0])); !ok {
 			continue
@@ -168,7 +169,7 @@ func (h *heel) about(e *elastic, p [2]float64, mu, mv float64) (a, b float64, ok
 // stretch sets the tensions of a load that presses the outline somewhere, and
 // returns the residual: the error of the equilibrium that the contact cannot
 // make good, a moment about the side or vertex in contact.
-func (h *heel) stretch(e *elastic, load centred, c contact, out []Share) float64 {
+func (h *heel) stretch(e *elastic, load centred, c heelContact, out []Share) float64 {
 	size := 0.0
 	for _, p := range h.hull {
 		size = max(size, math.Hypot(p[0], p[1]))

@@ -223,7 +223,7 @@ func (e *elastic) share(load centred, out []Share) float64 {
 	for i := range out {
 		out[i] = Share{}
 	}
-	whole, touch := load, contact{}
+	whole, touch := load, heelContact{}
 	if e.heel != nil {
 		if touch = e.heel.find(e, load); touch.kind != heelFree {
 			load.z, load.mu, load.mv = 0, 0, 0
