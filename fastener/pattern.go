@@ -151,7 +151,7 @@ func (p *PreparedPattern) edgeDistances() [][]edgeDistance {
 		edges[k] = make([]edgeDistance, len(p.pattern.Fasteners))
 		for i, f := range p.pattern.Fasteners {
 			e, which, along := nearest(outline, f.X, f.Y)
-			edges[k][i] = edgeDistance{e, outline[which], along}
+			edges[k][i] = edgeDistance{e: e, side: outline[which], along: along}
 		}
 	}
 	return edges

@@ -73,12 +73,7 @@ func (p *PreparedPattern) inputFaults() []strength.Fault {
 		if f.Type == nil || f.Type.Thread == nil {
 			continue
 		}
-		if thread := f.Type.Thread; !slices.Contains(threadForms, thread.Form) {
-			word(field("fasteners", i, "type/thread/form"), thread.Form, threadForms)
-		} else if deepest := f.Diameter / thread.pitchFactor(); thread.Pitch <= 0 || thread.Pitch >= deepest {
-			fault(field("fasteners", i, "type/thread/pitch"), "found %v, allowed is more than 0 and less than %v, which leaves no area on a diameter of %v",
-				strength.Length.Of(thread.Pitch), strength.Length.Of(deepest), strength.Length.Of(f.Diameter))
-		}
+		faults = append(faults, f.Type.Thread.faults(field("fasteners", i, "type/thread"), f.Diameter)...)
 	}
 	for k, plate := range p.pattern.Plates {
 		if plate.CountersinkDepth < 0 || plate.CountersinkDepth > plate.Thickness {

@@ -135,10 +135,17 @@ type edgeDistance struct {
 	e     float64
 	side  side
 	along float64
+	// given is the source of a distance that is given as such.
+	given string
 }
 
 // steps write the edge distance out, from the ends of the nearest side.
 func (d edgeDistance) steps(x, y float64) (a allowable) {
+	if d.given != "" {
+		a.value = d.e
+		a.add("e", d.e, strength.Length, "", d.given, strength.Given)
+		return a
+	}
 	a.add("x", x, strength.Length, "", "input: fasteners.x", strength.Given)
 	a.add("y", y, strength.Length, "", "input: fasteners.y", strength.Given)
 	const given = "input: plates.outline, nearest side"

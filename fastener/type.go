@@ -1,6 +1,10 @@
 package fastener
 
-import "jointledger/strength"
+import (
+	"slices"
+
+	"jointledger/strength"
+)
 
 // Thread is the thread of a bolt.
 type Thread struct {
@@ -70,6 +74,20 @@ func (a *allowable) addTensileArea(t *Thread, d float64) float64 {
 	area := 0.7854 * root * root
 	a.add("A_t", area, strength.Area, "0.7854 (D - 0.9743 p)²", "ASME B1.1, tensile stress area", strength.Seen)
 	return area
+}
+
+// faults tells what keeps the thread from having an area on diameter d; at is
+// its place.
+func (t *Thread) faults(at string, d float64) (faults []strength.Fault) {
+	if !slices.Contains(threadForms, t.Form) {
+		return append(faults, strength.Fault{Pointer: at + "/form", Message: strength.Say("%q is not known; allowed are %q", t.Form, threadForms)})
+	}
+	if deepest := d / t.pitchFactor(); t.Pitch <= 0 || t.Pitch >= deepest {
+		faults = append(faults, strength.Fault{Pointer: at + "/pitch", Message: strength.Say(
+			"found %v, allowed is more than 0 and less than %v, which leaves no area on a diameter of %v",
+			strength.Length.Of(t.Pitch), strength.Length.Of(deepest), strength.Length.Of(d))})
+	}
+	return faults
 }
 
 func (t *Thread) pitchFactor() float64 {
