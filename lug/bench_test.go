@@ -28,3 +28,20 @@ func BenchmarkPrepareElementaryClevis(b *testing.B) {
 		}
 	}
 }
+
+func bareSlim() lug.Joint { return lug.Joint{Lug: slim().Lug} }
+
+func BenchmarkAffdlAxial(b *testing.B)         { benchmarkCase(b, bareSlim(), affdl, 0) }
+func BenchmarkAffdlOblique(b *testing.B)       { benchmarkCase(b, bareSlim(), affdl, 37) }
+func BenchmarkAffdlClevisAxial(b *testing.B)   { benchmarkCase(b, slim(), affdl, 0) }
+func BenchmarkAffdlClevisOblique(b *testing.B) { benchmarkCase(b, slim(), affdl, 37) }
+
+func BenchmarkPrepareAffdlClevis(b *testing.B) {
+	j, choices, cases := slim(), methods(affdl), at(50000, 37)
+	b.ReportAllocs()
+	for b.Loop() {
+		if _, wrong := lug.Prepare(j, choices, usual(), cases); wrong != nil {
+			b.Fatal(wrong)
+		}
+	}
+}

@@ -22,66 +22,80 @@ var bodyEquations = []*Equation{&eqTang, &eqTangOffset, &eqBodyBending}
 // bodyWidth is the width of the body behind the head, in mm.
 func (p *part) bodyWidth(s *sheet) float64 {
 	if p.head.BodyWidth == 0 {
-		return s.input(p.member, "wT", p.head.Width, strength.Length, p.at+fieldWidth)
+		return s.input(p.member, "wT", p.head.Width, strength.Length, p.first+fieldWidth)
 	}
-	return s.input(p.member, "wT", p.head.BodyWidth, strength.Length, p.at+fieldBodyWidth)
+	return s.input(p.member, "wT", p.head.BodyWidth, strength.Length, p.first+fieldBodyWidth)
 }
 
-// body adds the checks of the body behind a head, at ultimate: its tension
-// where an offset hole bends it or its width is its own, and its bending by a
-// transverse load where the support is given.
+// body adds the checks of the body behind a head: its tension where an offset
+// hole bends it or its width is its own, and its bending by a transverse load
+// where the support is given.
 func (b *builder) body(p *part) {
-	if p.head.Offset != 0 {
-		b.read.add(p.at + fieldRestrained)
+	if p.bends() || p.head.BodyWidth != 0 {
+		b.tangCheck(p)
 	}
-	bends := p.head.Offset != 0 && !p.head.BodyRestrained
-	if bends || p.head.BodyWidth != 0 {
-		e := &eqTang
-		if bends {
-			e = &eqTangOffset
-		}
-		b.check(p.member, strength.Tang, strength.Ultimate, strength.Force, strength.ByRegulation, e, func(s *sheet) law {
-			return b.tang(p, s, bends)
-		})
-	}
-	if p.head.BodyLength != 0 {
-		b.check(p.member, strength.BodyBending, strength.Ultimate, strength.Force, strength.ByRegulation, &eqBodyBending, func(s *sheet) law {
-			return b.bodyBending(p, s)
-		})
-	}
+	b.bodyBendingCheck(p)
 }
 
-// tang is the body under the axial part of a pull.
-func (b *builder) tang(p *part, s *sheet, bends bool) law {
-	ftu, wt, t := p.property(s, strength.Ftu), p.bodyWidth(s), p.thickness(s)
-	full := ftu * wt * t
+// tangCheck adds the tension of the body at ultimate.
+func (b *builder) tangCheck(p *part) {
 	e := &eqTang
-	if bends {
+	if p.bends() {
 		e = &eqTangOffset
-		full /= 1 + 6*p.offset(s)/wt
 	}
-	axial := s.apply(e, full)
+	b.check(p.member, strength.Tang, strength.Ultimate, strength.Force, strength.ByRegulation, e, func(s *sheet) law {
+		capacity := p.tang(s)
+		if p.doubleLeg {
+			p.legShare(s)
+		}
+		return p.pulled(capacity)
+	})
+}
+
+// bodyBendingCheck adds the bending of the body at ultimate.
+func (b *builder) bodyBendingCheck(p *part) {
+	if p.head.BodyLength == 0 {
+		return
+	}
+	b.check(p.member, strength.BodyBending, strength.Ultimate, strength.Force, strength.ByRegulation, &eqBodyBending, p.bodyBending)
+}
+
+// bends reports whether an offset hole bends the body.
+func (p *part) bends() bool { return p.head.Offset != 0 && !p.head.BodyRestrained }
+
+// tang is the tension that the body bears with the bending of an offset hole,
+// in N on the head.
+func (p *part) tang(s *sheet) float64 {
+	ftu, wt, t := p.property(s, strength.Ftu), p.bodyWidth(s), p.thickness(s)
+	if p.head.Offset != 0 {
+		s.read.add(p.first + fieldRestrained)
+	}
+	if !p.bends() {
+		return s.apply(&eqTang, ftu*wt*t)
+	}
+	return s.apply(&eqTangOffset, ftu*wt*t/(1+6*p.offset(s)/wt))
+}
+
+// pulled sets the axial part of a pull against a capacity of the head P_t.
+func (p *part) pulled(capacity float64) law {
 	share := p.share
-	if p.doubleLeg {
-		p.legShare(s)
-	}
 	return law{
 		sides: pull,
 		margin: func(l *load, factor float64) strength.Margin {
-			return strength.Compare(factor*l.Force, axial/(share*l.cos))
+			return strength.Compare(factor*l.Force, capacity/(share*l.cos))
 		},
 		trace: func(s *sheet, l *load) {
 			s.apply(&eqCos, l.cos)
-			s.allow("P_t / ("+p.shareSymbol()+"cosα)", axial/(share*l.cos))
+			s.allow("P_t / ("+p.shareSymbol()+"cosα)", capacity/(share*l.cos))
 		},
 	}
 }
 
 // bodyBending is the body as a cantilever under the transverse part of a load:
 // P sin α · body_length <= F_tu wT² t / 6.
-func (b *builder) bodyBending(p *part, s *sheet) law {
+func (p *part) bodyBending(s *sheet) law {
 	ftu, wt, t := p.property(s, strength.Ftu), p.bodyWidth(s), p.thickness(s)
-	arm := s.input(p.member, "l_b", p.head.BodyLength, strength.Length, p.at+fieldBodyLength)
+	arm := s.input(p.member, "l_b", p.head.BodyLength, strength.Length, p.first+fieldBodyLength)
 	moment := s.apply(&eqBodyBending, ftu*wt*wt*t/6)
 	share := p.share
 	if p.doubleLeg {

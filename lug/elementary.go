@@ -36,12 +36,15 @@ var (
 	eqShearOut        = Equation{Symbol: "P_su", Text: "2 t L F_su", Unit: strength.Force, Source: elementarySource + ": shear-out of two planes 40° from the axis", Mark: strength.CommonPractice}
 	eqBearingUltimate = Equation{Symbol: "P_bru", Text: "F_bru Db t_b", Unit: strength.Force, Source: elementarySource + ": bearing, with the handbook's value at e/D", Mark: strength.Derived}
 	eqBearingYield    = Equation{Symbol: "P_bry", Text: "F_bry Db t_b", Unit: strength.Force, Source: elementarySource + ": bearing, with the handbook's value at e/D", Mark: strength.Derived}
-	eqHandbookLine    = Equation{Symbol: "F_br", Text: "F_br1 + (F_br2 - F_br1) (e/D - r1) / (r2 - r1)", Unit: strength.Stress, Source: "MIL-HDBK-5J section 1.4.7: a straight line between e/D 1.5 and 2.0, flat above", Mark: strength.Seen}
+	eqRatioOwn        = Equation{Symbol: "ρ", Text: "min(e/D, 2)", Unit: strength.None, Source: "e/D at which the handbook's bearing value is taken", Mark: strength.Derived}
+	eqRatioFull       = Equation{Symbol: "ρ", Text: "2", Unit: strength.None, Source: "e/D at which the handbook's bearing value is taken", Mark: strength.Derived}
+	eqRatioFrom       = Equation{Symbol: "ρ", Text: "1.5", Unit: strength.None, Source: "e/D at which the handbook's bearing value is taken", Mark: strength.Derived}
+	eqHandbookLine    = Equation{Symbol: "F_br", Text: "F_br1 + (F_br2 - F_br1) (ρ - r1) / (r2 - r1)", Unit: strength.Stress, Source: "MIL-HDBK-5J section 1.4.7: a straight line between e/D 1.5 and 2.0, flat above", Mark: strength.Seen}
 	eqBushing         = Equation{Symbol: "P_B", Text: "F_cy Dp t_b", Unit: strength.Force, Source: "common practice: compressive yield of the bushing over the pin's projected area", Mark: strength.CommonPractice}
 )
 
 var elementaryEquations = gather(geometryEquations, []*Equation{
-	&eqNetUltimate, &eqNetYield, &eqShearOut, &eqHandbookLine, &eqBearingUltimate, &eqBearingYield, &eqBushing,
+	&eqNetUltimate, &eqNetYield, &eqShearOut, &eqRatioOwn, &eqRatioFull, &eqHandbookLine, &eqBearingUltimate, &eqBearingYield, &eqBushing,
 }, bodyEquations, pinEquations)
 
 var (
@@ -86,12 +89,9 @@ func elementaryHead(b *builder, p *part) {
 		b.check(p.member, mode, level, strength.Force, strength.ByRegulation, e, func(s *sheet) law {
 			b.bearsStraight(s)
 			allowable := p.allow(s, e.Symbol, s.apply(e, strengthOf(s)))
-			return law{sides: pull | transverse, margin: func(l *load, factor float64) strength.Margin {
-				if !l.axial() {
-					return strength.Unknown(&elementaryOblique)
-				}
-				return strength.Compare(factor*l.Force, allowable)
-			}}
+			k := fixed(pull|transverse, allowable)
+			k.axialOnly = &elementaryOblique
+			return k
 		})
 	}
 	axially(strength.NetSection, strength.Ultimate, &eqNetUltimate, func(s *sheet) float64 {
@@ -120,9 +120,10 @@ func (b *builder) bearsStraight(s *sheet) {
 // and the value of e/D 2.0 holds.
 func elementaryBearing(b *builder, p *part, level strength.Level, property strength.Property, e *Equation) {
 	allowable := func(s *sheet, l *load) float64 {
-		ratio := strength.BearingFull
+		ratio := &eqRatioFull
 		if l.sides&push == 0 {
-			ratio = p.edgeRatio(s)
+			p.edgeRatio(s)
+			ratio = &eqRatioOwn
 		}
 		stress := p.handbookBearing(s, property, ratio)
 		return p.allow(s, e.Symbol, s.apply(e, stress*p.bearingDiameter(s)*p.bearingLength(s)))
@@ -133,42 +134,31 @@ func elementaryBearing(b *builder, p *part, level strength.Level, property stren
 		if ratio := s.apply(&eqThinness, p.thickness(s)/p.bearingDiameter(s)); strength.Less(ratio, thinLug) {
 			s.lack(strength.Say("t/D %.4g is below %.4g, the least for which handbook bearing values hold", ratio, thinLug))
 		}
-		var either [2]float64
-		var why [2]*strength.Message
-		for i, side := range [...]sides{pull, push} {
-			try := sheet{}
-			either[i] = allowable(&try, &load{sides: side})
-			why[i] = try.why
-			s.mark = strength.Weakest(s.mark, try.mark)
-			s.read |= try.read
+		k := law{sides: anyWay, axialOnly: &elementaryOblique}
+		for i, way := range [...]sides{pullAlong, pushAlong} {
+			k.along[i] = b.settle(func(s *sheet) float64 { return allowable(s, &load{sides: way}) })
+			s.rest(k.along[i])
 		}
-		return law{
-			sides: anyWay,
-			margin: func(l *load, factor float64) strength.Margin {
-				i := 0
-				if l.sides&push != 0 {
-					i = 1
-				}
-				switch {
-				case !l.axial():
-					return strength.Unknown(&elementaryOblique)
-				case why[i] != nil:
-					return strength.Unknown(why[i])
-				}
-				return strength.Compare(factor*l.Force, either[i])
-			},
-			trace: func(s *sheet, l *load) {
-				if l.axial() {
-					allowable(s, l)
-				}
-			},
+		k.trace = func(s *sheet, l *load) {
+			if l.axial() {
+				allowable(s, l)
+			}
 		}
+		return k
 	})
 }
 
 // handbookBearing is F_bru or F_bry in MPa at an edge distance ratio of at
-// least 1.5: by straight line up to 2.0, flat above, nothing below.
-func (p *part) handbookBearing(s *sheet, property strength.Property, ratio float64) float64 {
+// least 1.5: by straight line up to 2.0, flat above, nothing below. at says
+// which ratio that is.
+func (p *part) handbookBearing(s *sheet, property strength.Property, at *Equation) float64 {
+	ratio := strength.BearingFull
+	switch at {
+	case &eqRatioOwn:
+		ratio = min(p.head.EdgeDistance/p.head.HoleDiameter, ratio)
+	case &eqRatioFrom:
+		ratio = strength.BearingFrom
+	}
 	m := &p.head.Material
 	lo, hi, why := m.BearingBetween(property, ratio)
 	if !why.Empty() {
@@ -183,22 +173,23 @@ func (p *part) handbookBearing(s *sheet, property strength.Property, ratio float
 			})
 		}
 	}
-	e := eqHandbookLine
-	e.Symbol = string(property)
-	stress, end := lo.Value(property), hi.Value(property)
+	symbol := string(property)
+	start, end := lo.Value(property), hi.Value(property)
 	if lo == hi {
-		given(e.Symbol, stress, strength.Stress)
-		return stress
+		given(symbol, start, strength.Stress)
+		return start
 	}
-	given("r1", lo.EOverD, strength.None)
-	given("r2", hi.EOverD, strength.None)
-	given(e.Symbol+"1", stress, strength.Stress)
-	given(e.Symbol+"2", end, strength.Stress)
+	e := eqHandbookLine
+	e.Symbol = symbol
 	if s.recording {
-		e.Text = e.Symbol + "1 + (" + e.Symbol + "2 - " + e.Symbol + "1) (e/D - r1) / (r2 - r1)"
+		given("r1", lo.EOverD, strength.None)
+		given("r2", hi.EOverD, strength.None)
+		given(symbol+"1", start, strength.Stress)
+		given(symbol+"2", end, strength.Stress)
+		e.Text = symbol + "1 + (" + symbol + "2 - " + symbol + "1) (ρ - r1) / (r2 - r1)"
 	}
-	share := (min(ratio, strength.BearingFull) - lo.EOverD) / (hi.EOverD - lo.EOverD)
-	return s.apply(&e, stress+float64(share*(end-stress)))
+	s.apply(at, ratio)
+	return s.apply(&e, start+float64((ratio-lo.EOverD)/(hi.EOverD-lo.EOverD)*(end-start)))
 }
 
 // bushing adds the bushing's compressive yield under the pin, at limit. It
@@ -208,7 +199,7 @@ func (b *builder) bushing(p *part) {
 		return
 	}
 	b.check(p.bushingMember, strength.BushingBearing, strength.Limit, strength.Force, strength.ByRegulation, &eqBushing, func(s *sheet) law {
-		s.read.add(p.at + fieldBushing)
+		s.read.add(p.first + fieldBushing)
 		fcy := s.property(p.bushingMember, &p.bushing.Material, strength.Fcy, string(strength.Fcy))
 		return fixed(anyWay, p.allow(s, eqBushing.Symbol, s.apply(&eqBushing, fcy*p.pinDiameter(s)*p.bearingLength(s))))
 	})

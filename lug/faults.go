@@ -2,6 +2,7 @@ package lug
 
 import (
 	"math"
+	"slices"
 	"strconv"
 
 	"jointledger/strength"
@@ -157,22 +158,34 @@ func checkOptions(m *Method, options Options, f *faults) {
 			f.add(at+"/"+name, "the method %s has no option %q", m.ID, name)
 			continue
 		}
-		option.check(at+"/"+name, options[name], f)
+		option.check(at+"/"+name, m.ID, options[name], f)
 	}
 }
 
-func (o *Option) check(at string, v Value, f *faults) {
+func (o *Option) check(at, method string, v Value, f *faults) {
 	switch o.Kind {
 	case Number:
 		if v.Number < o.Least || v.Number > o.Most {
 			f.add(at, "the value is %.6g and must be from %.6g to %.6g", v.Number, o.Least, o.Most)
 		}
 	case Word:
-		for _, w := range o.Words {
-			if v.Word == w {
-				return
+		if len(o.Words) == 0 {
+			if _, err := strconv.ParseFloat(v.Word, 64); err != nil {
+				f.add(at, "%q is not the number of a curve", v.Word)
+			}
+		} else if !slices.Contains(o.Words, v.Word) {
+			f.add(at, "%q is none of %q", v.Word, o.Words)
+		}
+	case CurveSetRef:
+		switch {
+		case v.Set == nil:
+			f.add(at, "the method needs a curve set here")
+		case v.Set.Method != method:
+			f.add(at, "the curve set %s is of the method %q", v.Set.Name(), v.Set.Method)
+		case !v.Set.builtIn:
+			for _, wrong := range v.Set.Check() {
+				f.add(at+wrong.Pointer, "%v", wrong.Message)
 			}
 		}
-		f.add(at, "%q is none of %q", v.Word, o.Words)
 	}
 }

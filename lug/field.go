@@ -29,6 +29,7 @@ const (
 	fieldPinBore
 	fieldForce
 	fieldAngle
+	fieldUltimate
 	fieldsInAll
 )
 
@@ -41,7 +42,7 @@ var fieldPaths = [fieldsInAll]string{
 	"clevis.bushing", "clevis.bushing.interference", "clevis.bushing.length",
 	"clevis.gap", "clevis.leg_share", "clevis.moment_share",
 	"pin.diameter", "pin.inner_diameter",
-	"load_cases.force", "load_cases.angle",
+	"load_cases.force", "load_cases.angle", "factors.ultimate",
 }
 
 // path is where the field stands in a request.

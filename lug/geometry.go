@@ -10,12 +10,11 @@ import (
 // and how much of the joint's load is its own.
 type part struct {
 	member, bushingMember string
-	at                    field // of its first field
+	first                 field // of its head's fields
 	head                  *Head
 	bushing               *Bushing
 	pin                   *Pin
 	share                 float64 // of the joint's load in this head
-	shareField            field   // zero: the whole load
 	doubleLeg             bool
 }
 
@@ -56,27 +55,27 @@ var geometryEquations = []*Equation{
 }
 
 func (p *part) width(s *sheet) float64 {
-	return s.input(p.member, "W", p.head.Width, strength.Length, p.at+fieldWidth)
+	return s.input(p.member, "W", p.head.Width, strength.Length, p.first+fieldWidth)
 }
 
 func (p *part) thickness(s *sheet) float64 {
-	return s.input(p.member, "t", p.head.Thickness, strength.Length, p.at+fieldThickness)
+	return s.input(p.member, "t", p.head.Thickness, strength.Length, p.first+fieldThickness)
 }
 
 func (p *part) hole(s *sheet) float64 {
-	return s.input(p.member, "D", p.head.HoleDiameter, strength.Length, p.at+fieldHole)
+	return s.input(p.member, "D", p.head.HoleDiameter, strength.Length, p.first+fieldHole)
 }
 
 func (p *part) edge(s *sheet) float64 {
-	return s.input(p.member, "e", p.head.EdgeDistance, strength.Length, p.at+fieldEdge)
+	return s.input(p.member, "e", p.head.EdgeDistance, strength.Length, p.first+fieldEdge)
 }
 
 func (p *part) offset(s *sheet) float64 {
-	return math.Abs(s.input(p.member, "o", p.head.Offset, strength.Length, p.at+fieldOffset))
+	return math.Abs(s.input(p.member, "o", p.head.Offset, strength.Length, p.first+fieldOffset))
 }
 
 func (p *part) taper(s *sheet) float64 {
-	return s.input(p.member, "β", p.head.TaperAngle, strength.Degrees, p.at+fieldTaper)
+	return s.input(p.member, "β", p.head.TaperAngle, strength.Degrees, p.first+fieldTaper)
 }
 
 func (p *part) property(s *sheet, property strength.Property) float64 {
@@ -131,9 +130,9 @@ func (p *part) shearOutLength(s *sheet) float64 {
 // endRadius is the radius of a round end about the hole centre, in mm.
 func (p *part) endRadius(s *sheet) float64 {
 	if p.head.EndRadius == 0 {
-		return s.input(p.member, "r", p.head.EdgeDistance, strength.Length, p.at+fieldEdge)
+		return s.input(p.member, "r", p.head.EdgeDistance, strength.Length, p.first+fieldEdge)
 	}
-	return s.input(p.member, "r", p.head.EndRadius, strength.Length, p.at+fieldEndRadius)
+	return s.input(p.member, "r", p.head.EndRadius, strength.Length, p.first+fieldEndRadius)
 }
 
 func (p *part) edgeRatio(s *sheet) float64 {
@@ -147,7 +146,7 @@ func (p *part) bearingDiameter(s *sheet) float64 {
 		return s.apply(&eqBearingPin, p.pinDiameter(s))
 	}
 	if p.bushing != nil {
-		s.read.add(p.at + fieldBushing)
+		s.read.add(p.first + fieldBushing)
 	}
 	return s.apply(&eqBearingHole, p.hole(s))
 }
@@ -160,7 +159,7 @@ func (p *part) bearingLength(s *sheet) float64 {
 	if p.bushing == nil || p.bushing.Length == 0 {
 		return s.apply(&eqWholeBearing, t)
 	}
-	length := s.input(p.bushingMember, "l_B", p.bushing.Length, strength.Length, p.at+fieldBushingLength)
+	length := s.input(p.bushingMember, "l_B", p.bushing.Length, strength.Length, p.first+fieldBushingLength)
 	return s.apply(&eqBearingLength, min(t, length))
 }
 

@@ -288,7 +288,7 @@ func TestMethodsDescribeThemselves(t *testing.T) {
 			}
 		}
 		for _, o := range m.Options {
-			if o.Name == "" || o.Meaning == "" || (o.Kind == lug.Word) != (len(o.Words) > 0) || (o.Kind == lug.Number) != (o.Most > 0) {
+			if o.Name == "" || o.Meaning == "" || (o.Kind == lug.Number) != (o.Most > 0) {
 				t.Errorf("%s: option %+v", m.Name(), o)
 			}
 		}
@@ -304,4 +304,11 @@ func TestMethodsDescribeThemselves(t *testing.T) {
 			t.Errorf("%q was found", name)
 		}
 	}
+}
+
+// slim is the hinge with heads narrow enough for every derived factor.
+func slim() lug.Joint {
+	j := hinge()
+	j.Lug.Width, j.Clevis.Width = 70, 70
+	return j
 }

@@ -6,16 +6,23 @@ import (
 	"jointledger/strength"
 )
 
-// sides are the directions in which a load acts on a head, or in which a load
-// exercises a check.
+// sides are the directions in which a load acts on a head, of which each load
+// has one, or in which a load exercises a check.
 type sides uint8
 
 const (
-	pull       sides = 1 << iota // toward the free end
-	transverse                   // across
-	push                         // into the body
+	pullAlong   sides = 1 << iota // along the axis, toward the free end
+	pushAlong                     // along the axis, into the body
+	acrossOnly                    // square to the axis
+	obliquePull                   // part pull, part across
+	obliquePush                   // part push, part across
 
-	anyWay = pull | transverse | push
+	along      = pullAlong | pushAlong
+	oblique    = obliquePull | obliquePush
+	pull       = pullAlong | obliquePull
+	push       = pushAlong | obliquePush
+	transverse = acrossOnly | oblique
+	anyWay     = along | transverse
 )
 
 // load is a load case, worked out once.
@@ -23,8 +30,12 @@ type load struct {
 	*LoadCase
 	angle    float64 // degrees, from 0 up to 360
 	sin, cos float64 // exact at multiples of 90°
-	sides    sides   // none without force
-	level    int     // index into a law's factors
+	// The parts of the load to the power 1.6, for interaction curves.
+	axialPower, acrossPower float64
+	sides                   sides // none without force
+	level                   int   // index into a check's factors
+	way                     int   // 0 pulls or acts across, 1 pushes
+	hand                    int   // 0 where the transverse part acts toward +y, 1 toward -y
 }
 
 // axial reports whether the load acts along the axis alone.
@@ -41,18 +52,34 @@ func newLoad(c *LoadCase) load {
 		l.angle = math.Mod(quarter, 360)
 	}
 	l.sin, l.cos = sinDegrees(l.angle), cosDegrees(l.angle)
+	l.axialPower, l.acrossPower = math.Abs(l.cos), math.Abs(l.sin)
+	if l.sin != 0 && l.cos != 0 {
+		l.axialPower, l.acrossPower = math.Pow(l.axialPower, interactionPower), math.Pow(l.acrossPower, interactionPower)
+	}
+	if l.cos < 0 {
+		l.way = 1
+	}
+	if l.sin < 0 {
+		l.hand = 1
+	}
 	if c.Force > 0 {
-		if l.cos > 0 {
-			l.sides |= pull
-		}
-		if l.cos < 0 {
-			l.sides |= push
-		}
-		if l.sin != 0 {
-			l.sides |= transverse
-		}
+		l.sides = direction(l.sin, l.cos)
 	}
 	return l
+}
+
+func direction(sin, cos float64) sides {
+	switch {
+	case cos == 0:
+		return acrossOnly
+	case sin == 0 && cos > 0:
+		return pullAlong
+	case sin == 0:
+		return pushAlong
+	case cos > 0:
+		return obliquePull
+	}
+	return obliquePush
 }
 
 func levelIndex(l strength.Level) int {
@@ -62,11 +89,39 @@ func levelIndex(l strength.Level) int {
 	return 0
 }
 
+// result is a number that was settled before the load cases, or the reason why
+// there is none, with the weakest mark and the fields that it rests on.
+type result struct {
+	value float64
+	why   *strength.Message
+	mark  strength.Mark
+	read  fieldSet
+}
+
+// settle runs a calculation once, for its number.
+func (b *builder) settle(write func(*sheet) float64) result {
+	s := b.sheet()
+	value := write(s)
+	return result{value: value, why: s.why, mark: s.mark, read: s.read}
+}
+
+// rest notes that what is written next rests on a settled number.
+func (s *sheet) rest(r result) {
+	s.mark = strength.Weakest(s.mark, r.mark)
+	s.read |= r.read
+}
+
 // law is how a check meets a load case.
 type law struct {
 	sides sides // the load exercises the check when it has one of these
+	// along are the allowables of a pull and of a push, or why there is none,
+	// where margin is nil.
+	along [2]result
+	// axialOnly says why there is no margin for a load with a transverse part;
+	// nil where along does not depend on the transverse part.
+	axialOnly *strength.Message
 	// margin sets demand against allowable; factor is between the load as given
-	// and the demand. Nil where nothing can be compared.
+	// and the demand.
 	margin func(l *load, factor float64) strength.Margin
 	// trace writes the steps that the load case makes of the allowable and of
 	// the measure of the load, the demand and the margin excepted. Nil: none.
@@ -74,24 +129,24 @@ type law struct {
 	// measure is what the factors act on: the load P itself where it is empty,
 	// else a symbol that trace has written.
 	measure string
-	// perLoad is that measure for each N of load; it is used with measure.
-	perLoad func(l *load) float64
 	// ratio writes, instead of demand and allowable, the steps of a combined
 	// check at the factored load P_d. The demand is 1.
 	ratio func(s *sheet, l *load, factored float64)
+	// unloaded is a check that no load has part in: trace writes its demand.
+	unloaded bool
 }
 
 // fixed compares the load with an allowable that no load case changes.
 func fixed(on sides, allowable float64) law {
-	return law{sides: on, margin: func(l *load, factor float64) strength.Margin {
-		return strength.Compare(factor*l.Force, allowable)
-	}}
+	return law{sides: on, along: [2]result{{value: allowable}, {value: allowable}}}
 }
 
 // Steps that every law ends with.
 var (
-	eqAllowable = Equation{Symbol: "allowable", Unit: strength.Force, Mark: strength.Given}
+	eqAllowable = Equation{Symbol: "allowable", Unit: strength.Force, Source: "load on the joint", Mark: strength.Given}
 	eqMargin    = Equation{Symbol: "margin", Text: "allowable / demand - 1", Unit: strength.None, Source: "margin of safety", Mark: strength.Given}
+	// eqUnity is the demand of a combined check.
+	eqUnity = Equation{Symbol: "demand", Text: "1", Unit: strength.None, Source: "combined checks: the allowable is the factor on the load that reaches the limit curve", Mark: strength.Given}
 )
 
 // allow writes the allowable of a check as the load on the joint: the strength

@@ -42,9 +42,9 @@ type Option struct {
 	Name, Meaning string
 	Kind          OptionKind
 	Default       Value
-	HasDefault    bool // else the default follows from the joint, or there is none
-	Words         []string
-	Least, Most   float64 // of a number
+	HasDefault    bool     // else the default follows from the joint, or there is none
+	Words         []string // of a word; none where it is the number of a curve
+	Least, Most   float64  // of a number
 	// Requires says in words what the option needs to have an effect.
 	Requires string
 }
@@ -98,6 +98,7 @@ func (m *Method) option(name string) (Option, bool) {
 // ascending order.
 var registry = []Method{
 	elementary1,
+	affdl1,
 }
 
 // Methods returns every method in every revision.

@@ -110,7 +110,7 @@ func (p *Prepared) place() {
 		return
 	}
 	p.clevis = &part{
-		member: memberClevis, bushingMember: memberClevisBushing, at: fieldsOfHead,
+		member: memberClevis, bushingMember: memberClevisBushing, first: fieldsOfHead,
 		head: &c.Head, bushing: c.Bushing, pin: j.Pin, share: 1,
 	}
 	if !j.SingleShear {
@@ -136,9 +136,10 @@ func (b *builder) check(member string, mode strength.Mode, level strength.Level,
 		Member: member, Mode: mode, Level: level, Unit: unit,
 		Method: b.name, Source: source.source(), Compared: b.choice.Compared,
 	}
-	s := sheet{mark: source.Mark}
+	s := b.sheet()
+	s.mark = source.Mark
 	k := prepared{write: write, place: b.place}
-	k.law = write(&s)
+	k.law = write(s)
 	k.why = s.why
 	c.Mark = s.mark
 	b.read |= s.read
@@ -149,6 +150,9 @@ func (b *builder) check(member string, mode strength.Mode, level strength.Level,
 	b.checks = append(b.checks, c)
 	b.laws = append(b.laws, k)
 }
+
+// sheet is one on which numbers are settled.
+func (b *builder) sheet() *sheet { return &sheet{found: b.found} }
 
 // number is a numeric option, or its default.
 func (b *builder) number(name string) float64 { return b.value(name).Number }
@@ -198,10 +202,24 @@ func (p *Prepared) Margins(i int, out []strength.Margin) {
 			out[c] = strength.Margin{}
 		case k.why != nil:
 			out[c] = strength.Unknown(k.why)
-		default:
+		case k.margin != nil:
 			out[c] = k.margin(l, k.factor[l.level])
+		case k.axialOnly != nil && l.sides&transverse != 0:
+			out[c] = strength.Unknown(k.axialOnly)
+		case k.along[l.way].why != nil:
+			out[c] = strength.Unknown(k.along[l.way].why)
+		default:
+			out[c] = strength.Compare(k.factor[l.level]*l.Force, k.along[l.way].value)
 		}
 	}
+}
+
+// margin is what load case i makes of check c.
+func (p *Prepared) margin(i, c int) strength.Margin {
+	one := Prepared{loads: p.loads[i : i+1], laws: p.laws[c : c+1]}
+	var out [1]strength.Margin
+	one.Margins(0, out[:])
+	return out[0]
 }
 
 // Workings returns the steps behind check c that no load case changes.
@@ -223,7 +241,8 @@ func (p *Prepared) fresh(c int, loadCase string) *sheet {
 // load, what its direction does, the factors, the demand and the margin.
 func (p *Prepared) CaseWorkings(i, c int) []strength.Working {
 	l, k := &p.loads[i], &p.laws[c]
-	if k.sides&l.sides == 0 {
+	m := p.margin(i, c)
+	if m.Status == strength.NotExercised {
 		return nil
 	}
 	s := p.fresh(c, l.ID)
@@ -235,27 +254,25 @@ func (p *Prepared) CaseWorkings(i, c int) []strength.Working {
 	if k.trace != nil {
 		k.trace(s, l)
 	}
-	m := k.margin(l, k.factor[l.level])
 	if m.Status == strength.Undetermined {
 		return s.lines
 	}
 	demand := k.demand[l.level]
-	if k.ratio != nil {
+	switch {
+	case k.unloaded:
+	case k.ratio != nil:
 		factored := k.factor[l.level] * l.Force
 		steps := demand.Workings(s.heading, p.factors, "P", factored, strength.Force)
 		steps[len(steps)-1].Symbol = "P_d"
 		s.lines = append(s.lines, steps...)
 		s.apply(&eqUnity, m.Demand)
 		k.ratio(s, l, factored)
-	} else {
+	default:
 		s.lines = append(s.lines, demand.Workings(s.heading, p.factors, cmp.Or(k.measure, "P"), m.Demand, p.checks[c].Unit)...)
 	}
 	s.apply(&eqMargin, m.Margin)
 	return s.lines
 }
-
-// eqUnity is the demand of a combined check.
-var eqUnity = Equation{Symbol: "demand", Text: "1", Unit: strength.None, Source: "combined checks: the allowable is the factor on the load that reaches the limit curve", Mark: strength.Given}
 
 // Findings returns what is to be said about the joint and its load cases.
 func (p *Prepared) Findings() []strength.Finding { return p.findings }

@@ -13,6 +13,22 @@ type sheet struct {
 	mark      strength.Mark
 	read      fieldSet
 	why       *strength.Message // the first reason for which there is no value
+	found     *findings         // nil while recording: it was all said before
+}
+
+// find says something about the joint that the calculation came across.
+func (s *sheet) find(severity strength.Severity, code, subject, source, format string, args ...any) {
+	if s.found != nil {
+		s.found.add(severity, code, subject, source, format, args...)
+	}
+}
+
+// under writes what follows as steps of another member, until the function that
+// it returns is called.
+func (s *sheet) under(member string) (back func()) {
+	old := s.heading.Member
+	s.heading.Member = member
+	return func() { s.heading.Member = old }
 }
 
 // lack notes that the calculation has no value, and why. What is written after

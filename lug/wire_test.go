@@ -210,6 +210,10 @@ func decodeOptions(t *testing.T, method string, all map[string]map[string]any) l
 	id, _, _ := strings.Cut(method, "@")
 	options := lug.Options{}
 	for name, v := range all[id] {
+		if name == "curve_set" {
+			options[name] = lug.Value{Set: decodeSet(t, v)}
+			continue
+		}
 		switch v := v.(type) {
 		case float64:
 			options[name] = lug.Value{Number: v}
@@ -261,3 +265,57 @@ func publishedFiles(t *testing.T) map[string][]byte {
 }
 
 func sortedKeys[V any](m map[string]V) []string { return slices.Sorted(maps.Keys(m)) }
+
+// decodeSet takes a curve set by the name of a built-in one, or as it is.
+func decodeSet(t *testing.T, v any) *lug.CurveSet {
+	t.Helper()
+	if name, ok := v.(string); ok {
+		for _, set := range lug.BuiltInCurveSets() {
+			if name == set.ID || name == set.Name() {
+				return &set
+			}
+		}
+		t.Fatalf("no built-in curve set %q", name)
+	}
+	raw, err := json.Marshal(v)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var w struct {
+		ID        string  `json:"id"`
+		Version   string  `json:"version"`
+		Method    string  `json:"method"`
+		Document  string  `json:"document"`
+		Reader    string  `json:"reader"`
+		Tolerance float64 `json:"tolerance"`
+		Charts    map[string]struct {
+			Figure  string  `json:"figure"`
+			Along   string  `json:"along"`
+			Between *string `json:"between"`
+			Curves  []struct {
+				At     float64      `json:"at"`
+				Points [][2]float64 `json:"points"`
+			} `json:"curves"`
+		} `json:"charts"`
+	}
+	d := json.NewDecoder(bytes.NewReader(raw))
+	d.DisallowUnknownFields()
+	if err := d.Decode(&w); err != nil {
+		t.Fatalf("curve set: %v", err)
+	}
+	set := &lug.CurveSet{
+		ID: w.ID, Version: w.Version, Method: w.Method, Document: w.Document, Reader: w.Reader, Tolerance: w.Tolerance,
+		Charts: map[string]lug.Chart{},
+	}
+	for name, c := range w.Charts {
+		chart := lug.Chart{Figure: c.Figure, Along: c.Along}
+		if c.Between != nil {
+			chart.Between = *c.Between
+		}
+		for _, curve := range c.Curves {
+			chart.Curves = append(chart.Curves, lug.Curve{At: curve.At, Points: curve.Points})
+		}
+		set.Charts[name] = chart
+	}
+	return set
+}

@@ -7,8 +7,6 @@
 // its checks Undetermined, and nothing panics.
 package strength
 
-import "math"
-
 // Level tells limit from ultimate, of a load and of a check.
 type Level uint8
 
@@ -130,14 +128,15 @@ type Margin struct {
 // that the margin has no number, does not exercise the check.
 func Compare(demand, allowable float64) Margin {
 	margin := allowable/demand - 1
-	if !(demand > 0) || math.IsInf(margin, 0) || math.IsNaN(margin) {
+	// The difference is not zero when the margin is infinite or no number.
+	if !(demand > 0) || margin-margin != 0 {
 		return Margin{}
 	}
-	m := Margin{Demand: demand, Allowable: allowable, Margin: margin, Status: Adequate}
+	status := Adequate
 	if margin < 0 {
-		m.Status = Inadequate
+		status = Inadequate
 	}
-	return m
+	return Margin{Demand: demand, Allowable: allowable, Margin: margin, Status: status}
 }
 
 // Unknown makes an undetermined margin.
