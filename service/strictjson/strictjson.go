@@ -67,6 +67,35 @@ func Decode(data []byte, into any) error {
 // slices, strings, numbers, booleans and nil.
 func DecodeAny(data []byte, into *any) error { return json.Unmarshal(data, into) }
 
+// DecodeLoosely reads a document of our own making of which only some members
+// are asked for.
+func DecodeLoosely(data []byte, into any) error { return json.Unmarshal(data, into) }
+
+// Lines returns a function from pointers into a document to the lines, from 1,
+// that they stand on; of a member that is missing, the line of what it is
+// missing from.
+func Lines(data []byte) func(pointer string) int {
+	lines := map[string]int{"": 1}
+	d := jsontext.NewDecoder(bytes.NewReader(data))
+	for {
+		if _, err := d.ReadToken(); err != nil {
+			break
+		}
+		at := string(d.StackPointer())
+		if _, known := lines[at]; !known {
+			lines[at] = 1 + bytes.Count(data[:d.InputOffset()], []byte{'\n'})
+		}
+	}
+	return func(pointer string) int {
+		for {
+			if line, ok := lines[pointer]; ok {
+				return line
+			}
+			pointer = pointer[:max(strings.LastIndexByte(pointer, '/'), 0)]
+		}
+	}
+}
+
 // Encode writes v as JSON in the order of its fields; a nil slice is [] and a
 // nil pointer null.
 func Encode(v any) ([]byte, error) { return json.Marshal(v, json.Deterministic(true)) }
