@@ -1,0 +1,174 @@
+package service
+
+import (
+	"fmt"
+	"slices"
+
+	"jointledger/service/ledger"
+	"jointledger/service/strictjson"
+)
+
+// EntryOf makes what is stored of an entry from its canonical bytes alone, but
+// for its index. The columns repeat what the bytes say, for finding it.
+func EntryOf(canonical []byte) (Entry, error) {
+	envelope, err := ledger.Parse(canonical)
+	if err != nil {
+		return Entry{}, err
+	}
+	e := Entry{
+		ID: envelope.ID, Type: envelope.Type, At: envelope.At, Author: envelope.Author,
+		Bytes: canonical, Leaf: ledger.Leaf(canonical),
+	}
+	read := func(into any) {
+		if err == nil {
+			err = strictjson.Decode(envelope.Body, into)
+		}
+	}
+	switch envelope.Type {
+	case entryRecord:
+		var b recordBody
+		read(&b)
+		if err == nil {
+			e.Columns, err = recordColumns(&b)
+		}
+	case entrySignOff:
+		var b signOffBody
+		read(&b)
+		e.Columns = Columns{Target: b.Record, Role: b.Role}
+	case entryWithdrawal:
+		var b withdrawalBody
+		read(&b)
+		e.Columns = Columns{Target: b.Record}
+	case entryCurveSet:
+		var b CurveSet
+		read(&b)
+		e.Columns = Columns{Terms: []Term{{"curve-set", b.ID + "@" + b.Version}, {"curve-set-id", b.ID}}}
+	case entryDecision:
+		var b decisionBody
+		read(&b)
+		e.Columns = Columns{Subject: Subject{Part: b.Part, Revision: b.Revision}, Verdict: b.Decision}
+		for _, r := range b.Records {
+			e.Terms = append(e.Terms, Term{"record", r.ID})
+		}
+	}
+	if err != nil {
+		return Entry{}, fmt.Errorf("the entry %s: %w", envelope.ID, err)
+	}
+	return e, nil
+}
+
+// resultHead is what is read of a record's result without the rest.
+type resultHead struct {
+	Verdict   string `json:"verdict"`
+	Governing *struct {
+		Margin *float64 `json:"margin"`
+	} `json:"governing"`
+	ByMethod []struct {
+		Method   string `json:"method"`
+		Compared bool   `json:"compared"`
+	} `json:"by_method"`
+	Findings []struct {
+		Severity string `json:"severity"`
+		Code     string `json:"code"`
+		Message  string `json:"message"`
+	} `json:"findings"`
+	Engine string `json:"engine"`
+}
+
+// margin is the governing margin, nil where there is none.
+func (r *resultHead) margin() *float64 {
+	if r.Governing == nil {
+		return nil
+	}
+	return r.Governing.Margin
+}
+
+func recordColumns(b *recordBody) (Columns, error) {
+	var result resultHead
+	if err := strictjson.DecodeLoosely(b.Result, &result); err != nil {
+		return Columns{}, err
+	}
+	c := Columns{
+		Subject: Subject(b.Subject), GeometryDigest: b.GeometryDigest, Kind: string(b.Kind),
+		Verdict: result.Verdict, Margin: result.margin(),
+	}
+	for _, m := range result.ByMethod {
+		c.Terms = append(c.Terms, Term{"method", m.Method})
+	}
+	var input any
+	if err := strictjson.DecodeAny(b.Input, &input); err != nil {
+		return Columns{}, err
+	}
+	found := inputTerms(input, nil)
+	slices.SortFunc(found, func(a, b Term) int { return slices.Compare([]string{a.Kind, a.Value}, []string{b.Kind, b.Value}) })
+	c.Terms = append(c.Terms, slices.Compact(found)...)
+	return c, nil
+}
+
+// inputTerms collects the materials and curve sets that an input names,
+// wherever they stand.
+func inputTerms(value any, found []Term) []Term {
+	text := func(object any, name string) string {
+		members, _ := object.(map[string]any)
+		s, _ := members[name].(string)
+		return s
+	}
+	switch value := value.(type) {
+	case []any:
+		for _, v := range value {
+			found = inputTerms(v, found)
+		}
+	case map[string]any:
+		for name, v := range value {
+			switch name {
+			case "material":
+				if s := text(v, "name"); s != "" {
+					found = append(found, Term{"material", s})
+				}
+			case "curve_set":
+				if s := text(v, "id"); s != "" {
+					found = append(found, Term{"curve-set", s + "@" + text(v, "version")})
+				}
+			default:
+				found = inputTerms(v, found)
+			}
+		}
+	}
+	return found
+}
+
+// unaltered compares what is stored of an entry with what its bytes say.
+func unaltered(stored Entry) error {
+	is, err := EntryOf(stored.Bytes)
+	if err != nil {
+		return fmt.Errorf("%w: entry %d: %w", errAltered, stored.Index, err)
+	}
+	margin := func(m *float64) string {
+		if m == nil {
+			return "none"
+		}
+		return fmt.Sprint(*m)
+	}
+	for _, column := range []struct{ name, stored, says string }{
+		{"leaf", stored.Leaf.String(), is.Leaf.String()},
+		{"id", stored.ID, is.ID},
+		{"type", stored.Type, is.Type},
+		{"at", stored.At, is.At},
+		{"author", stored.Author, is.Author},
+		{"part", stored.Part, is.Part},
+		{"revision", stored.Revision, is.Revision},
+		{"joint", stored.Joint, is.Joint},
+		{"aspect", stored.Aspect, is.Aspect},
+		{"kind", stored.Kind, is.Kind},
+		{"geometry digest", stored.GeometryDigest, is.GeometryDigest},
+		{"verdict", stored.Verdict, is.Verdict},
+		{"margin", margin(stored.Margin), margin(is.Margin)},
+		{"target", stored.Target, is.Target},
+		{"role", stored.Role, is.Role},
+	} {
+		if column.stored != column.says {
+			return fmt.Errorf("%w: entry %d (%s): its column %s has %.80q and its bytes say %.80q", errAltered, stored.Index, is.ID, column.name, column.stored, column.says)
+		}
+	}
+	return nil
+}

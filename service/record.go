@@ -1,0 +1,424 @@
+package service
+
+import (
+	"context"
+	"crypto/sha256"
+	"encoding/base64"
+	"errors"
+	"fmt"
+	"runtime"
+	"slices"
+	"strconv"
+	"time"
+
+	"github.com/google/uuid"
+
+	"jointledger/service/ledger"
+	"jointledger/service/strictjson"
+)
+
+// RecordRequest asks for a calculation to be put on record.
+type RecordRequest struct {
+	Subject        Subject        `json:"subject"`
+	GeometryDigest string         `json:"geometry_digest" validate:"id"`
+	Kind           Kind           `json:"kind"`
+	Input          strictjson.Raw `json:"input"`
+	Note           string         `json:"note,omitzero" validate:"text"`
+}
+
+// RecordDocument is a record as callers see it.
+type RecordDocument struct {
+	ID             string         `json:"id"`
+	Index          int64          `json:"index"`
+	RecordedAt     string         `json:"recorded_at"`
+	Author         string         `json:"author"`
+	Subject        subject        `json:"subject"`
+	GeometryDigest string         `json:"geometry_digest"`
+	Kind           Kind           `json:"kind"`
+	Note           string         `json:"note"`
+	Input          strictjson.Raw `json:"input"`
+	Result         strictjson.Raw `json:"result"`
+	InputDigest    string         `json:"input_digest"`
+	RecordDigest   string         `json:"record_digest"`
+	State          State          `json:"state"`
+	SignOffs       []SignOff      `json:"sign_offs"`
+	Withdrawal     *Withdrawal    `json:"withdrawal"`
+}
+
+// subject is Subject with every member present.
+type subject struct {
+	Part     string `json:"part"`
+	Revision string `json:"revision"`
+	Joint    string `json:"joint"`
+	Aspect   string `json:"aspect"`
+}
+
+// SignOff is a signature under a record.
+type SignOff struct {
+	ID        string `json:"id"`
+	Index     int64  `json:"index"`
+	At        string `json:"at"`
+	Author    string `json:"author"`
+	Role      string `json:"role"`
+	Statement string `json:"statement"`
+}
+
+// Withdrawal takes a record back, without changing it.
+type Withdrawal struct {
+	ID     string `json:"id"`
+	Index  int64  `json:"index"`
+	At     string `json:"at"`
+	Author string `json:"author"`
+	Reason string `json:"reason"`
+}
+
+// The types of entries.
+const (
+	entryRecord     = "record"
+	entrySignOff    = "sign-off"
+	entryWithdrawal = "withdrawal"
+	entryCurveSet   = "curve-set"
+)
+
+// recordBody is the body of a record's entry. What it hashes is fixed for
+// good.
+type recordBody struct {
+	Subject        subject        `json:"subject"`
+	GeometryDigest string         `json:"geometry_digest"`
+	Kind           Kind           `json:"kind"`
+	Note           string         `json:"note"`
+	Input          strictjson.Raw `json:"input"`
+	InputDigest    string         `json:"input_digest"`
+	Result         strictjson.Raw `json:"result"`
+	MadeBy         madeBy         `json:"made_by"`
+}
+
+// madeBy names the program that computed a record.
+type madeBy struct {
+	Engine string `json:"engine"`
+	Go     string `json:"go"`
+	Arch   string `json:"arch"`
+}
+
+func thisProgram() madeBy { return madeBy{Engine, runtime.Version(), runtime.GOARCH} }
+
+// Idempotency is what a caller sent to make its request repeatable.
+type Idempotency struct {
+	Key          string // empty for none
+	Method, Path string
+	Body         []byte
+}
+
+// answer prepares what is remembered of a request, nil without a key.
+func (i Idempotency) answer(caller Caller) *Answer {
+	if i.Key == "" {
+		return nil
+	}
+	return &Answer{
+		IdempotencyKey: IdempotencyKey{caller.Name, i.Method, i.Path, i.Key},
+		RequestDigest:  sha256.Sum256(i.Body),
+	}
+}
+
+// replay checks that a request is the one that was answered before.
+func (i Idempotency) replay(earlier *Answer) error {
+	if sha256.Sum256(i.Body) != earlier.RequestDigest {
+		return problem(IdempotencyMismatch, "This Idempotency-Key was used for another body; use a new key for a new request.")
+	}
+	return nil
+}
+
+// Record computes a joint and appends the result. again is true when the same
+// request was answered before and this is that answer.
+func (s *Service) Record(ctx context.Context, caller Caller, body []byte, idempotency Idempotency) (_ *RecordDocument, again bool, _ error) {
+	var request RecordRequest
+	if err := strictjson.Decode(body, &request); err != nil {
+		return nil, false, malformed(err, "")
+	}
+	var f faults
+	f.check(&request)
+	c, err := calculate(request.Kind, request.Input, View{}, s.registry(ctx))
+	var inner *Problem
+	if errors.As(err, &inner) && inner.Code == Malformed {
+		return nil, false, inner.Under("/input")
+	}
+	if inner != nil && inner.Code == Invalid {
+		for _, e := range inner.Errors {
+			f.add("/input"+e.Pointer, "%s", e.Detail)
+		}
+	} else if err != nil {
+		return nil, false, s.fail(err)
+	}
+	if found := f.problem(); found != nil {
+		return nil, false, found
+	}
+	s.count(&c.result)
+	result, err := strictjson.Canonical(&c.result)
+	if err != nil {
+		return nil, false, err
+	}
+	entry, err := s.seal(entryRecord, caller, recordBody{
+		Subject:        subject(request.Subject),
+		GeometryDigest: request.GeometryDigest, Kind: request.Kind, Note: request.Note,
+		Input: c.input, InputDigest: c.inputDigest, Result: result, MadeBy: thisProgram(),
+	})
+	if err != nil {
+		return nil, false, err
+	}
+	done := s.log.append(&pending{ctx: ctx, entry: entry, answer: idempotency.answer(caller)})
+	switch {
+	case done.err != nil:
+		return nil, false, s.fail(done.err)
+	case done.earlier != nil:
+		if err := idempotency.replay(done.earlier); err != nil {
+			return nil, false, err
+		}
+		if entry, err = s.store.Entry(ctx, done.earlier.Index); err != nil {
+			return nil, false, s.fail(err)
+		}
+	default:
+		entry.Index = done.index
+	}
+	document, err := recordDocument(entry, nil)
+	return document, done.earlier != nil, err
+}
+
+// seal makes an entry of a body, stamped now.
+func (s *Service) seal(kind string, caller Caller, body any) (Entry, error) {
+	canonical, err := strictjson.Canonical(body)
+	if err != nil {
+		return Entry{}, err
+	}
+	id, err := uuid.NewV7()
+	if err != nil {
+		return Entry{}, err
+	}
+	bytes, _, err := ledger.Seal(ledger.Envelope{
+		Type: kind, ID: id.String(), At: stamp(s.clock.Now()), Author: caller.Name, Body: canonical,
+	})
+	if err != nil {
+		return Entry{}, err
+	}
+	return EntryOf(bytes)
+}
+
+// recordDocument shows an entry and those about it as callers see a record.
+func recordDocument(entry Entry, about []Entry) (*RecordDocument, error) {
+	envelope, err := ledger.Parse(entry.Bytes)
+	if err != nil {
+		return nil, fmt.Errorf("entry %d: %w", entry.Index, err)
+	}
+	var body recordBody
+	if err := strictjson.Decode(envelope.Body, &body); err != nil {
+		return nil, fmt.Errorf("entry %d: %w", entry.Index, err)
+	}
+	document := &RecordDocument{
+		ID: envelope.ID, Index: entry.Index, RecordedAt: envelope.At, Author: envelope.Author,
+		Subject: body.Subject, GeometryDigest: body.GeometryDigest, Kind: body.Kind, Note: body.Note,
+		Input: body.Input, Result: body.Result, InputDigest: body.InputDigest,
+		RecordDigest: digestOf(entry),
+		State:        stateOf(about),
+	}
+	for _, e := range about {
+		envelope, err := ledger.Parse(e.Bytes)
+		if err != nil {
+			return nil, fmt.Errorf("entry %d: %w", e.Index, err)
+		}
+		switch e.Type {
+		case entrySignOff:
+			var b signOffBody
+			if err := strictjson.Decode(envelope.Body, &b); err != nil {
+				return nil, fmt.Errorf("entry %d: %w", e.Index, err)
+			}
+			document.SignOffs = append(document.SignOffs, SignOff{envelope.ID, e.Index, envelope.At, envelope.Author, b.Role, b.Statement})
+		case entryWithdrawal:
+			var b withdrawalBody
+			if err := strictjson.Decode(envelope.Body, &b); err != nil {
+				return nil, fmt.Errorf("entry %d: %w", e.Index, err)
+			}
+			document.Withdrawal = &Withdrawal{envelope.ID, e.Index, envelope.At, envelope.Author, b.Reason}
+		}
+	}
+	return document, nil
+}
+
+// signOffBody and withdrawalBody are the bodies of the entries about a record.
+type signOffBody struct {
+	Record       string `json:"record"`
+	RecordDigest string `json:"record_digest"`
+	Role         string `json:"role"`
+	Statement    string `json:"statement"`
+}
+
+type withdrawalBody struct {
+	Record       string `json:"record"`
+	RecordDigest string `json:"record_digest"`
+	Reason       string `json:"reason"`
+}
+
+// stateOf derives a record's state from the entries about it.
+func stateOf(about []Entry) State {
+	state := Recorded
+	for _, e := range about {
+		switch {
+		case e.Type == entryWithdrawal:
+			return Withdrawn
+		case e.Role == string(Checked) && state == Recorded:
+			state = Checked
+		case e.Role == string(Approved):
+			state = Approved
+		}
+	}
+	return state
+}
+
+// RecordByID returns a record with its state of now.
+func (s *Service) RecordByID(ctx context.Context, id string) (*RecordDocument, error) {
+	entry, err := s.record(ctx, id)
+	if err != nil {
+		return nil, err
+	}
+	about, err := s.store.About(ctx, []string{id})
+	if err != nil {
+		return nil, s.fail(err)
+	}
+	return recordDocument(entry, about[id])
+}
+
+// record finds the entry of a record.
+func (s *Service) record(ctx context.Context, id string) (Entry, error) {
+	entry, err := s.store.EntryByID(ctx, id)
+	if errors.Is(err, ErrNotFound) || err == nil && entry.Type != entryRecord {
+		return Entry{}, problem(NotFound, "There is no record %.80q.", id)
+	}
+	return entry, s.fail(err)
+}
+
+// EntryBytes returns the hashed bytes of a record, exactly.
+func (s *Service) EntryBytes(ctx context.Context, id string) ([]byte, error) {
+	entry, err := s.record(ctx, id)
+	return entry.Bytes, err
+}
+
+// RecordSummary is a record in a list.
+type RecordSummary struct {
+	ID             string   `json:"id"`
+	Index          int64    `json:"index"`
+	RecordedAt     string   `json:"recorded_at"`
+	Author         string   `json:"author"`
+	Subject        subject  `json:"subject"`
+	GeometryDigest string   `json:"geometry_digest"`
+	Kind           string   `json:"kind"`
+	Verdict        string   `json:"verdict"`
+	Margin         *float64 `json:"margin"`
+	RecordDigest   string   `json:"record_digest"`
+	State          State    `json:"state"`
+}
+
+// RecordList is one page of records, newest first.
+type RecordList struct {
+	Items      []RecordSummary `json:"items"`
+	NextCursor *string         `json:"next_cursor"`
+}
+
+// RecordQuery is what a list is asked for, in the words of the wire; empty
+// for what was not given.
+type RecordQuery struct {
+	Part, Revision, Joint, Kind, Verdict, State string
+	Author, Method, Material, CurveSet          string
+	Since, Until, Latest, Cursor, Limit         string
+}
+
+// Records lists records.
+func (s *Service) Records(ctx context.Context, q RecordQuery) (*RecordList, error) {
+	var f faults
+	filter := Filter{
+		Part: q.Part, Revision: q.Revision, Joint: q.Joint, Kind: q.Kind, Verdict: q.Verdict, State: State(q.State),
+		Author: q.Author, Method: q.Method, Material: q.Material, CurveSet: q.CurveSet,
+	}
+	oneOf := func(name, given string, words ...string) {
+		if given != "" && !slices.Contains(words, given) {
+			f.add(pointer(name), "must be one of %v, not %.80q", words, given)
+		}
+	}
+	oneOf("kind", q.Kind, Kind("").Words()...)
+	oneOf("verdict", q.Verdict, "adequate", "inadequate", "undetermined")
+	oneOf("state", q.State, string(Recorded), string(Checked), string(Approved), string(Withdrawn))
+	oneOf("latest", q.Latest, "true", "false")
+	filter.Latest = q.Latest == "true"
+	for _, t := range []struct {
+		name, given string
+		at          *string
+	}{{"since", q.Since, &filter.Since}, {"until", q.Until, &filter.Until}} {
+		if t.given == "" {
+			continue
+		}
+		when, err := time.Parse(time.RFC3339, t.given)
+		if err != nil {
+			f.add(pointer(t.name), "must be a time in the form of RFC 3339, such as 2026-01-31T00:00:00Z, not %.80q", t.given)
+			continue
+		}
+		// An entry's time has milliseconds: a bound between two of them
+		// means the later.
+		*t.at = stamp(when.Add(time.Millisecond - 1).Truncate(time.Millisecond))
+	}
+	limit := 50
+	if q.Limit != "" {
+		n, err := strconv.Atoi(q.Limit)
+		if err != nil || n < 1 || n > 500 {
+			f.add("/limit", "must be a whole number from 1 to 500, not %.80q", q.Limit)
+		}
+		limit = n
+	}
+	before := int64(1) << 62
+	if q.Cursor != "" {
+		index, err := readCursor(q.Cursor)
+		if err != nil {
+			f.add("/cursor", "is not a cursor that this server gave")
+		}
+		before = index
+	}
+	if found := f.problem(); found != nil {
+		return nil, found
+	}
+	found, err := s.store.Records(ctx, filter, before, limit+1)
+	if err != nil {
+		return nil, s.fail(err)
+	}
+	list := &RecordList{Items: []RecordSummary{}}
+	for i, r := range found {
+		if i == limit {
+			cursor := writeCursor(found[i-1].Index)
+			list.NextCursor = &cursor
+			break
+		}
+		list.Items = append(list.Items, RecordSummary{
+			ID: r.ID, Index: r.Index, RecordedAt: r.At, Author: r.Author, Subject: subject(r.Subject),
+			GeometryDigest: r.GeometryDigest, Kind: r.Kind, Verdict: r.Verdict, Margin: r.Margin,
+			RecordDigest: ledger.DigestText(r.Leaf), State: r.State,
+		})
+	}
+	return list, nil
+}
+
+// A cursor is the index that the next page stands under, in a form that does
+// not invite counting.
+func writeCursor(index int64) string {
+	return base64.RawURLEncoding.EncodeToString([]byte("before:" + strconv.FormatInt(index, 10)))
+}
+
+func readCursor(cursor string) (int64, error) {
+	plain, err := base64.RawURLEncoding.DecodeString(cursor)
+	if err != nil {
+		return 0, err
+	}
+	var index int64
+	_, err = fmt.Sscanf(string(plain), "before:%d", &index)
+	if err == nil && writeCursor(index) != cursor {
+		err = errors.New("not as written")
+	}
+	return index, err
+}
+
+// digestOf is the record digest of an entry.
+func digestOf(e Entry) string { return ledger.DigestText(ledger.Leaf(e.Bytes)) }

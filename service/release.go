@@ -1,0 +1,332 @@
+package service
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"sync"
+	"time"
+
+	"jointledger/service/ledger"
+	"jointledger/service/strictjson"
+)
+
+// releaseRequest is what a vault's check-in hook asks.
+type releaseRequest struct {
+	Part     string         `json:"part" validate:"id"`
+	Revision string         `json:"revision" validate:"id"`
+	Joints   []releaseJoint `json:"joints" validate:"min=1,max=1000,dive"`
+	Policy   *string        `json:"policy,omitzero" validate:"omitnil,id"`
+}
+
+// releaseJoint is a joint with its geometry as the vault has it now.
+type releaseJoint struct {
+	Joint          string `json:"joint" validate:"id"`
+	GeometryDigest string `json:"geometry_digest" validate:"id"`
+}
+
+// Decision is what the gate answers.
+type Decision struct {
+	ID           *string          `json:"id"`    // null for a dry run
+	Index        *int64           `json:"index"` // null for a dry run
+	At           string           `json:"at"`
+	Decision     string           `json:"decision"`
+	Policy       string           `json:"policy"`
+	PolicyDigest string           `json:"policy_digest"`
+	Findings     []ReleaseFinding `json:"findings"`
+}
+
+// The decisions.
+const (
+	Release = "release"
+	Hold    = "hold"
+)
+
+// ReleaseFinding is one reason to hold.
+type ReleaseFinding struct {
+	Joint   string  `json:"joint"`
+	Code    string  `json:"code"`
+	Message string  `json:"message"`
+	Record  *string `json:"record"`
+}
+
+const entryDecision = "release-decision"
+
+// decisionBody is the body of a decision's entry.
+type decisionBody struct {
+	Part         string           `json:"part"`
+	Revision     string           `json:"revision"`
+	Joints       []releaseJoint   `json:"joints"`
+	Decision     string           `json:"decision"`
+	Policy       Policy           `json:"policy"`
+	PolicyDigest string           `json:"policy_digest"`
+	Findings     []ReleaseFinding `json:"findings"`
+	// Records are those that the decision rests on, with their digests.
+	Records []decisionRecord `json:"records"`
+}
+
+type decisionRecord struct {
+	ID     string `json:"id"`
+	Digest string `json:"record_digest"`
+	State  State  `json:"state"`
+}
+
+// errAltered says that what the store has of an entry is not what was signed.
+// It is answered as unavailable: no decision rests on altered rows.
+var errAltered = fmt.Errorf("%w: the ledger's rows are not those that were signed", ErrUnavailable)
+
+// Judge decides whether a part may be released. A dry run appends nothing.
+func (s *Service) Judge(ctx context.Context, caller Caller, body []byte, dryRun bool, idempotency Idempotency) (*Decision, bool, error) {
+	var request releaseRequest
+	if err := strictjson.Decode(body, &request); err != nil {
+		return nil, false, malformed(err, "")
+	}
+	setDefault(&request.Policy, DefaultPolicy)
+	var f faults
+	f.check(&request)
+	first := map[string]bool{}
+	for i, j := range request.Joints {
+		if first[j.Joint] {
+			f.add(pointer("joints", i, "joint"), "the joint %.80q is named twice", j.Joint)
+		}
+		first[j.Joint] = true
+	}
+	policy, known := s.policies[*request.Policy]
+	if !known && isID(*request.Policy) {
+		f.add("/policy", "there is no policy %.80q on this server", *request.Policy)
+	}
+	if found := f.problem(); found != nil {
+		return nil, false, found
+	}
+	digest, err := policy.digest()
+	if err != nil {
+		return nil, false, err
+	}
+	now := s.clock.Now()
+	decided, err := s.judge(ctx, &request, policy, now)
+	if err != nil {
+		return nil, false, s.fail(err)
+	}
+	decided.PolicyDigest = digest
+	decision := &Decision{
+		At: stamp(now), Decision: decided.Decision, Policy: policy.Name, PolicyDigest: digest, Findings: decided.Findings,
+	}
+	if dryRun {
+		return decision, false, nil
+	}
+	entry, err := s.seal(entryDecision, caller, decided)
+	if err != nil {
+		return nil, false, err
+	}
+	done := s.log.append(&pending{ctx: ctx, entry: entry, answer: idempotency.answer(caller)})
+	switch {
+	case done.err != nil:
+		return nil, false, s.fail(done.err)
+	case done.earlier != nil:
+		if err := idempotency.replay(done.earlier); err != nil {
+			return nil, false, err
+		}
+		if entry, err = s.store.Entry(ctx, done.earlier.Index); err != nil {
+			return nil, false, s.fail(err)
+		}
+		decision, err = decisionOf(entry)
+		return decision, true, err
+	}
+	var codes []string
+	for _, f := range decided.Findings {
+		codes = append(codes, f.Code)
+	}
+	s.watch.Decided(decided.Decision, codes)
+	decision.ID, decision.Index, decision.At = &entry.ID, &done.index, entry.At
+	return decision, false, nil
+}
+
+// decisionOf shows an entry as the gate answered it.
+func decisionOf(entry Entry) (*Decision, error) {
+	envelope, err := ledger.Parse(entry.Bytes)
+	if err != nil {
+		return nil, err
+	}
+	var body decisionBody
+	if err := strictjson.Decode(envelope.Body, &body); err != nil {
+		return nil, err
+	}
+	return &Decision{
+		ID: &entry.ID, Index: &entry.Index, At: entry.At, Decision: body.Decision,
+		Policy: body.Policy.Name, PolicyDigest: body.PolicyDigest, Findings: body.Findings,
+	}, nil
+}
+
+// judged is a record with all that the gate reads of it, from its own bytes.
+type judged struct {
+	entry  Entry
+	body   recordBody
+	result resultHead
+	state  State
+	roles  map[string]bool
+}
+
+// judge looks at the latest record of each kind and aspect at each joint.
+func (s *Service) judge(ctx context.Context, request *releaseRequest, policy Policy, now time.Time) (*decisionBody, error) {
+	records, err := s.judgedRecords(ctx, request.Part, request.Revision)
+	if err != nil {
+		return nil, err
+	}
+	byJoint := map[string][]*judged{}
+	var order []string
+	for _, r := range records {
+		joint := r.body.Subject.Joint
+		if byJoint[joint] == nil {
+			order = append(order, joint)
+		}
+		byJoint[joint] = append(byJoint[joint], r)
+	}
+	d := &decisionBody{
+		Part: request.Part, Revision: request.Revision, Joints: request.Joints, Policy: policy,
+		Findings: []ReleaseFinding{}, Records: []decisionRecord{},
+	}
+	named := map[string]bool{}
+	for _, j := range request.Joints {
+		named[j.Joint] = true
+		if len(byJoint[j.Joint]) == 0 {
+			d.hold(j.Joint, nil, "no-record", "there is no record of this joint under part %s, revision %s", request.Part, request.Revision)
+		}
+		for _, r := range byJoint[j.Joint] {
+			d.Records = append(d.Records, decisionRecord{r.entry.ID, digestOf(r.entry), r.state})
+			d.look(j, r, policy, now)
+		}
+	}
+	for _, joint := range order {
+		if !named[joint] {
+			d.hold(joint, nil, "joint-not-named", "this joint has records under part %s, revision %s, and the request leaves it out", request.Part, request.Revision)
+		}
+	}
+	if d.Decision = Release; len(d.Findings) > 0 {
+		d.Decision = Hold
+	}
+	return d, nil
+}
+
+func (d *decisionBody) hold(joint string, r *judged, code, format string, args ...any) {
+	f := ReleaseFinding{Joint: joint, Code: code, Message: fmt.Sprintf(format, args...)}
+	if r != nil {
+		f.Record = &r.entry.ID
+		about := string(r.body.Kind)
+		if r.body.Subject.Aspect != "" {
+			about += ", " + r.body.Subject.Aspect
+		}
+		f.Message = fmt.Sprintf("%s (%s)", f.Message, about)
+	}
+	d.Findings = append(d.Findings, f)
+}
+
+// look gives every reason that one record is to hold a joint.
+func (d *decisionBody) look(j releaseJoint, r *judged, policy Policy, now time.Time) {
+	hold := func(code, format string, args ...any) { d.hold(j.Joint, r, code, format, args...) }
+	if r.state == Withdrawn {
+		hold("withdrawn", "the latest record was withdrawn")
+	}
+	least := policy.leastMargin(j.Joint)
+	switch {
+	case r.result.Verdict != "adequate":
+		hold("not-adequate", "the latest record is %s", r.result.Verdict)
+	case least > 0:
+		if m := r.result.margin(); m == nil || *m < least {
+			hold("margin", "the least margin is below %g, which the policy asks for here", least)
+		}
+	}
+	if r.body.GeometryDigest != j.GeometryDigest {
+		hold("geometry-changed", "the latest record is for the geometry %.80q, and that of the joint is %.80q", r.body.GeometryDigest, j.GeometryDigest)
+	}
+	for _, role := range *policy.SignOffs {
+		if !r.roles[role] {
+			hold("not-"+role, "the latest record is not %s", role)
+		}
+	}
+	for _, m := range r.result.ByMethod {
+		if why := policy.Methods.refuses(m.Method); why != "" && !m.Compared {
+			hold("method", "the record rests on the method %s, which %s", m.Method, why)
+		}
+	}
+	for _, t := range r.entry.Terms {
+		if why := policy.CurveSets.refuses(t.Value); t.Kind == "curve-set" && why != "" {
+			hold("curve-set", "the record rests on the curve set %s, which %s", t.Value, why)
+		}
+	}
+	for _, f := range r.result.Findings {
+		barred := *policy.Violations == "hold" && f.Severity == "violation"
+		for _, code := range policy.BarFindings {
+			barred = barred || code == f.Code
+		}
+		if barred {
+			hold("finding", "the record has the finding %s: %s", f.Code, f.Message)
+		}
+	}
+	if policy.GreatestAgeDays != nil {
+		at, err := time.Parse(time.RFC3339, r.entry.At)
+		if days := now.Sub(at).Hours() / 24; err != nil || days > *policy.GreatestAgeDays {
+			hold("too-old", "the record is of %s, more than %g days ago", r.entry.At, *policy.GreatestAgeDays)
+		}
+	}
+	if policy.LeastEngine != nil && olderThan(r.result.Engine, *policy.LeastEngine) {
+		hold("engine", "the record was computed by version %s, before %s", r.result.Engine, *policy.LeastEngine)
+	}
+}
+
+// judgedRecords reads the latest records under a part and revision and checks
+// each of their entries, and the columns that found them, against its bytes.
+func (s *Service) judgedRecords(ctx context.Context, part, revision string) ([]*judged, error) {
+	entries, err := s.store.Latest(ctx, part, revision)
+	if err != nil {
+		return nil, err
+	}
+	ids := make([]string, len(entries))
+	for i, e := range entries {
+		ids[i] = e.ID
+	}
+	about, err := s.store.About(ctx, ids)
+	if err != nil {
+		return nil, err
+	}
+	records := make([]*judged, len(entries))
+	errs := make([]error, len(entries))
+	var work sync.WaitGroup
+	for i, e := range entries {
+		work.Go(func() { records[i], errs[i] = judgedRecord(e, about[e.ID]) })
+	}
+	work.Wait()
+	if err := errors.Join(errs...); err != nil {
+		s.watch.Altered(err)
+		return nil, err
+	}
+	return records, nil
+}
+
+// judgedRecord reads a record from its bytes and compares what was stored
+// beside them.
+func judgedRecord(e Entry, about []Entry) (*judged, error) {
+	r := &judged{entry: e, state: stateOf(about), roles: map[string]bool{}}
+	for _, each := range append([]Entry{e}, about...) {
+		if err := unaltered(each); err != nil {
+			return nil, err
+		}
+		if each.Type == entrySignOff {
+			r.roles[each.Role] = true
+		}
+	}
+	// Terms come from the bytes too: the gate asks them.
+	columns, err := EntryOf(e.Bytes)
+	if err != nil {
+		return nil, fmt.Errorf("%w: entry %d: %w", errAltered, e.Index, err)
+	}
+	r.entry.Terms = columns.Terms
+	body, err := recordBodyOf(e.Bytes)
+	if err != nil {
+		return nil, fmt.Errorf("%w: entry %d: %w", errAltered, e.Index, err)
+	}
+	r.body = *body
+	if err := strictjson.DecodeLoosely(body.Result, &r.result); err != nil {
+		return nil, fmt.Errorf("%w: entry %d: %w", errAltered, e.Index, err)
+	}
+	return r, nil
+}

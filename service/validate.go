@@ -1,0 +1,186 @@
+package service
+
+import (
+	"errors"
+	"fmt"
+	"math"
+	"path"
+	"reflect"
+	"strings"
+	"unicode"
+	"unicode/utf8"
+
+	"github.com/go-playground/validator/v10"
+
+	"jointledger/strength"
+)
+
+// Bounds of what a document may say. They keep every product of the formulas
+// within float64, and are far outside what anybody builds.
+const (
+	leastSize  = 1e-9
+	mostSize   = 1e9
+	mostAmount = 1e12
+	mostText   = 2000
+	mostID     = 200
+)
+
+// rule is a word for validate tags with what it asks, in words.
+type rule struct {
+	asks string
+	ok   func(validator.FieldLevel) bool
+}
+
+var rules = map[string]rule{
+	"size": {fmt.Sprintf("must be more than 0, from %g to %g", leastSize, mostSize), number(func(x float64) bool {
+		return x >= leastSize && x <= mostSize
+	})},
+	"amount": {fmt.Sprintf("must be 0 or more, at most %g", mostAmount), number(func(x float64) bool {
+		return x >= 0 && x <= mostAmount
+	})},
+	"signed": {fmt.Sprintf("must be between %g and %g", -mostAmount, mostAmount), number(func(x float64) bool {
+		return math.Abs(x) <= mostAmount
+	})},
+	"factor":   {"must be from 1 to 1000", number(func(x float64) bool { return x >= 1 && x <= 1000 })},
+	"share":    {"must be more than 0 and at most 1", number(func(x float64) bool { return x > 0 && x <= 1 })},
+	"portion":  {"must be from 0 to 1", number(func(x float64) bool { return x >= 0 && x <= 1 })},
+	"poisson":  {"must be at least 0 and less than 0.5", number(func(x float64) bool { return x >= 0 && x < 0.5 })},
+	"angle":    {"must be between -36000 and 36000", number(func(x float64) bool { return math.Abs(x) <= 36000 })},
+	"flexible": {"must be more than 0, from 1e-18 to 1e6", number(func(x float64) bool { return x >= 1e-18 && x <= 1e6 })},
+	"text": {fmt.Sprintf("must be at most %d characters", mostText), func(fl validator.FieldLevel) bool {
+		return utf8.RuneCountInString(fl.Field().String()) <= mostText
+	}},
+	"statement": {fmt.Sprintf("must be 1 to %d characters", mostText), func(fl validator.FieldLevel) bool {
+		n := utf8.RuneCountInString(fl.Field().String())
+		return n >= 1 && n <= mostText
+	}},
+	"id": {fmt.Sprintf("must be 1 to %d characters without control characters", mostID), func(fl validator.FieldLevel) bool {
+		return isID(fl.Field().String())
+	}},
+	"version": {"must be a version such as 0.1.0", func(fl validator.FieldLevel) bool {
+		_, ok := readVersion(fl.Field().String())
+		return ok
+	}},
+	"pattern": {"must be a pattern of 1 to 200 characters with * and ?", func(fl validator.FieldLevel) bool {
+		_, err := path.Match(fl.Field().String(), "")
+		return err == nil && isID(fl.Field().String())
+	}},
+	"mark": {"must be given, seen, derived, common practice or memory N%", func(fl validator.FieldLevel) bool {
+		_, ok := strength.ParseMark(fl.Field().String())
+		return ok
+	}},
+	"mode": {"must be one of the modes of checks", func(fl validator.FieldLevel) bool {
+		_, ok := modeByWord[fl.Field().String()]
+		return ok
+	}},
+}
+
+func number(ok func(float64) bool) func(validator.FieldLevel) bool {
+	return func(fl validator.FieldLevel) bool {
+		x := fl.Field().Float()
+		return !math.IsNaN(x) && ok(x)
+	}
+}
+
+func isID(s string) bool {
+	n := utf8.RuneCountInString(s)
+	return n >= 1 && n <= mostID && strings.IndexFunc(s, unicode.IsControl) < 0
+}
+
+var modeByWord = func() map[string]strength.Mode {
+	words := map[string]strength.Mode{}
+	for _, m := range strength.Modes() {
+		words[m.String()] = m
+	}
+	return words
+}()
+
+var validate = newValidator()
+
+func newValidator() *validator.Validate {
+	v := validator.New(validator.WithRequiredStructEnabled())
+	for word, r := range rules {
+		if err := v.RegisterValidation(word, r.ok); err != nil {
+			panic(err) // a mistake in the table above
+		}
+	}
+	v.RegisterTagNameFunc(func(f reflect.StructField) string {
+		name, _, _ := strings.Cut(f.Tag.Get("json"), ",")
+		return name
+	})
+	v.RegisterCustomTypeFunc(func(field reflect.Value) any {
+		return nominal(field.Addr().Interface().(*Length))
+	}, Length{})
+	return v
+}
+
+// check applies the validate tags of a document.
+func (f *faults) check(document any) {
+	var broken validator.ValidationErrors
+	if err := validate.Struct(document); errors.As(err, &broken) {
+		for _, e := range broken {
+			f.add(pointerOf(e.Namespace()), "%s", asked(e))
+		}
+	}
+}
+
+// pointerOf turns a validator's namespace, T.lug.load_cases[3].id, into a
+// JSON pointer. The object in the place of a name has no token of its own.
+func pointerOf(namespace string) string {
+	_, path, _ := strings.Cut(namespace, ".")
+	var b strings.Builder
+	for _, part := range strings.Split(path, ".") {
+		name, index, indexed := strings.Cut(part, "[")
+		if name != "Object" {
+			b.WriteString(pointer(name))
+		}
+		for indexed {
+			var token string
+			token, index, _ = strings.Cut(index, "]")
+			b.WriteString(pointer(token))
+			_, index, indexed = strings.Cut(index, "[")
+		}
+	}
+	return b.String()
+}
+
+// asked says what a broken rule asks.
+func asked(e validator.FieldError) string {
+	found := fmt.Sprintf("%v", e.Value())
+	if text, ok := e.Value().(string); ok {
+		found = fmt.Sprintf("%.80q", text)
+	}
+	if r, ok := rules[e.Tag()]; ok {
+		return r.asks + ", not " + found
+	}
+	switch e.Tag() {
+	case "min":
+		return fmt.Sprintf("must have at least %s element", e.Param())
+	case "max":
+		return fmt.Sprintf("must have at most %s elements", e.Param())
+	case "unique":
+		return "must not say the same twice"
+	case "oneof":
+		return fmt.Sprintf("must be one of %s, not %s", strings.Join(strings.Fields(e.Param()), ", "), found)
+	}
+	return fmt.Sprintf("breaks the rule %s", e.Tag())
+}
+
+// unique notes each id that stands twice in a list, at the later place.
+func (f *faults) unique(list string, n int, id func(int) string) {
+	first := make(map[string]int, n)
+	for i := range n {
+		if at, twice := first[id(i)]; twice {
+			f.add(pointer(list, i, "id"), "the id %.80q is that of element %d too", id(i), at)
+			continue
+		}
+		first[id(i)] = i
+	}
+}
+
+// take adds what pure code found wrong, in the caller's units.
+func (f *faults) take(found []strength.Fault, u Units) {
+	for _, fault := range found {
+		f.add(fault.Pointer, "%s", u.say(fault.Message))
+	}
+}
