@@ -1,0 +1,104 @@
+package api
+
+import (
+	"context"
+	"fmt"
+	"log/slog"
+	"net"
+	"net/http"
+	"net/netip"
+	"runtime/debug"
+	"strconv"
+	"strings"
+	"time"
+
+	"github.com/labstack/echo/v4"
+
+	"jointledger/service"
+)
+
+// observe gives every request its id, and counts and logs it.
+func (v *server) observe(next echo.HandlerFunc) echo.HandlerFunc {
+	return func(c echo.Context) error {
+		start := time.Now()
+		id := newRequestID()
+		header := c.Response().Header()
+		header.Set(requestIDHeader, id)
+		header.Set(echo.HeaderXContentTypeOptions, "nosniff")
+		v.metrics.inFlight.Inc()
+		defer v.metrics.inFlight.Dec()
+		if err := next(c); err != nil {
+			v.fail(c, err)
+		}
+		took := time.Since(start)
+		status := c.Response().Status
+		template := c.Path()
+		if template == "" {
+			template = "none"
+		}
+		v.metrics.requests.WithLabelValues(c.Request().Method, template, strconv.Itoa(status)).Observe(took.Seconds())
+		v.options.Log.LogAttrs(c.Request().Context(), slog.LevelInfo, "request",
+			slog.String("request", id), slog.String("method", c.Request().Method), slog.String("route", template),
+			slog.Int("status", status), slog.Int64("bytes", c.Response().Size), slog.Duration("took", took))
+		return nil
+	}
+}
+
+// recover turns a panic, a defect, into a problem and a log with its stack.
+func (v *server) recover(next echo.HandlerFunc) echo.HandlerFunc {
+	return func(c echo.Context) (err error) {
+		defer func() {
+			if r := recover(); r != nil {
+				if r == http.ErrAbortHandler {
+					panic(r)
+				}
+				v.metrics.panics.Inc()
+				err = fmt.Errorf("panic: %v\n%s", r, debug.Stack())
+			}
+		}()
+		return next(c)
+	}
+}
+
+// shield refuses what no route should see.
+func (v *server) shield(next echo.HandlerFunc) echo.HandlerFunc {
+	return func(c echo.Context) error {
+		if len(c.Request().RequestURI) > mostURL {
+			return &service.Problem{Code: service.TooLarge, Detail: "The address is longer than 8 KiB."}
+		}
+		open, err := v.service.Open(c.Request().Context())
+		if err != nil || !open {
+			// What needs no caller still answers; all else finds no key.
+			return next(c)
+		}
+		// Without keys whoever reaches the port may do everything, so only
+		// this machine's own programs may reach it: no name that a web page
+		// could rebind to loopback, no proxy that forwards strangers.
+		if !loopbackName(c.Request().Host) {
+			return &service.Problem{Code: service.Misdirected, Detail: "This server has no keys and answers only under a loopback name such as localhost. Make keys to open it to others: jointledger key add NAME --role ROLE."}
+		}
+		for name := range c.Request().Header {
+			if name == "Forwarded" || strings.HasPrefix(name, "X-Forwarded-") {
+				return &service.Problem{Code: service.Forbidden, Detail: "This server has no keys and answers no forwarded requests. Make keys to put it behind a proxy: jointledger key add NAME --role ROLE."}
+			}
+		}
+		c.SetRequest(c.Request().WithContext(context.WithValue(c.Request().Context(), openMode{}, true)))
+		return next(c)
+	}
+}
+
+// openMode marks, in its context, a request to a server without keys.
+type openMode struct{}
+
+// loopbackName reports whether a Host header names this machine itself.
+func loopbackName(host string) bool {
+	if name, _, err := net.SplitHostPort(host); err == nil {
+		host = name
+	}
+	host = strings.TrimSuffix(strings.TrimPrefix(host, "["), "]")
+	if strings.EqualFold(host, "localhost") {
+		return true
+	}
+	address, err := netip.ParseAddr(host)
+	return err == nil && address.IsLoopback()
+}

@@ -1,0 +1,241 @@
+// Package api is the HTTP face of the service: routes, authentication,
+// limits, problems and metrics. It is the only importer of Echo; every
+// handler is a plain function of a Request.
+package api
+
+import (
+	"context"
+	"errors"
+	"io"
+	"log/slog"
+	"mime"
+	"net/http"
+	"net/url"
+	"slices"
+	"strconv"
+	"strings"
+	"time"
+
+	"github.com/google/uuid"
+	"github.com/labstack/echo/v4"
+
+	"jointledger/service"
+)
+
+// Limits of a request.
+const (
+	MostBody   = 16 << 20
+	mostHeader = 64 << 10
+	mostURL    = 8 << 10
+)
+
+// Options are what the server is told at start.
+type Options struct {
+	Log     *slog.Logger
+	Metrics *Metrics
+	// OpenAPI is the document that describes all of this.
+	OpenAPI []byte
+}
+
+// Request is what a handler is given.
+type Request struct {
+	ID     string // of the request, in logs and problems
+	Caller service.Caller
+	Param  func(name string) string
+	Query  url.Values
+	Body   []byte
+	Header http.Header
+	Path   string
+}
+
+// Response is what a handler gives back: encoded whole before the status line,
+// written by Stream, or by a Handler of another library.
+type Response struct {
+	Status      int // 200 when 0
+	ContentType string
+	Body        []byte
+	Header      map[string]string
+	Stream      func(ctx context.Context, w io.Writer) error
+	Handler     http.Handler
+}
+
+// route is one operation of the contract.
+type route struct {
+	method, path string
+	least        service.Role // empty: nobody needs to say who they are
+	query        []string     // the parameters it knows
+	media        string       // of the body, empty for none
+	handle       func(context.Context, *Request) (*Response, error)
+}
+
+// server holds what the handlers share.
+type server struct {
+	service *service.Service
+	options Options
+	metrics *Metrics
+}
+
+// New returns the handler of all routes.
+func New(s *service.Service, options Options) http.Handler {
+	v := &server{service: s, options: options, metrics: options.Metrics}
+	e := echo.New()
+	e.HideBanner, e.HidePort = true, true
+	e.IPExtractor = echo.ExtractIPDirect()
+	e.HTTPErrorHandler = func(err error, c echo.Context) { v.fail(c, err) }
+	// Outermost first; also what no route answers goes through here.
+	e.Use(v.observe, v.recover, v.shield)
+	for _, r := range v.routes() {
+		e.Add(r.method, r.path, v.adapt(r))
+	}
+	return e
+}
+
+// Serve makes the HTTP server around a handler, with a deadline for everything
+// that a slow or idle caller could hold open.
+func Serve(handler http.Handler, errorLog *slog.Logger) *http.Server {
+	return &http.Server{
+		Handler:           handler,
+		ReadHeaderTimeout: 5 * time.Second,
+		ReadTimeout:       60 * time.Second,
+		WriteTimeout:      120 * time.Second,
+		IdleTimeout:       90 * time.Second,
+		MaxHeaderBytes:    mostHeader,
+		ErrorLog:          slog.NewLogLogger(errorLog.Handler(), slog.LevelWarn),
+	}
+}
+
+// adapt runs a route's handler behind Echo.
+func (v *server) adapt(r route) echo.HandlerFunc {
+	return func(c echo.Context) error {
+		ctx := c.Request().Context()
+		request := &Request{
+			ID: c.Response().Header().Get(requestIDHeader), Param: c.Param,
+			Header: c.Request().Header, Path: c.Request().URL.Path,
+		}
+		var err error
+		if r.least != "" {
+			if request.Caller, err = v.authenticate(ctx, c.Request()); err != nil {
+				return err
+			}
+			if !request.Caller.Role.May(r.least) {
+				return forbidden(request.Caller, r.least)
+			}
+		}
+		if request.Query, err = queryOf(c.Request().URL, r.query); err != nil {
+			return err
+		}
+		if r.media != "" {
+			if request.Body, err = v.body(c, r.media); err != nil {
+				return err
+			}
+		}
+		response, err := r.handle(ctx, request)
+		if err != nil {
+			return err
+		}
+		return v.write(c, response)
+	}
+}
+
+// queryOf reads the query and refuses parameters that the route does not know.
+func queryOf(u *url.URL, known []string) (url.Values, error) {
+	values, err := url.ParseQuery(u.RawQuery)
+	if err != nil {
+		return nil, &service.Problem{Code: service.Malformed, Detail: "The query cannot be read: " + err.Error() + "."}
+	}
+	var found []service.FieldError
+	for name, given := range values {
+		switch {
+		case !slices.Contains(known, name):
+			detail := "there is no query parameter of this name; there are none here"
+			if len(known) > 0 {
+				detail = "there is no query parameter of this name; there are " + strings.Join(known, ", ")
+			}
+			found = append(found, service.FieldError{Pointer: "/" + name, Detail: detail})
+		case len(given) > 1:
+			found = append(found, service.FieldError{Pointer: "/" + name, Detail: "is given twice"})
+		}
+	}
+	if found != nil {
+		slices.SortFunc(found, func(a, b service.FieldError) int { return strings.Compare(a.Pointer, b.Pointer) })
+		return nil, &service.Problem{Code: service.Malformed, Detail: "The query is not one that is known here.", Errors: found}
+	}
+	return values, nil
+}
+
+// body reads a body of one media type, up to the limit.
+func (v *server) body(c echo.Context, media string) ([]byte, error) {
+	request := c.Request()
+	given, _, err := mime.ParseMediaType(request.Header.Get(echo.HeaderContentType))
+	if err != nil || given != media {
+		return nil, &service.Problem{Code: service.UnsupportedMediaType, Detail: "The body must come as Content-Type: " + media + "."}
+	}
+	if request.ContentLength > MostBody {
+		return nil, tooLarge()
+	}
+	data, err := io.ReadAll(http.MaxBytesReader(c.Response(), request.Body, MostBody))
+	var large *http.MaxBytesError
+	switch {
+	case errors.As(err, &large):
+		return nil, tooLarge()
+	case err != nil:
+		return nil, &service.Problem{Code: service.Malformed, Detail: "The body could not be read to its end."}
+	}
+	v.metrics.bodies.Observe(float64(len(data)))
+	return data, nil
+}
+
+func tooLarge() *service.Problem {
+	return &service.Problem{Code: service.TooLarge, Detail: "The body is larger than 16 MiB."}
+}
+
+// write sends a response.
+func (v *server) write(c echo.Context, r *Response) error {
+	if r.Handler != nil {
+		r.Handler.ServeHTTP(c.Response(), c.Request())
+		return nil
+	}
+	header := c.Response().Header()
+	for name, value := range r.Header {
+		header.Set(name, value)
+	}
+	if r.Status == 0 {
+		r.Status = http.StatusOK
+	}
+	if r.Status == http.StatusNotModified {
+		return c.NoContent(r.Status)
+	}
+	if r.Stream == nil {
+		header.Set(echo.HeaderContentLength, strconv.Itoa(len(r.Body)))
+		return c.Blob(r.Status, r.ContentType, r.Body)
+	}
+	header.Set(echo.HeaderContentType, r.ContentType)
+	c.Response().WriteHeader(r.Status)
+	return r.Stream(c.Request().Context(), &progress{c.Response(), http.NewResponseController(c.Response())})
+}
+
+// progress moves the deadline of a stream on with every write that succeeds.
+type progress struct {
+	w       io.Writer
+	control *http.ResponseController
+}
+
+const streamIdle = 30 * time.Second
+
+func (p *progress) Write(data []byte) (int, error) {
+	if err := p.control.SetWriteDeadline(time.Now().Add(streamIdle)); err != nil {
+		return 0, err
+	}
+	return p.w.Write(data)
+}
+
+const requestIDHeader = "X-Request-Id"
+
+// newRequestID makes our own id; a caller's is not taken over.
+func newRequestID() string {
+	id, err := uuid.NewV7()
+	if err != nil {
+		return uuid.NewString()
+	}
+	return id.String()
+}
