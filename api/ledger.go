@@ -69,6 +69,14 @@ func (v *server) replay(ctx context.Context, r *Request) (*Response, error) {
 	return encoded(v.service.Replay(ctx, r.Param("id")))
 }
 
+func (v *server) replays(ctx context.Context, r *Request) (*Response, error) {
+	stream, err := v.service.Replays(ctx, r.Body)
+	if err != nil {
+		return nil, err
+	}
+	return &Response{ContentType: ndjsonMedia, Stream: stream}, nil
+}
+
 func (v *server) releaseCheck(ctx context.Context, r *Request) (*Response, error) {
 	dryRun := false
 	switch r.Query.Get("dry_run") {

@@ -88,15 +88,16 @@ func problemOf(err error) *service.Problem {
 
 // fail answers an error, once.
 func (v *server) fail(c echo.Context, err error) {
-	if c.Response().Committed {
-		return
-	}
 	p := problemOf(err)
 	kind := kindOf(p.Code)
 	header := c.Response().Header()
 	id := header.Get(requestIDHeader)
-	if kind.status >= 500 {
+	// A stream that has begun can only be cut; the log says why.
+	if kind.status >= 500 || c.Response().Committed {
 		v.options.Log.LogAttrs(c.Request().Context(), slog.LevelError, "request failed", slog.String("request", id), slog.String("error", err.Error()))
+	}
+	if c.Response().Committed {
+		return
 	}
 	switch kind.status {
 	case http.StatusServiceUnavailable:

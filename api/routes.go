@@ -31,6 +31,8 @@ func (v *server) routes() []route {
 		{http.MethodPost, "/v1/records/:id/withdrawal", service.Analyst, nil, jsonMedia, v.withdraw},
 		{http.MethodPost, "/v1/records/:id/replay", service.Reader, nil, "", v.replay},
 
+		{http.MethodPost, "/v1/replays", service.Reader, nil, jsonMedia, v.replays},
+
 		{http.MethodPost, "/v1/release-checks", service.Reader, []string{"dry_run"}, jsonMedia, v.releaseCheck},
 
 		{http.MethodGet, "/v1/export", service.Reader, []string{"from"}, "", v.export},

@@ -9,6 +9,7 @@ import (
 	"runtime"
 	"slices"
 	"strconv"
+	"strings"
 	"time"
 
 	"github.com/google/uuid"
@@ -329,55 +330,61 @@ type RecordQuery struct {
 	Since, Until, Latest, Cursor, Limit         string
 }
 
-// Records lists records.
-func (s *Service) Records(ctx context.Context, q RecordQuery) (*RecordList, error) {
-	var f faults
-	filter := Filter{
+// filter turns the words of the wire into a filter, the index to start under
+// and the size of a page.
+func (q RecordQuery) filter(f *faults, at string) (filter Filter, before int64, limit int) {
+	filter = Filter{
 		Part: q.Part, Revision: q.Revision, Joint: q.Joint, Kind: q.Kind, Verdict: q.Verdict, State: State(q.State),
-		Author: q.Author, Method: q.Method, Material: q.Material, CurveSet: q.CurveSet,
+		Author: q.Author, Method: q.Method, Material: q.Material, CurveSet: q.CurveSet, Latest: q.Latest == "true",
 	}
 	oneOf := func(name, given string, words ...string) {
 		if given != "" && !slices.Contains(words, given) {
-			f.add(pointer(name), "must be one of %v, not %.80q", words, given)
+			f.add(at+pointer(name), "must be one of %s, not %.80q", strings.Join(words, ", "), given)
 		}
 	}
 	oneOf("kind", q.Kind, Kind("").Words()...)
 	oneOf("verdict", q.Verdict, "adequate", "inadequate", "undetermined")
 	oneOf("state", q.State, string(Recorded), string(Checked), string(Approved), string(Withdrawn))
 	oneOf("latest", q.Latest, "true", "false")
-	filter.Latest = q.Latest == "true"
 	for _, t := range []struct {
 		name, given string
-		at          *string
+		bound       *string
 	}{{"since", q.Since, &filter.Since}, {"until", q.Until, &filter.Until}} {
 		if t.given == "" {
 			continue
 		}
 		when, err := time.Parse(time.RFC3339, t.given)
 		if err != nil {
-			f.add(pointer(t.name), "must be a time in the form of RFC 3339, such as 2026-01-31T00:00:00Z, not %.80q", t.given)
+			f.add(at+pointer(t.name), "must be a time in the form of RFC 3339, such as 2026-01-31T00:00:00Z, not %.80q", t.given)
 			continue
 		}
 		// An entry's time has milliseconds: a bound between two of them
 		// means the later.
-		*t.at = stamp(when.Add(time.Millisecond - 1).Truncate(time.Millisecond))
+		*t.bound = stamp(when.Add(time.Millisecond - 1).Truncate(time.Millisecond))
 	}
-	limit := 50
+	limit = 50
 	if q.Limit != "" {
 		n, err := strconv.Atoi(q.Limit)
 		if err != nil || n < 1 || n > 500 {
-			f.add("/limit", "must be a whole number from 1 to 500, not %.80q", q.Limit)
+			f.add(at+"/limit", "must be a whole number from 1 to 500, not %.80q", q.Limit)
 		}
 		limit = n
 	}
-	before := int64(1) << 62
+	before = int64(1) << 62
 	if q.Cursor != "" {
 		index, err := readCursor(q.Cursor)
 		if err != nil {
-			f.add("/cursor", "is not a cursor that this server gave")
+			f.add(at+"/cursor", "is not a cursor that this server gave")
 		}
 		before = index
 	}
+	return filter, before, limit
+}
+
+// Records lists records.
+func (s *Service) Records(ctx context.Context, q RecordQuery) (*RecordList, error) {
+	var f faults
+	filter, before, limit := q.filter(&f, "")
 	if found := f.problem(); found != nil {
 		return nil, found
 	}

@@ -43,10 +43,12 @@ func (s *Service) Replay(ctx context.Context, id string) (*Replay, error) {
 	if err != nil {
 		return nil, err
 	}
-	return s.replay(ctx, entry.Bytes)
+	return s.replay(ctx, entry.Bytes, nil)
 }
 
-func (s *Service) replay(ctx context.Context, canonical []byte) (*Replay, error) {
+// replay computes an entry again; the current result with a material in the
+// place of another, where that is asked.
+func (s *Service) replay(ctx context.Context, canonical []byte, substitute *substitution) (*Replay, error) {
 	look := s.registry(ctx)
 	body, err := recordBodyOf(canonical)
 	if err != nil {
@@ -59,6 +61,9 @@ func (s *Service) replay(ctx context.Context, canonical []byte) (*Replay, error)
 	r := &Replay{Recorded: ReplayRecorded{difference.reproduced(), difference.largest()}}
 	input, err := withLatestMethods(body.Input)
 	if err != nil {
+		return nil, err
+	}
+	if input, err = substituted(input, substitute); err != nil {
 		return nil, err
 	}
 	now, err := calculate(body.Kind, input, View{}, look)
