@@ -117,13 +117,14 @@ func (p *Problem) Under(member string) *Problem {
 	return &moved
 }
 
+var escapeToken = strings.NewReplacer("~", "~0", "/", "~1")
+
 // pointer joins tokens into a JSON pointer.
 func pointer(tokens ...any) string {
 	var b strings.Builder
 	for _, t := range tokens {
 		b.WriteByte('/')
-		text := fmt.Sprint(t)
-		b.WriteString(strings.NewReplacer("~", "~0", "/", "~1").Replace(text))
+		b.WriteString(escapeToken.Replace(fmt.Sprint(t)))
 	}
 	return b.String()
 }
