@@ -18,6 +18,7 @@ import (
 
 	"github.com/google/uuid"
 	"github.com/labstack/echo/v4"
+	"github.com/labstack/echo/v4/middleware"
 
 	"jointledger/service"
 )
@@ -33,6 +34,10 @@ const (
 type Options struct {
 	Log     *slog.Logger
 	Metrics *Metrics
+	// RateLimit is how many requests a second a caller may make, 0 for any.
+	RateLimit float64
+	// CORSOrigins are the web origins whose pages may call; none by default.
+	CORSOrigins []string
 	// OpenAPI is the document that describes all of this.
 	OpenAPI []byte
 }
@@ -73,17 +78,27 @@ type server struct {
 	service *service.Service
 	options Options
 	metrics *Metrics
+	limiter *limiter
 }
 
 // New returns the handler of all routes.
 func New(s *service.Service, options Options) http.Handler {
-	v := &server{service: s, options: options, metrics: options.Metrics}
+	v := &server{service: s, options: options, metrics: options.Metrics, limiter: newLimiter(options.RateLimit)}
 	e := echo.New()
 	e.HideBanner, e.HidePort = true, true
 	e.IPExtractor = echo.ExtractIPDirect()
 	e.HTTPErrorHandler = func(err error, c echo.Context) { v.fail(c, err) }
 	// Outermost first; also what no route answers goes through here.
 	e.Use(v.observe, v.recover, v.shield)
+	if len(options.CORSOrigins) > 0 {
+		e.Use(middleware.CORSWithConfig(middleware.CORSConfig{
+			AllowOrigins:  options.CORSOrigins,
+			AllowMethods:  []string{http.MethodGet, http.MethodPost},
+			AllowHeaders:  []string{echo.HeaderAuthorization, echo.HeaderContentType, "Idempotency-Key", "If-None-Match"},
+			ExposeHeaders: []string{"ETag", "Link", echo.HeaderLocation, "Idempotency-Replayed", requestIDHeader, "RateLimit", "RateLimit-Policy", echo.HeaderRetryAfter},
+			MaxAge:        600,
+		}))
+	}
 	for _, r := range v.routes() {
 		e.Add(r.method, r.path, v.adapt(r))
 	}
@@ -119,6 +134,9 @@ func (v *server) adapt(r route) echo.HandlerFunc {
 			}
 			if !request.Caller.Role.May(r.least) {
 				return forbidden(request.Caller, r.least)
+			}
+			if err := v.limiter.take(request.Caller, c.Response().Header()); err != nil {
+				return err
 			}
 		}
 		if request.Query, err = queryOf(c.Request().URL, r.query); err != nil {
