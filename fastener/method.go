@@ -10,7 +10,7 @@ import (
 type Method struct {
 	ID       string
 	Revision int
-	// Kind is "pattern", "strength" or "interaction".
+	// Kind is "pattern", "splice", "strength" or "interaction".
 	Kind                 string
 	Title, Source, Range string
 	Mark                 strength.Mark
@@ -50,7 +50,7 @@ const (
 // Methods returns the methods of this package, compliance formulas aside, in
 // the order of answers.
 func Methods() []Method {
-	return []Method{
+	return append([]Method{
 		{
 			ID: "elastic-centroid", Revision: 1, Kind: "pattern",
 			Title:  "Elastic sharing about the stiffness centroid, all six load components",
@@ -102,5 +102,5 @@ func Methods() []Method {
 			Range: "shear and tension together", Mark: strength.FromMemory(95),
 			Equations: []Equation{{"1", "R_s² + R_t² <= 1", sourceInteract22, strength.FromMemory(95)}},
 		},
-	}
+	}, spliceMethods()...)
 }

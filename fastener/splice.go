@@ -18,6 +18,11 @@ type Member struct {
 	// Bays lie between the member's rows, one fewer than they are.
 	Bays      []Bay
 	Expansion float64 // per degree
+	// EdgeDistance is the least from the centre of a hole to the member's edge
+	// that the fastener is pressed towards, mm; bearing needs it. 0: not given.
+	EdgeDistance float64
+	// CountersinkDepth in mm of the member's holes.
+	CountersinkDepth float64
 }
 
 // Bay is the part of a member between two rows.
@@ -38,6 +43,10 @@ type Row struct {
 	// fastener stands in the middle of its holes before it is loaded, so the
 	// members at an interface slip by Clearance, either way, before it bears.
 	Clearance float64
+	Type      *Type // nil: sharing only
+	// ShearPlanes of one fastener share the load of an interface: 1 or 2; 0 is
+	// 2 in a symmetric joint, else 1.
+	ShearPlanes int
 }
 
 // Splice is a stack of members joined by rows of fasteners. The fasteners of a
@@ -114,6 +123,11 @@ type MemberLoad struct {
 	Row             int // from 1
 	Member          int // index
 	Bearing, Bypass float64
+	// BearingStress is Bearing over the fasteners' D t, and BypassStress is
+	// Bypass over the gross w t, MPa with the signs of the loads; HasStress
+	// tells that the row's thickness and a bay beside it were given.
+	BearingStress, BypassStress float64
+	HasStress                   bool
 }
 
 // PreparedSplice is a splice whose equations are factored, ready for any
@@ -127,7 +141,13 @@ type PreparedSplice struct {
 	main     solver
 	solved   int // the case whose solution main holds, -1 for none
 	compared []comparedSolver
-	findings []strength.Finding
+	plastic  *plasticSharing // nil where there is none
+
+	complianceMark strength.Mark
+	unsettled      strength.Message
+	rowChecks      []rowCheck
+	checks         []strength.Check
+	findings       []strength.Finding
 }
 
 // comparedSolver is the splice with another compliance.
@@ -166,6 +186,9 @@ func PrepareSplice(s Splice, f strength.Factors, cases []SpliceCase) (*PreparedS
 	if faults = p.prepareSolvers(); len(faults) > 0 {
 		return nil, faults
 	}
+	p.plastic = newPlastic(p.stack, &p.splice)
+	p.complianceMark = p.markOfCompliance()
+	p.addChecks()
 	p.findings = p.allFindings()
 	return p, nil
 }
@@ -202,9 +225,3 @@ func (p *PreparedSplice) prepareSolvers() (faults faultList) {
 	}
 	return faults
 }
-
-// Checks returns the strength checks in the order of answers.
-func (p *PreparedSplice) Checks() []strength.Check { return nil }
-
-// Findings returns what is to be said about the joint and its load cases.
-func (p *PreparedSplice) Findings() []strength.Finding { return p.findings }

@@ -92,8 +92,8 @@ func (s *Splice) formulaFaults(f *ComplianceFormula) (faults faultList) {
 }
 
 // ComplianceWorkings returns the steps to the compliance of one fastener at
-// each interface of a row, counted from 1, without those that several rows
-// share. They are part of the workings of every check of that row.
+// each interface of a row, counted from 1, as they are part of the workings of
+// every check.
 func (p *PreparedSplice) ComplianceWorkings(row int) []strength.Working {
 	k, r := p.stack, row-1
 	if r < 0 || r >= len(p.splice.Rows) || !p.main.why.Empty() {
@@ -101,18 +101,40 @@ func (p *PreparedSplice) ComplianceWorkings(row int) []strength.Working {
 	}
 	var steps []strength.Working
 	for x := k.rows[r]; x < k.rows[r+1]-1; x++ {
-		var sheet complianceSheet
-		if f, ok := FindCompliance(p.splice.Compliance); ok {
-			sheet.method = f.Name()
-			f.evaluate(k.interfaceAt(&p.splice, x), &sheet)
-		} else {
-			sheet.add("C", p.splice.Rows[r].Compliance, strength.Compliance, "",
-				"given: compliance of one fastener through one interface", strength.Given)
-		}
-		for _, step := range sheet.steps {
-			step.Row = row
-			steps = append(steps, step)
-		}
+		steps = append(steps, p.complianceSteps(x)...)
 	}
 	return steps
+}
+
+// complianceSteps are the steps to the compliance of the interface below node
+// x; their member names both members.
+func (p *PreparedSplice) complianceSteps(x int) []strength.Working {
+	k, s := p.stack, &p.splice
+	node := k.nodes[x]
+	var sheet complianceSheet
+	if f, ok := FindCompliance(s.Compliance); ok {
+		sheet.method = f.Name()
+		f.evaluate(k.interfaceAt(s, x), &sheet)
+	} else {
+		sheet.add("C", s.Rows[node.row].Compliance, strength.Compliance, "", "given: rows.compliance", strength.Given)
+	}
+	for i := range sheet.steps {
+		sheet.steps[i].Row = node.row + 1
+		sheet.steps[i].Member = s.Members[node.member].ID + "/" + s.Members[k.nodes[x+1].member].ID
+	}
+	return sheet.steps
+}
+
+// markOfCompliance is the weakest mark of the compliance's steps.
+func (p *PreparedSplice) markOfCompliance() strength.Mark {
+	mark := strength.Given
+	for x := range p.stack.nodes {
+		if p.main.why.Empty() && p.stack.inner(x) {
+			for _, step := range p.complianceSteps(x) {
+				mark = strength.Weakest(mark, step.Mark)
+			}
+			break
+		}
+	}
+	return mark
 }

@@ -114,6 +114,24 @@ func (v *solver) settle(c *preparedCase) {
 			k.result.Open++
 		}
 	}
+	v.carryOn(c)
+}
+
+// carryOn finds the members' loads from left to right by equilibrium with the
+// loads of the interfaces, once those that are none have been set to 0.
+func (v *solver) carryOn(c *preparedCase) {
+	intoNext := 0.0
+	for x, node := range v.stack.nodes {
+		load, _ := v.sides(x, c)
+		load += intoNext
+		if intoNext = 0; v.stack.inner(x) {
+			intoNext = v.transfer[x-node.row]
+			load -= intoNext
+		}
+		if !node.last {
+			v.load[node.rightSpan] = load
+		}
+	}
 }
 
 // takeUp finds the clearance taken up under the present loads, and whether any
@@ -166,19 +184,28 @@ func (v *solver) newton(c *preparedCase) bool {
 		if !v.factorInto(&k.factor, k.tangent) {
 			return false
 		}
-		for i, gap := range v.misfit {
-			k.step[i] = -gap
-		}
-		backSolve(k.factor, k.step)
-		copy(k.from, v.unknown)
-		slope := dot(v.misfit, k.step)
-		changed := v.walk(c, 1)
-		if !changed {
+		slope := v.aim()
+		if changed := v.walk(c, 1); !changed {
+			// Once more with the same factor, to refine.
+			v.aim()
+			v.walk(c, 1)
 			return true
 		}
 		v.search(c, slope)
 	}
 	return false
+}
+
+// aim finds the step to the minimum of the present piece, and the slope of the
+// work along it.
+func (v *solver) aim() (slope float64) {
+	k := v.contact
+	for i, gap := range v.misfit {
+		k.step[i] = -gap
+	}
+	backSolve(k.factor, k.step)
+	copy(k.from, v.unknown)
+	return dot(v.misfit, k.step)
 }
 
 // walk goes a part of the step from where it began.

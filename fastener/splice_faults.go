@@ -38,6 +38,12 @@ func (s Splice) withDefaults() Splice {
 		if r.Installation == "" {
 			r.Installation = Bolted
 		}
+		if r.ShearPlanes == 0 {
+			r.ShearPlanes = 1
+			if s.Symmetric {
+				r.ShearPlanes = 2
+			}
+		}
 	}
 	return s
 }
@@ -98,6 +104,12 @@ func (s *Splice) sizeFaults() faultList {
 		if row.Clearance < 0 {
 			faults.add(at("clearance"), "found %v, allowed is at least 0", strength.Length.Of(row.Clearance))
 		}
+		if row.ShearPlanes < 1 || row.ShearPlanes > 2 {
+			faults.add(at("shear_planes"), "found %d, allowed are 1 and 2", row.ShearPlanes)
+		}
+		if row.Type != nil && row.Type.Thread != nil {
+			faults = append(faults, row.Type.Thread.faults(at("type")+"/thread", row.Diameter)...)
+		}
 	}
 	return faults
 }
@@ -121,6 +133,12 @@ func (s *Splice) memberFaults(i int, faults *faultList) {
 			faults.add(at("row_thickness", j), "found %v, allowed is more than 0", strength.Length.Of(t))
 		}
 	}
+	if m.EdgeDistance < 0 {
+		faults.add(at("edge_distance"), "found %v, allowed is more than 0", strength.Length.Of(m.EdgeDistance))
+	}
+	if m.CountersinkDepth < 0 {
+		faults.add(at("countersink_depth"), "found %v, allowed is at least 0", strength.Length.Of(m.CountersinkDepth))
+	}
 	if m.FirstRow < 1 || m.FirstRow > n {
 		faults.add(at("first_row"), "found row %d, allowed are rows 1 to %d", m.FirstRow, n)
 		return
@@ -138,7 +156,34 @@ func (s *Splice) memberFaults(i int, faults *faultList) {
 		faults.add(at("row_thickness"), "found %d thicknesses, allowed is one for each of the %d rows of the member (rows %d to %d)",
 			len(m.RowThickness), rows, m.FirstRow, m.LastRow)
 	}
+	if len(m.Bays) == rows-1 {
+		s.holeFaults(i, faults)
+	}
 }
+
+// holeFaults checks that the holes of a row leave something of each bay beside
+// it, and countersinks something of the thickness.
+func (s *Splice) holeFaults(i int, faults *faultList) {
+	m := &s.Members[i]
+	for j := range m.Bays {
+		r := m.FirstRow - 1 + j
+		holes := max(s.Rows[r].holes(), s.Rows[r+1].holes())
+		if bay := &m.Bays[j]; bay.Width > 0 && strength.AtLeast(holes, bay.Width) {
+			faults.add(splicePointer("members", i, "bays", j, "width"), "the holes of the row beside it, %v together, leave nothing of %v",
+				strength.Length.Of(holes), strength.Length.Of(bay.Width))
+		}
+	}
+	for j, t := range m.RowThickness {
+		if t > 0 && strength.AtLeast(m.CountersinkDepth, t) {
+			faults.add(splicePointer("members", i, "countersink_depth"), "%v leaves nothing of the thickness %v at row %d",
+				strength.Length.Of(m.CountersinkDepth), strength.Length.Of(t), m.FirstRow+j)
+			break
+		}
+	}
+}
+
+// holes is the sum of the diameters of a row's holes.
+func (r *Row) holes() float64 { return float64(r.Count) * (r.Diameter + r.Clearance) }
 
 // pathFaults checks that the splice is one joint.
 func (s *Splice) pathFaults(k *stack) faultList {

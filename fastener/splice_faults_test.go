@@ -66,6 +66,15 @@ func TestSpliceFaults(t *testing.T) {
 		{"formula without thickness", "/members/1/row_thickness", `"huth" needs the thickness`, func(s *Splice, _ *[]SpliceCase) { s.Compliance = "huth" }},
 		{"formula without modulus", "/rows/3/e", `"huth" needs the fastener's modulus`, func(s *Splice, _ *[]SpliceCase) { s.CompareCompliance = []string{"huth"} }},
 		{"formula without ratio", "/rows/3/nu", `"rutman" needs the fastener's Poisson's ratio`, func(s *Splice, _ *[]SpliceCase) { s.Compliance = "rutman" }},
+		{"holes fill the width", "/members/0/bays/0/width", "5 together, leave nothing of 5", func(s *Splice, _ *[]SpliceCase) { s.Members[0].Bays[0].Width = 5 }},
+		{"countersink fills the thickness", "/members/0/countersink_depth", "2 leaves nothing of the thickness 2 at row 1", func(s *Splice, _ *[]SpliceCase) {
+			s.Members[0].RowThickness, s.Members[0].CountersinkDepth = []float64{2, 3, 3, 3, 3}, 2
+		}},
+		{"edge distance", "/members/0/edge_distance", "found -1", func(s *Splice, _ *[]SpliceCase) { s.Members[0].EdgeDistance = -1 }},
+		{"shear planes", "/rows/2/shear_planes", "found 3, allowed are 1 and 2", func(s *Splice, _ *[]SpliceCase) { s.Rows[2].ShearPlanes = 3 }},
+		{"thread", "/rows/2/type/thread/pitch", "found 7", func(s *Splice, _ *[]SpliceCase) {
+			s.Rows[2].Type = &Type{Fsu: 600, Thread: &Thread{Form: "iso", Pitch: 7}}
+		}},
 		{"symmetric of three", "/symmetric", "row 1 joins 3 members", func(s *Splice, _ *[]SpliceCase) {
 			s.Symmetric = true
 			s.Members = append(s.Members, s.Members[0])
@@ -112,7 +121,7 @@ func TestNoDoubleShearForm(t *testing.T) {
 		s := uniformLap(3, 2, 2, 1e-5)
 		s.Symmetric, s.Compliance = true, name
 		p := mustPrepare(t, s, pull(1000))
-		if p.Undetermined().Empty() || len(p.Findings()) != 1 || p.Findings()[0].Code != "no-sharing" {
+		if p.Undetermined().Empty() || p.Findings()[0].Code != "no-sharing" {
 			t.Errorf("%s: %q, findings %v", name, render(p.Undetermined()), p.Findings())
 		}
 		s.Compliance, s.CompareCompliance = ComplianceGiven, []string{name}
@@ -140,7 +149,16 @@ func TestSpliceStaysFinite(t *testing.T) {
 			}
 		}
 		for i := range s.Rows {
-			s.Rows[i] = Row{Diameter: size(), Compliance: size(), E: size(), Nu: 0.3}
+			s.Rows[i] = Row{Diameter: size(), Compliance: size(), E: size(), Nu: 0.3, Clearance: size()}
+			for _, m := range s.Members {
+				for _, bay := range m.Bays {
+					s.Rows[i].Diameter = min(s.Rows[i].Diameter, bay.Width/4)
+					s.Rows[i].Clearance = min(s.Rows[i].Clearance, bay.Width/4)
+				}
+			}
+			if rapid.Bool().Draw(t, "tight") {
+				s.Rows[i].Clearance = 0
+			}
 		}
 		for i := range s.Pitches {
 			s.Pitches[i] = size()

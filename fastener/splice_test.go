@@ -72,7 +72,7 @@ func drawSplice(t *rapid.T, mostMembers, mostRows int) (Splice, []SpliceCase) {
 			Expansion: rapid.Float64Range(0, 3e-5).Draw(t, "expansion"),
 		}
 		for range last - first {
-			m.Bays = append(m.Bays, Bay{logUniform(t, 0.5, 12, "thickness"), logUniform(t, 10, 100, "width")})
+			m.Bays = append(m.Bays, Bay{logUniform(t, 0.5, 12, "thickness"), logUniform(t, 30, 100, "width")})
 		}
 		s.Members = append(s.Members, m)
 	}

@@ -22,9 +22,10 @@ func (p *PreparedSplice) NewTransfers() Transfers {
 // the level given, before factors. It allocates nothing. When the splice is
 // Undetermined it leaves out as it is.
 func (p *PreparedSplice) Transfers(i int, out *Transfers) {
+	p.enter(i)
 	if p.main.why.Empty() {
-		p.enter(i)
 		p.main.transfers(&p.cases[i], out)
+		p.stresses(out)
 	}
 }
 
@@ -49,15 +50,41 @@ func (p *PreparedSplice) ComparedTransfers(k, i int, out *Transfers) {
 	if v := &p.compared[k].solver; v.why.Empty() {
 		v.solve(&p.cases[i])
 		v.transfers(&p.cases[i], out)
+		p.stresses(out)
 	}
 }
 
-// enter solves load case i unless it is the one solved last.
-func (p *PreparedSplice) enter(i int) {
+// stresses turns the members' loads into nominal stresses.
+func (p *PreparedSplice) stresses(out *Transfers) {
+	for x, node := range p.stack.nodes {
+		m, row, load := &p.splice.Members[node.member], &p.splice.Rows[node.row], &out.Members[x]
+		thickness, width := m.rowThickness(node.row), m.rowWidth(node)
+		if load.HasStress = thickness > 0 && width > 0; load.HasStress {
+			thickness *= p.stack.layers(node.member)
+			load.BearingStress = load.Bearing / (float64(row.Count) * row.Diameter * thickness)
+			load.BypassStress = load.Bypass / (width * thickness)
+		}
+	}
+}
+
+// enter solves load case i unless it is the one solved last. It says why the
+// case has no loads, nil where it has.
+func (p *PreparedSplice) enter(i int) *strength.Message {
+	if !p.main.why.Empty() {
+		return &p.main.why
+	}
 	if p.solved != i {
 		p.main.solve(&p.cases[i])
+		if p.plastic != nil {
+			p.plastic.share(p.stack, &p.cases[i])
+		}
 		p.solved = i
 	}
+	if p.main.contact != nil && p.main.contact.result.Ended == ContactStopped {
+		p.unsettled = strength.Say("the contact of clearances did not settle in %d steps", p.main.contact.result.Steps)
+		return &p.unsettled
+	}
+	return nil
 }
 
 // transfers writes the present solution down.
