@@ -1,0 +1,148 @@
+-- The ledger. Tables that are only added to refuse UPDATE, DELETE and TRUNCATE
+-- by triggers that also fire for replicas.
+--
+-- Whoever owns the tables can take the triggers off. A server is therefore best
+-- run as a role that owns nothing; the owner migrates (it starts the program of
+-- a new version once), and grants:
+--
+--   GRANT USAGE ON SCHEMA public TO jointledger_server;
+--   GRANT SELECT ON schema_migrations TO jointledger_server;
+--   GRANT SELECT, INSERT ON identity, entries, terms, tree_hashes, idempotency TO jointledger_server;
+--   GRANT SELECT, INSERT, UPDATE ON keys, standing TO jointledger_server;
+--   GRANT SELECT, UPDATE ON head TO jointledger_server;
+--
+-- All text compares by bytes, whatever the locale of the database.
+
+CREATE TABLE identity (
+    one          int PRIMARY KEY CHECK (one = 1),
+    origin       text COLLATE "C" NOT NULL,
+    verifier_key text COLLATE "C" NOT NULL
+);
+
+-- The one row that is compared and swapped by every append.
+CREATE TABLE head (
+    one        int PRIMARY KEY CHECK (one = 1),
+    size       bigint NOT NULL CHECK (size >= 0),
+    root       bytea NOT NULL CHECK (length(root) = 32),
+    checkpoint text COLLATE "C" NOT NULL
+);
+
+-- SHA-256 of nothing: the root of the empty tree.
+INSERT INTO head (one, size, root, checkpoint)
+VALUES (1, 0, '\xe3b0c44298fc1c149afbf4c8996fb92427ae41e4649b934ca495991b7852b855', '');
+
+CREATE TABLE entries (
+    idx             bigint PRIMARY KEY CHECK (idx >= 0),
+    id              text COLLATE "C" NOT NULL UNIQUE,
+    type            text COLLATE "C" NOT NULL,
+    at              text COLLATE "C" NOT NULL,
+    author          text COLLATE "C" NOT NULL,
+    leaf            bytea NOT NULL CHECK (length(leaf) = 32),
+    part            text COLLATE "C" NOT NULL,
+    revision        text COLLATE "C" NOT NULL,
+    joint           text COLLATE "C" NOT NULL,
+    aspect          text COLLATE "C" NOT NULL,
+    geometry_digest text COLLATE "C" NOT NULL,
+    kind            text COLLATE "C" NOT NULL,
+    verdict         text COLLATE "C" NOT NULL,
+    margin          double precision,
+    target          text COLLATE "C" NOT NULL,
+    role            text COLLATE "C" NOT NULL,
+    bytes           bytea NOT NULL
+);
+
+CREATE INDEX entries_subject    ON entries (part, revision, joint, aspect, kind, idx) WHERE type = 'record';
+CREATE INDEX entries_part       ON entries (part, idx) WHERE type = 'record';
+CREATE INDEX entries_part_joint ON entries (part, joint, idx) WHERE type = 'record';
+CREATE INDEX entries_joint      ON entries (joint, idx) WHERE type = 'record';
+CREATE INDEX entries_revision   ON entries (revision, idx) WHERE type = 'record';
+CREATE INDEX entries_author     ON entries (author, idx) WHERE type = 'record';
+CREATE INDEX entries_verdict    ON entries (verdict, idx) WHERE type = 'record';
+CREATE INDEX entries_kind       ON entries (kind, idx) WHERE type = 'record';
+CREATE INDEX entries_at         ON entries (at) WHERE type = 'record';
+CREATE INDEX entries_target     ON entries (target, idx) WHERE target <> '';
+
+-- What records rest on. A value is bytea: the name of a material may be any
+-- text, also with characters that text refuses.
+CREATE TABLE terms (
+    idx   bigint NOT NULL REFERENCES entries,
+    place int NOT NULL,
+    kind  text COLLATE "C" NOT NULL,
+    value bytea NOT NULL,
+    PRIMARY KEY (idx, place)
+);
+
+CREATE INDEX terms_value ON terms (kind, value, idx);
+
+CREATE TABLE tree_hashes (
+    idx  bigint PRIMARY KEY CHECK (idx >= 0),
+    hash bytea NOT NULL CHECK (length(hash) = 32)
+);
+
+-- A path is bytea: it comes from a request, decoded.
+CREATE TABLE idempotency (
+    caller         text COLLATE "C" NOT NULL,
+    method         text COLLATE "C" NOT NULL,
+    path           bytea NOT NULL,
+    key            text COLLATE "C" NOT NULL,
+    request_digest bytea NOT NULL CHECK (length(request_digest) = 32),
+    idx            bigint NOT NULL REFERENCES entries,
+    state          text COLLATE "C" NOT NULL,
+    PRIMARY KEY (caller, method, path, key)
+);
+
+-- From here on: operational, outside the proof.
+
+CREATE TABLE keys (
+    seq       bigint GENERATED ALWAYS AS IDENTITY PRIMARY KEY,
+    id        text COLLATE "C" NOT NULL UNIQUE,
+    caller    text COLLATE "C" NOT NULL,
+    role      text COLLATE "C" NOT NULL,
+    hash      bytea NOT NULL UNIQUE CHECK (length(hash) = 32),
+    added     text COLLATE "C" NOT NULL,
+    revoked   text COLLATE "C" NOT NULL,
+    last_used text COLLATE "C" NOT NULL
+);
+
+-- An index over what the entries say of each record now, kept so that lists by
+-- state and of the latest are quick. It only finds candidates: the state that is
+-- told, and the latest that a release rests on, are derived from the entries.
+CREATE TABLE standing (
+    idx    bigint PRIMARY KEY REFERENCES entries,
+    state  text COLLATE "C" NOT NULL,
+    latest boolean NOT NULL
+);
+
+CREATE INDEX standing_state  ON standing (state, idx);
+CREATE INDEX standing_latest ON standing (idx) WHERE latest;
+
+CREATE FUNCTION refuse_change() RETURNS trigger LANGUAGE plpgsql AS $$
+BEGIN
+    RAISE EXCEPTION '% is only added to', TG_TABLE_NAME USING ERRCODE = 'restrict_violation';
+END $$;
+
+CREATE FUNCTION refuse_shrinking() RETURNS trigger LANGUAGE plpgsql AS $$
+BEGIN
+    IF NEW.size <= OLD.size THEN
+        RAISE EXCEPTION 'head only grows' USING ERRCODE = 'restrict_violation';
+    END IF;
+    RETURN NEW;
+END $$;
+
+CREATE TRIGGER identity_change    BEFORE UPDATE OR DELETE OR TRUNCATE ON identity    EXECUTE FUNCTION refuse_change();
+CREATE TRIGGER head_delete        BEFORE DELETE OR TRUNCATE           ON head        EXECUTE FUNCTION refuse_change();
+CREATE TRIGGER head_update        BEFORE UPDATE ON head FOR EACH ROW                 EXECUTE FUNCTION refuse_shrinking();
+CREATE TRIGGER entries_change     BEFORE UPDATE OR DELETE OR TRUNCATE ON entries     EXECUTE FUNCTION refuse_change();
+CREATE TRIGGER terms_change       BEFORE UPDATE OR DELETE OR TRUNCATE ON terms       EXECUTE FUNCTION refuse_change();
+CREATE TRIGGER tree_hashes_change BEFORE UPDATE OR DELETE OR TRUNCATE ON tree_hashes EXECUTE FUNCTION refuse_change();
+CREATE TRIGGER idempotency_change BEFORE UPDATE OR DELETE OR TRUNCATE ON idempotency EXECUTE FUNCTION refuse_change();
+CREATE TRIGGER keys_delete        BEFORE DELETE OR TRUNCATE           ON keys        EXECUTE FUNCTION refuse_change();
+
+ALTER TABLE identity    ENABLE ALWAYS TRIGGER identity_change;
+ALTER TABLE head        ENABLE ALWAYS TRIGGER head_delete;
+ALTER TABLE head        ENABLE ALWAYS TRIGGER head_update;
+ALTER TABLE entries     ENABLE ALWAYS TRIGGER entries_change;
+ALTER TABLE terms       ENABLE ALWAYS TRIGGER terms_change;
+ALTER TABLE tree_hashes ENABLE ALWAYS TRIGGER tree_hashes_change;
+ALTER TABLE idempotency ENABLE ALWAYS TRIGGER idempotency_change;
+ALTER TABLE keys        ENABLE ALWAYS TRIGGER keys_delete;

@@ -1,0 +1,162 @@
+package store
+
+import (
+	"context"
+	"database/sql"
+	"iter"
+
+	"jointledger/service"
+	"jointledger/service/ledger"
+)
+
+// sqliteState derives the state of the record r from the entries about it.
+const sqliteState = `CASE
+	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'withdrawal') THEN 'withdrawn'
+	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'sign-off' AND a.role = 'approved') THEN 'approved'
+	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'sign-off' AND a.role = 'checked') THEN 'checked'
+	ELSE 'recorded' END`
+
+// sameSubject finds the records n of the part, revision, joint, aspect and kind
+// of the record r.
+const sameSubject = `n.type = 'record' AND n.part = r.part AND n.revision = r.revision AND n.joint = r.joint AND n.aspect = r.aspect AND n.kind = r.kind`
+
+// Append implements service.Store.
+func (s *SQLite) Append(ctx context.Context, b service.Batch) error {
+	if err := check(b); err != nil {
+		return err
+	}
+	ctx, cancel := context.WithTimeout(ctx, sqliteTimeout)
+	defer cancel()
+	tx, err := s.write.BeginTx(ctx, nil)
+	if err != nil {
+		return sqliteError(err)
+	}
+	defer tx.Rollback()
+	if err := sqliteAppend(ctx, tx, b); err != nil {
+		return sqliteError(err)
+	}
+	return sqliteError(tx.Commit())
+}
+
+func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
+	moved, err := tx.ExecContext(ctx, `UPDATE head SET size = ?, root = ?, checkpoint = ? WHERE size = ? AND root = ?`,
+		b.Head.Size, b.Head.Root[:], b.Head.Checkpoint, b.Base.Size, b.Base.Root[:])
+	if err != nil {
+		return err
+	}
+	if n, err := moved.RowsAffected(); err != nil {
+		return err
+	} else if n == 0 {
+		return service.ErrHeadMoved
+	}
+	if err := sqliteInsert(ctx, tx, `INSERT INTO entries VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)`, func(yield func([]any) bool) {
+		for i := range b.Entries {
+			e := &b.Entries[i]
+			if !yield([]any{
+				e.Index, e.ID, e.Type, e.At, e.Author, e.Leaf[:], e.Part, e.Revision, e.Joint, e.Aspect,
+				e.GeometryDigest, e.Kind, e.Verdict, e.Margin, e.Target, e.Role, e.Bytes,
+			}) {
+				return
+			}
+		}
+	}); err != nil {
+		return err
+	}
+	if err := sqliteInsert(ctx, tx, `INSERT INTO terms VALUES (?, ?, ?, ?)`, func(yield func([]any) bool) {
+		for _, e := range b.Entries {
+			for place, t := range e.Terms {
+				if !yield([]any{e.Index, place, t.Kind, []byte(t.Value)}) {
+					return
+				}
+			}
+		}
+	}); err != nil {
+		return err
+	}
+	first := ledger.StoredHashCount(b.Base.Size)
+	if err := sqliteInsert(ctx, tx, `INSERT INTO tree_hashes VALUES (?, ?)`, func(yield func([]any) bool) {
+		for i := range b.Hashes {
+			if !yield([]any{first + int64(i), b.Hashes[i][:]}) {
+				return
+			}
+		}
+	}); err != nil {
+		return err
+	}
+	if err := sqliteInsert(ctx, tx, `INSERT INTO idempotency VALUES (?, ?, ?, ?, ?, ?, ?)`, func(yield func([]any) bool) {
+		for i := range b.Answers {
+			a := &b.Answers[i]
+			if !yield([]any{a.Caller, a.Method, []byte(a.Path), a.Key, a.RequestDigest[:], a.Index, string(a.State)}) {
+				return
+			}
+		}
+	}); err != nil {
+		return err
+	}
+	for _, k := range b.Keys {
+		if err := sqliteKey(ctx, tx, k); err != nil {
+			return err
+		}
+	}
+	return sqliteStanding(ctx, tx, b)
+}
+
+// sqliteInsert runs one statement for every row.
+func sqliteInsert(ctx context.Context, tx *sql.Tx, query string, rows iter.Seq[[]any]) error {
+	var insert *sql.Stmt
+	for row := range rows {
+		if insert == nil {
+			var err error
+			if insert, err = tx.PrepareContext(ctx, query); err != nil {
+				return err
+			}
+			defer insert.Close()
+		}
+		if _, err := insert.ExecContext(ctx, row...); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func sqliteKey(ctx context.Context, tx *sql.Tx, k service.KeyChange) error {
+	if k.Add != nil {
+		if _, err := tx.ExecContext(ctx, `INSERT INTO keys (id, caller, role, hash, added, revoked, last_used) VALUES (?, ?, ?, ?, ?, ?, ?)`,
+			k.Add.ID, k.Add.Caller, k.Add.Role, k.Add.Hash[:], k.Add.Added, k.Add.Revoked, k.Add.LastUsed); err != nil {
+			return err
+		}
+	}
+	if k.Revoke == "" {
+		return nil
+	}
+	done, err := tx.ExecContext(ctx, `UPDATE keys SET revoked = ? WHERE id = ? AND revoked = ''`, k.At, k.Revoke)
+	if err != nil {
+		return err
+	}
+	n, err := done.RowsAffected()
+	if err == nil && n == 0 {
+		err = errRevoke(k)
+	}
+	return err
+}
+
+// sqliteStanding brings the index over the standing of records up to date.
+func sqliteStanding(ctx context.Context, tx *sql.Tx, b service.Batch) error {
+	if hasRecords(b) {
+		if _, err := tx.ExecContext(ctx, `UPDATE standing SET latest = 0 WHERE latest = 1 AND idx IN
+			(SELECT (SELECT max(n.idx) FROM entries n WHERE `+sameSubject+` AND n.idx < ?1) FROM entries r WHERE r.type = 'record' AND r.idx >= ?1)`, b.Base.Size); err != nil {
+			return err
+		}
+		if _, err := tx.ExecContext(ctx, `INSERT INTO standing SELECT r.idx, 'recorded', NOT EXISTS (SELECT 1 FROM entries n WHERE `+sameSubject+` AND n.idx > r.idx)
+			FROM entries r WHERE r.type = 'record' AND r.idx >= ?`, b.Base.Size); err != nil {
+			return err
+		}
+	}
+	if hasAbout(b) {
+		if _, err := tx.ExecContext(ctx, `UPDATE standing SET state = (SELECT `+sqliteState+` FROM entries r WHERE r.idx = standing.idx) WHERE idx IN
+			(SELECT r.idx FROM entries a CROSS JOIN entries r ON r.id = a.target WHERE a.target <> '' AND a.idx >= ?)`, b.Base.Size); err != nil {
+			return err
+		}
+	}
+	return nil
+}
