@@ -96,8 +96,10 @@ func TestRoundTrip(t *testing.T) {
 			t.Errorf("about: %v\n%s", err, diff)
 		}
 		keys := []service.IdempotencyKey{
-			b.Answers[2].IdempotencyKey, b.Answers[1].IdempotencyKey, {Caller: "m.reed", Method: "POST", Path: "/v1/records", Key: "k 3"},
-			{Caller: "\x00"}, b.Answers[0].IdempotencyKey, b.Answers[0].IdempotencyKey,
+			b.Answers[2].IdempotencyKey, b.Answers[1].IdempotencyKey,
+			{Caller: "m.reed", Method: "POST", Path: "/v1/records", Key: "k 3"},
+			{Caller: "\x00"},
+			b.Answers[0].IdempotencyKey, b.Answers[0].IdempotencyKey,
 		}
 		answers, err := s.Answered(ctx, keys)
 		if diff := cmp.Diff([]*service.Answer{&b.Answers[2], &b.Answers[1], nil, nil, &b.Answers[0], &b.Answers[0]}, answers); err != nil || diff != "" {
@@ -124,6 +126,32 @@ func TestRoundTrip(t *testing.T) {
 			}
 		}
 		verify(t, s)
+	})
+}
+
+func TestCurveSets(t *testing.T) {
+	storetest.Each(t, func(t *testing.T, s service.Store) {
+		ctx := t.Context()
+		set := func(n int, id, version string) service.Entry {
+			return seal(t, 1, n, "curve-set", service.Columns{Terms: []service.Term{{Kind: "curve-set", Value: id + "@" + version}, {Kind: "curve-set-id", Value: id}}})
+		}
+		uses := record(t, 1, 5, "SM-110", "A", "J1")
+		uses.Terms = []service.Term{{Kind: "curve-set", Value: "reed@1"}, {Kind: "curve-set-id", Value: "reed"}}
+		e := put(t, s, set(0, "reed", "1"), set(1, "sedge", "1"), set(2, "reed", "2"), uses).Entries
+		for name, want := range map[string]int{"reed": 2, "reed@1": 0, "reed@2": 2, "sedge": 1, "sedge@1": 1} {
+			if got, err := s.CurveSet(ctx, name); err != nil || !cmp.Equal(got, e[want]) {
+				t.Errorf("%s: %+v, %v", name, got, err)
+			}
+		}
+		for _, name := range []string{"", "ree", "reed@3", "\x00", "\xff"} {
+			if got, err := s.CurveSet(ctx, name); !errors.Is(err, service.ErrNotFound) {
+				t.Errorf("%q: %+v, %v", name, got, err)
+			}
+		}
+		all, err := s.CurveSets(ctx)
+		if diff := cmp.Diff(e[:3], all); err != nil || diff != "" {
+			t.Errorf("all: %v\n%s", err, diff)
+		}
 	})
 }
 

@@ -49,9 +49,7 @@ func (s *Postgres) addTerms(ctx context.Context, entries []service.Entry) error 
 	at := map[int64]*service.Entry{}
 	var indexes []int64
 	for i := range entries {
-		if e := &entries[i]; e.Type == "record" {
-			at[e.Index], indexes = e, append(indexes, e.Index)
-		}
+		at[entries[i].Index], indexes = &entries[i], append(indexes, entries[i].Index)
 	}
 	if len(indexes) == 0 {
 		return nil
@@ -126,6 +124,17 @@ func (s *Postgres) About(ctx context.Context, records []string) (map[string][]se
 		about[e.Target] = append(about[e.Target], e)
 	}
 	return about, nil
+}
+
+// CurveSet implements service.Store.
+func (s *Postgres) CurveSet(ctx context.Context, name string) (service.Entry, error) {
+	return one(s.entries(ctx, curveSets+` AND EXISTS (SELECT 1 FROM terms t WHERE t.idx = r.idx AND t.kind IN ('curve-set', 'curve-set-id') AND t.value = $1)
+		ORDER BY r.idx DESC LIMIT 1`, []byte(name)))
+}
+
+// CurveSets implements service.Store.
+func (s *Postgres) CurveSets(ctx context.Context) ([]service.Entry, error) {
+	return s.entries(ctx, curveSets+` ORDER BY r.idx`)
 }
 
 // Latest implements service.Store.

@@ -61,9 +61,6 @@ func (s *SQLite) addTerms(ctx context.Context, entries []service.Entry) error {
 	defer query.Close()
 	for i := range entries {
 		e := &entries[i]
-		if e.Type != "record" {
-			continue
-		}
 		rows, err := query.QueryContext(ctx, e.Index)
 		if err != nil {
 			return sqliteError(err)
@@ -143,6 +140,20 @@ func (s *SQLite) About(ctx context.Context, records []string) (map[string][]serv
 		}
 	}
 	return about, nil
+}
+
+// curveSets finds entries of curve sets: few, however long the log is.
+const curveSets = `entries r WHERE r.type = 'curve-set'`
+
+// CurveSet implements service.Store.
+func (s *SQLite) CurveSet(ctx context.Context, name string) (service.Entry, error) {
+	return one(s.entries(ctx, math.MaxInt, curveSets+` AND EXISTS (SELECT 1 FROM terms WHERE idx = r.idx AND kind IN ('curve-set', 'curve-set-id') AND value = ?)
+		ORDER BY r.idx DESC LIMIT 1`, []byte(name)))
+}
+
+// CurveSets implements service.Store.
+func (s *SQLite) CurveSets(ctx context.Context) ([]service.Entry, error) {
+	return s.entries(ctx, math.MaxInt, curveSets+` ORDER BY r.idx`)
 }
 
 // Latest implements service.Store.

@@ -164,6 +164,16 @@ func (f *Faulty) Records(ctx context.Context, filter service.Filter, before int6
 	return do(f, "Records", func() ([]service.Summary, error) { return f.inner.Records(ctx, filter, before, limit) })
 }
 
+// CurveSet implements service.Store.
+func (f *Faulty) CurveSet(ctx context.Context, name string) (service.Entry, error) {
+	return do(f, "CurveSet", func() (service.Entry, error) { return f.inner.CurveSet(ctx, name) })
+}
+
+// CurveSets implements service.Store.
+func (f *Faulty) CurveSets(ctx context.Context) ([]service.Entry, error) {
+	return do(f, "CurveSets", func() ([]service.Entry, error) { return f.inner.CurveSets(ctx) })
+}
+
 // Latest implements service.Store.
 func (f *Faulty) Latest(ctx context.Context, part, revision string) ([]service.Entry, error) {
 	return do(f, "Latest", func() ([]service.Entry, error) { return f.inner.Latest(ctx, part, revision) })

@@ -60,9 +60,10 @@ CREATE INDEX entries_author     ON entries (author, idx) WHERE type = 'record';
 CREATE INDEX entries_verdict    ON entries (verdict, idx) WHERE type = 'record';
 CREATE INDEX entries_kind       ON entries (kind, idx) WHERE type = 'record';
 CREATE INDEX entries_at         ON entries (at) WHERE type = 'record';
+CREATE INDEX entries_curve_sets ON entries (idx) WHERE type = 'curve-set';
 CREATE INDEX entries_target     ON entries (target, idx) WHERE target <> '';
 
--- What records rest on. A value is bytea: the name of a material may be any
+-- What records rest on, and the names of curve sets. A value is bytea: the name of a material may be any
 -- text, also with characters that text refuses.
 CREATE TABLE terms (
     idx   bigint NOT NULL REFERENCES entries,
