@@ -79,6 +79,7 @@ type wireMaterial struct {
 	Source    string  `json:"source"`
 	Ftu       float64 `json:"ftu"`
 	Fty       float64 `json:"fty"`
+	E         float64 `json:"e"`
 	Bearing   []struct {
 		EOverD float64 `json:"e_over_d"`
 		Fbru   float64 `json:"fbru"`
@@ -106,23 +107,14 @@ func (w wirePattern) pattern(t *testing.T) (Pattern, strength.Factors, []Pattern
 	if !ok {
 		t.Fatalf("units %q", w.Units)
 	}
-	force, length, stress, moment := s.force, s.length, s.of(strength.Stress), s.of(strength.Moment)
+	force, length, moment := s.force, s.length, s.of(strength.Moment)
 	p := Pattern{Stiffness: w.Stiffness, Interaction: w.Interaction, InPlane: w.InPlane, OutOfPlane: w.OutOfPlane}
 	for _, f := range w.Fasteners {
 		fastener := Fastener{
 			ID: f.ID, X: f.X * length, Y: f.Y * length, Diameter: f.Diameter * length,
 			ShearPlanes: f.ShearPlanes, ShearStiffness: f.ShearStiffness, TensionStiffness: f.TensionStiffness,
 		}
-		if f.Type != nil {
-			fastener.Type = &Type{
-				Name: f.Type.Name, Source: f.Type.Source,
-				ShearStrength: f.Type.ShearStrength * force, TensionStrength: f.Type.TensionStrength * force,
-				Fsu: f.Type.Fsu * stress, Ftu: f.Type.Ftu * stress,
-			}
-			if th := f.Type.Thread; th != nil {
-				fastener.Type.Thread = &Thread{th.Form, th.Pitch * length, th.InShearPlane}
-			}
-		}
+		fastener.Type = f.Type.decode(s)
 		p.Fasteners = append(p.Fasteners, fastener)
 	}
 	for _, k := range w.Plates {
@@ -130,12 +122,7 @@ func (w wirePattern) pattern(t *testing.T) (Pattern, strength.Factors, []Pattern
 		for _, o := range k.Outline {
 			plate.Outline = append(plate.Outline, [2]float64{o[0] * length, o[1] * length})
 		}
-		if m := k.Material; m != nil {
-			plate.Material = &strength.Material{Name: m.Name, Direction: m.Direction, Basis: m.Basis, Source: m.Source, Ftu: m.Ftu * stress, Fty: m.Fty * stress}
-			for _, b := range m.Bearing {
-				plate.Material.Bearing = append(plate.Material.Bearing, strength.BearingStrength{EOverD: b.EOverD, Fbru: b.Fbru * stress, Fbry: b.Fbry * stress})
-			}
-		}
+		plate.Material = k.Material.decode(s)
 		p.Plates = append(p.Plates, plate)
 	}
 	for _, name := range w.Rules {
@@ -153,6 +140,34 @@ func (w wirePattern) pattern(t *testing.T) (Pattern, strength.Factors, []Pattern
 		}
 	}
 	return p, strength.Factors{Ultimate: w.Factors.Ultimate, Fitting: w.Factors.Fitting}, cases
+}
+
+func (w *wireType) decode(s scale) *Type {
+	if w == nil {
+		return nil
+	}
+	stress := s.of(strength.Stress)
+	t := &Type{
+		Name: w.Name, Source: w.Source,
+		ShearStrength: w.ShearStrength * s.force, TensionStrength: w.TensionStrength * s.force,
+		Fsu: w.Fsu * stress, Ftu: w.Ftu * stress,
+	}
+	if th := w.Thread; th != nil {
+		t.Thread = &Thread{th.Form, th.Pitch * s.length, th.InShearPlane}
+	}
+	return t
+}
+
+func (w *wireMaterial) decode(s scale) *strength.Material {
+	if w == nil {
+		return nil
+	}
+	stress := s.of(strength.Stress)
+	m := &strength.Material{Name: w.Name, Direction: w.Direction, Basis: w.Basis, Source: w.Source, Ftu: w.Ftu * stress, Fty: w.Fty * stress}
+	for _, b := range w.Bearing {
+		m.Bearing = append(m.Bearing, strength.BearingStrength{EOverD: b.EOverD, Fbru: b.Fbru * stress, Fbry: b.Fbry * stress})
+	}
+	return m
 }
 
 // printed is a value with its digits as printed, and how near to come: half a

@@ -29,8 +29,8 @@ const (
 	// load of the joint would stretch by so many times its clearance, and at
 	// least and at most so many times as soft as one that bears; multipliers
 	// then take its load away.
-	contactStretch = 1e4
-	contactSofter  = 1e6
+	contactStretch = 1e3
+	contactSofter  = 1e4
 	contactSoftest = 1e9
 	// Loads below this part of the largest are none.
 	contactNone = 1e-12

@@ -3,6 +3,7 @@ package fastener
 import (
 	"bytes"
 	"encoding/json"
+	"fmt"
 	"math"
 	"os"
 	"path/filepath"
@@ -25,6 +26,8 @@ type wireSplice struct {
 		RowThickness []float64 `json:"row_thickness"`
 		Bays         []Bay
 		Expansion    float64
+		Material     *wireMaterial
+		EdgeDistance float64 `json:"edge_distance"`
 	}
 	Pitches []float64
 	Rows    []struct {
@@ -32,6 +35,8 @@ type wireSplice struct {
 		Diameter, E, Nu, Compliance float64
 		Installation                string
 		Clearance                   float64
+		Type                        *wireType
+		ShearPlanes                 int `json:"shear_planes"`
 	}
 	Compliance        string
 	CompareCompliance []string `json:"compare_compliance"`
@@ -59,7 +64,10 @@ func (w *wireSplice) decode(t *testing.T) (Splice, strength.Factors, []SpliceCas
 	stress := force / (length * length)
 	s := Splice{Compliance: w.Compliance, CompareCompliance: w.CompareCompliance, Symmetric: w.Symmetric}
 	for _, m := range w.Members {
-		member := Member{ID: m.ID, E: m.E * stress, FirstRow: m.FirstRow, LastRow: m.LastRow, Expansion: m.Expansion}
+		member := Member{
+			ID: m.ID, E: m.E * stress, FirstRow: m.FirstRow, LastRow: m.LastRow, Expansion: m.Expansion,
+			Material: m.Material.decode(scales[w.Units]), EdgeDistance: m.EdgeDistance * length,
+		}
 		for _, thickness := range m.RowThickness {
 			member.RowThickness = append(member.RowThickness, thickness*length)
 		}
@@ -75,6 +83,7 @@ func (w *wireSplice) decode(t *testing.T) (Splice, strength.Factors, []SpliceCas
 		s.Rows = append(s.Rows, Row{
 			Count: r.Count, Diameter: r.Diameter * length, E: r.E * stress, Nu: r.Nu, Installation: r.Installation,
 			Compliance: r.Compliance * length / force, Clearance: r.Clearance * length,
+			Type: r.Type.decode(scales[w.Units]), ShearPlanes: r.ShearPlanes,
 		})
 	}
 	var cases []SpliceCase
@@ -111,6 +120,13 @@ func printedDigits(t *testing.T, text string) (value, half float64) {
 	return value, 0.5 * math.Pow(10, float64(power))
 }
 
+func assertPrinted(t *testing.T, what string, got float64, text string) {
+	t.Helper()
+	if want, half := printedDigits(t, text); !(math.Abs(got-want) <= half*(1+1e-9)) {
+		t.Errorf("%s: %.9g, printed %s", what, got, text)
+	}
+}
+
 // TestPublishedSplices holds every case of the data against its source.
 func TestPublishedSplices(t *testing.T) {
 	type expected struct {
@@ -118,8 +134,16 @@ func TestPublishedSplices(t *testing.T) {
 		Row      int
 		Between  []string
 		Share    string
+		Load     string
 		Symbol   string
 		Value    string
+	}
+	type expectedCheck struct {
+		LoadCase                  string `json:"load_case"`
+		Row                       int
+		Member, Mode, Level       string
+		Method                    string
+		Demand, Allowable, Margin string
 	}
 	var files []string
 	for _, pattern := range []string{"splice-*.json", "compliance-*.json"} {
@@ -141,7 +165,10 @@ func TestPublishedSplices(t *testing.T) {
 				Title, Source, Mark string
 				Hand                []string
 				Input               wireSplice
-				Expect              struct{ Transfers, Workings []expected }
+				Expect              struct {
+					Transfers, Workings []expected
+					Checks              []expectedCheck
+				}
 			}
 		}
 		decoder := json.NewDecoder(bytes.NewReader(data))
@@ -170,10 +197,28 @@ func TestPublishedSplices(t *testing.T) {
 					if k < 0 {
 						t.Fatalf("no interface %v at row %d", e.Between, e.Row)
 					}
-					want, half := printedDigits(t, e.Share)
-					if got := out.Interfaces[k].Share; math.Abs(got-want) > half*(1+1e-9) {
-						t.Errorf("row %d: share %.7f, printed %s", e.Row, got, e.Share)
+					if e.Share != "" {
+						assertPrinted(t, fmt.Sprintf("row %d share", e.Row), out.Interfaces[k].Share, e.Share)
 					}
+					if e.Load != "" {
+						assertPrinted(t, fmt.Sprintf("row %d load", e.Row), out.Interfaces[k].Load/force, e.Load)
+					}
+					compared++
+				}
+				margins := make([]strength.Margin, len(p.Checks()))
+				for _, e := range c.Expect.Checks {
+					i := slices.IndexFunc(cases, func(c SpliceCase) bool { return c.ID == e.LoadCase })
+					p.Margins(i, margins)
+					k := slices.IndexFunc(p.Checks(), func(c strength.Check) bool {
+						return c.Row == e.Row && c.Member == e.Member && c.Mode.String() == e.Mode && c.Level.String() == e.Level && (e.Method == "" || c.Method == e.Method)
+					})
+					if k < 0 {
+						t.Fatalf("no check %+v", e)
+					}
+					what := fmt.Sprintf("row %d %s %s %s", e.Row, e.Member, e.Mode, e.Level)
+					assertPrinted(t, what+" demand", margins[k].Demand/force, e.Demand)
+					assertPrinted(t, what+" allowable", margins[k].Allowable/force, e.Allowable)
+					assertPrinted(t, what+" margin", margins[k].Margin, e.Margin)
 					compared++
 				}
 				for _, e := range c.Expect.Workings {
@@ -183,10 +228,7 @@ func TestPublishedSplices(t *testing.T) {
 						t.Fatalf("no working %s at row %d", e.Symbol, e.Row)
 					}
 					unit := math.Pow(force, float64(workings[k].Unit.Force)) * math.Pow(length, float64(workings[k].Unit.Length))
-					want, half := printedDigits(t, e.Value)
-					if got := workings[k].Value / unit; math.Abs(got-want) > half*(1+1e-9) {
-						t.Errorf("row %d: %s = %.8g, printed %s", e.Row, e.Symbol, got, e.Value)
-					}
+					assertPrinted(t, fmt.Sprintf("row %d %s", e.Row, e.Symbol), workings[k].Value/unit, e.Value)
 					compared++
 				}
 			})
