@@ -96,11 +96,19 @@ func Methods() []Method {
 			Range: rangeBearing, Mark: strength.Seen,
 			Equations: []Equation{{"1", "P_bru = F_bru D t", sourceBearing, strength.Seen}, {"2", "P_bry = F_bry D t", sourceBearing, strength.Seen}},
 		},
-		{
-			ID: "interaction-2-2", Revision: 1, Kind: "interaction",
-			Title: "Shear and tension on a circle", Source: sourceInteract22,
-			Range: "shear and tension together", Mark: strength.FromMemory(95),
-			Equations: []Equation{{"1", "R_s² + R_t² <= 1", sourceInteract22, strength.FromMemory(95)}},
-		},
+		interactionMethod("2-2", "Shear and tension on a circle"),
+		interactionMethod("3-2", "Shear cubed and tension squared"),
+		interactionMethod("nasa-5020-body", "Shear and tension, body in the shear plane"),
+		interactionMethod("nasa-5020-thread", "Shear and tension, threads in the shear plane"),
+		interactionMethod("en-1993-1-8", "Shear and tension of bolts in buildings"),
 	}, spliceMethods()...)
+}
+
+func interactionMethod(word, title string) Method {
+	curve := interactions[word]
+	return Method{
+		ID: "interaction-" + word, Revision: 1, Kind: "interaction", Title: title, Source: curve.source,
+		Range: "shear and tension together; the margin is the factor on the load that reaches the curve, minus 1",
+		Mark:  curve.mark, Equations: []Equation{{"1", "R = " + curve.equation + " <= 1", curve.source, curve.mark}},
+	}
 }

@@ -17,7 +17,7 @@ const inPlaneCentre = "instantaneous-centre"
 
 // The words that a pattern's choices take.
 var (
-	interactionWord = []string{"", "2-2"}
+	interactionWord = append([]string{""}, InteractionWords()...)
 	inPlaneWords    = []string{"", "elastic", inPlaneCentre}
 	outOfPlaneWords = []string{"", "centroid", "heel"}
 	threadForms     = []string{"unified", "iso"}

@@ -91,7 +91,7 @@ func TestWorkingsClose(t *testing.T) {
 var identifier = regexp.MustCompile(`[\p{L}][\p{L}\p{Nd}_']*(?:,[\p{L}\p{Nd}_']+)*`)
 
 // functions are the identifiers that are no symbols.
-var functions = map[string]bool{"sqrt": true, "min": true, "max": true, "exp": true, "with": true, "and": true, "at": true, "once": true, "Σ": true, "π": true, "cos": true, "sin": true}
+var functions = map[string]bool{"sqrt": true, "min": true, "max": true, "exp": true, "with": true, "and": true, "at": true, "once": true, "solved": true, "for": true, "Σ": true, "π": true, "cos": true, "sin": true}
 
 func assertClosed(t *testing.T, check strength.Check, m strength.Margin, steps []strength.Working) {
 	t.Helper()
@@ -131,6 +131,8 @@ func variants() map[string]func(*Pattern) {
 	return map[string]func(*Pattern){
 		"equal": func(*Pattern) {},
 		"area":  func(p *Pattern) { p.Stiffness = "area" },
+		"3-2":   func(p *Pattern) { p.Interaction = "3-2" },
+		"en":    func(p *Pattern) { p.Interaction = "en-1993-1-8" },
 		"given": func(p *Pattern) { p.Stiffness = "given" },
 		"tate-rosenfeld": func(p *Pattern) {
 			p.Stiffness = "tate-rosenfeld"

@@ -1,18 +1,14 @@
 package fastener
 
-import (
-	"math"
-
-	"jointledger/strength"
-)
+import "jointledger/strength"
 
 // demands are the multipliers of a load for one check, by the level at which
 // the load is given.
 type demands [strength.Ultimate + 1]strength.Demand
 
-func (p *PreparedPattern) demands(c strength.Check) (d demands) {
+func (p *PreparedPattern) demands(c strength.Check, safety strength.Safety, applySpecial bool) (d demands) {
 	for _, given := range []strength.Level{strength.Limit, strength.Ultimate} {
-		d[given] = p.factors.Demand(c, given, strength.ByRegulation, false)
+		d[given] = p.factors.Demand(c, given, safety, applySpecial)
 	}
 	return d
 }
@@ -26,9 +22,16 @@ type place struct {
 	factor  [strength.Ultimate + 1]float64
 }
 
+// place makes the place of a check at fastener i whose allowable is an
+// unfactored strength.
 func (p *PreparedPattern) place(i int, c strength.Check) place {
+	return p.placeBy(i, c, strength.ByRegulation, false)
+}
+
+// placeBy is place for an allowable of another safety.
+func (p *PreparedPattern) placeBy(i int, c strength.Check, safety strength.Safety, applySpecial bool) place {
 	c.Fastener = p.pattern.Fasteners[i].ID
-	at := place{p: p, c: c, i: i, demands: p.demands(c)}
+	at := place{p: p, c: c, i: i, demands: p.demands(c, safety, applySpecial)}
 	for level, d := range at.demands {
 		at.factor[level] = d.Factor()
 	}
@@ -174,8 +177,7 @@ func (a *interactionCheck) margin(c *caseState) strength.Margin {
 	if a.why != nil {
 		return strength.Unknown(a.why)
 	}
-	m := strength.Compare(1, a.curve.reach(a.ratios(c)))
-	return m
+	return strength.Compare(1, a.curve.reach(a.ratios(c)))
 }
 
 func (a *interactionCheck) steps() []strength.Working {
@@ -210,22 +212,4 @@ func (a *interactionCheck) caseSteps(c *caseState, i int) []strength.Working {
 	add("demand", 1, "", "a combined check: the load as it is", strength.Given)
 	add("λ", m.Allowable, a.curve.reachEquation, "the factor on the load that reaches the curve", strength.Derived)
 	return append(append(steps, names...), marginStep(m, "λ")...)
-}
-
-// interaction is a curve of shear and tension together.
-type interaction struct {
-	method, equation, source, reachEquation string
-	mark                                    strength.Mark
-	// value is 1 on the curve; reach is the factor on both ratios, not both
-	// zero, that brings it there.
-	value, reach func(s, t float64) float64
-}
-
-var interactions = map[string]interaction{
-	"2-2": {
-		method: methodInteract22, equation: "R_s² + R_t²", source: sourceInteract22,
-		reachEquation: "1 / sqrt(R)", mark: strength.FromMemory(95),
-		value: func(s, t float64) float64 { return float64(s*s) + float64(t*t) },
-		reach: func(s, t float64) float64 { return 1 / math.Hypot(s, t) },
-	},
 }
