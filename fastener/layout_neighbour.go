@@ -23,17 +23,65 @@ type grove struct {
 // nearestNeighbours finds each fastener's nearest other one in O(n log² n),
 // however they lie. Of equally near ones it returns any.
 func nearestNeighbours(fasteners []Fastener) []neighbour {
-	g := grove{fasteners: fasteners, order: make([]int32, len(fasteners)), byY: make([]bool, len(fasteners))}
-	for i := range g.order {
-		g.order[i] = int32(i)
-	}
-	g.plant(0, len(g.order))
+	g := plantGrove(fasteners)
 	near := make([]neighbour, len(fasteners))
 	for i := range near {
 		near[i] = neighbour{-1, math.Inf(1)}
 		g.search(0, len(g.order), i, &near[i])
 	}
 	return near
+}
+
+func plantGrove(fasteners []Fastener) *grove {
+	g := &grove{fasteners: fasteners, order: make([]int32, len(fasteners)), byY: make([]bool, len(fasteners))}
+	for i := range g.order {
+		g.order[i] = int32(i)
+	}
+	g.plant(0, len(g.order))
+	return g
+}
+
+// mostNeighbours bounds a neighbourhood; holes that do not overlap are fewer.
+const mostNeighbours = 64
+
+// neighbourhoods returns, for each fastener, the others whose holes a clear
+// distance of twice its diameter may meet, from which on tearout does not govern.
+func neighbourhoods(fasteners []Fastener) [][]int32 {
+	g := plantGrove(fasteners)
+	widest := 0.0
+	for i := range fasteners {
+		widest = max(widest, fasteners[i].hole())
+	}
+	all := make([][]int32, len(fasteners))
+	for i := range fasteners {
+		radius := float64(2*fasteners[i].Diameter) + fasteners[i].hole()/2 + widest
+		g.within(0, len(g.order), i, radius, &all[i])
+	}
+	return all
+}
+
+// within gathers the fasteners nearer than radius to fastener i.
+func (g *grove) within(from, to, i int, radius float64, found *[]int32) {
+	if from >= to || len(*found) == mostNeighbours {
+		return
+	}
+	middle := (from + to) / 2
+	f := &g.fasteners[i]
+	if root := g.order[middle]; int(root) != i {
+		if other := &g.fasteners[root]; math.Hypot(other.X-f.X, other.Y-f.Y) < radius {
+			*found = append(*found, root)
+		}
+	}
+	ahead := f.X - g.at(middle, false)
+	if g.byY[middle] {
+		ahead = f.Y - g.at(middle, true)
+	}
+	if ahead <= radius {
+		g.within(from, middle, i, radius, found)
+	}
+	if -ahead <= radius {
+		g.within(middle+1, to, i, radius, found)
+	}
 }
 
 func (g *grove) at(place int, byY bool) float64 {

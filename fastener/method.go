@@ -33,6 +33,13 @@ const (
 	methodShear       = "fastener-shear@1"
 	methodTension     = "fastener-tension@1"
 	methodBearing     = "plate-bearing@1"
+	methodShearOut    = "plate-shear-out@1"
+	methodPreload     = "nasa-std-5020-preload@1"
+	methodPullThrough = "pull-through@1"
+	methodAISC        = "aisc-360-j3@1"
+	methodEN          = "en-1993-1-8@1"
+	sourceShearOut    = "two planes from the hole at 40° to the load, as of a lug: 2 t L F_su"
+	sourcePullThrough = "the allowable given for this head and sheet"
 	methodInteract22  = "interaction-2-2@1"
 	sourceInPlane     = "NASA RP-1228, eccentric shear: direct share plus moment share about the centroid of stiffness"
 	sourceOutOfPlane  = "rigid attached member on linear springs about the centroid of their stiffness"
@@ -95,6 +102,52 @@ func Methods() []Method {
 			Title: "Bearing of a plate at ultimate and yield", Source: sourceBearing,
 			Range: rangeBearing, Mark: strength.Seen,
 			Equations: []Equation{{"1", "P_bru = F_bru D t", sourceBearing, strength.Seen}, {"2", "P_bry = F_bry D t", sourceBearing, strength.Seen}},
+		},
+		{
+			ID: "plate-shear-out", Revision: 1, Kind: "strength",
+			Title: "Shear-out of a plate along the load", Source: sourceShearOut,
+			Range: "toward the outline; holes in between are the matter of pitch rules", Mark: strength.Derived,
+			Equations: []Equation{{"1", "P_so = 2 F_su t L", sourceShearOut, strength.Derived}},
+		},
+		{
+			ID: "nasa-std-5020-preload", Revision: 1, Kind: "strength",
+			Title: "Preloaded bolts: tension, slip and separation", Source: sourcePreload,
+			Range: "wherever type.preload is given", Mark: strength.FromMemory(90),
+			Equations: []Equation{
+				{"1", "P_0max = (1 + Γ) P_i + P_tg", sourcePreload, strength.FromMemory(90)},
+				{"2", "P_0min = (1 - Γ) (1 - ρ) P_i - P_tl", sourcePreload, strength.FromMemory(90)},
+				{"3", "T_pu = (T_u - P_0max) / (n_p φ), or T_u where the joint separates first", sourcePreload, strength.FromMemory(90)},
+				{"4", "V_slip = n μ P_0min, less what tension takes of the clamping", sourcePreload, strength.Derived},
+			},
+		},
+		{
+			ID: "pull-through", Revision: 1, Kind: "strength",
+			Title: "Pull-through of a head", Source: sourcePullThrough,
+			Range: "undetermined for a countersunk head without a given allowable", Mark: strength.Given,
+			Equations: []Equation{{"1", "P_pt, by test", sourcePullThrough, strength.Given}},
+		},
+		{
+			ID: "aisc-360-j3", Revision: 1, Kind: "strength",
+			Title: "Bolts and bearing by AISC 360-16 J3", Source: sourceAISCShear + "; " + sourceAISCBearing,
+			Range: rangeAISC, Mark: strength.FromMemory(85),
+			Equations: []Equation{
+				{"J3-1", "R_n = F_nv A_b, F_nt A_b", sourceAISCShear, strength.FromMemory(95)},
+				{"J3-3", "(R_s + R_t) / 1.3 <= 1", sourceAISCTogether, strength.FromMemory(95)},
+				{"J3-6", "R_n = 1.2 l_c t F_u <= 2.4 d t F_u, φ 0.75, Ω 2", sourceAISCBearing, strength.Seen},
+			},
+		},
+		{
+			ID: "en-1993-1-8", Revision: 1, Kind: "strength",
+			Title: "Bolts and bearing by EN 1993-1-8 table 3.4", Source: "EN 1993-1-8 table 3.4",
+			Range: rangeEN, Mark: strength.FromMemory(95),
+			Equations: []Equation{
+				{"table 3.4", "F_v = α_v f_ub A / γ_M2", sourceENShear, strength.Seen},
+				{"table 3.4", "F_b = k_1 α_b f_u d t / γ_M2", sourceENBearing, strength.Seen},
+				{"table 3.4", "F_t = k_2 f_ub A_s / γ_M2", sourceENTension, strength.Seen},
+				{"table 3.4", "B_p = 0.6 π d_m t_p f_u / γ_M2", sourceENPunch, strength.Seen},
+				{"3.5", "β_Lf = 1 - (L_j - 15 d) / (200 d), 0.75 to 1", sourceENLong, strength.FromMemory(95)},
+				{"3.3", "β_p = 9 d / (8 d + 3 t_p)", sourceENPack, strength.FromMemory(95)},
+			},
 		},
 		interactionMethod("2-2", "Shear and tension on a circle"),
 		interactionMethod("3-2", "Shear cubed and tension squared"),

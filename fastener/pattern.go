@@ -1,6 +1,8 @@
 package fastener
 
 import (
+	"slices"
+
 	"jointledger/strength"
 )
 
@@ -8,6 +10,7 @@ import (
 type Fastener struct {
 	ID             string
 	X, Y, Diameter float64 // mm
+	HoleDiameter   float64 // mm; 0 is Diameter
 	Type           *Type   // nil: sharing only
 	ShearPlanes    int     // 1 or 2; 0 is 1
 	// ShearStiffness and TensionStiffness are read by stiffness `given` only;
@@ -29,6 +32,10 @@ type Plate struct {
 	Material         *strength.Material // nil: none given, no check
 	Outline          [][2]float64       // mm, a polygon; empty: not given
 	CountersinkDepth float64            // mm
+	// AxisAngle is the direction in degrees from x in which the plate runs from
+	// its free end to where it is held or loaded; nil: not given, then no check
+	// of sections across the rows.
+	AxisAngle *float64
 	// LoadShare is the part of a fastener's load that this plate bears; 0 is
 	// its default: 1, but for plates after the first at a fastener in double
 	// shear, which are outer plates and bear half each.
@@ -41,9 +48,16 @@ type Pattern struct {
 	Fasteners   []Fastener
 	Plates      []Plate
 	Rules       []RuleSet
-	Interaction string // "" or a word of Methods' interactions
+	Interaction string // "" or of InteractionWords
 	InPlane     string // "" or "elastic", or "instantaneous-centre" at ultimate
 	OutOfPlane  string // "" or "centroid", or "heel" about plates[0]'s outline
+	// Methods of strength, of StrengthMethods; none is "elementary".
+	Methods []string
+	AISC    AISCOptions
+	EN      ENOptions
+	// PackingThickness in mm is that of the packing or fillers at the shear
+	// plane, which reduces the shear of some methods.
+	PackingThickness float64
 }
 
 // PatternCase is one load on the attached member, at Point.
@@ -70,6 +84,8 @@ type PreparedPattern struct {
 	centre      *instantaneous // nil unless asked for and possible
 	loads       []centred
 	outlines    [][]side
+	extent      float64   // the longest distance between fasteners along their line
+	near        [][]int32 // the neighbours that clear distances may meet
 	checks      []strength.Check
 	assessments []assessment
 	state       caseState
@@ -125,6 +141,7 @@ func PreparePattern(p Pattern, f strength.Factors, cases []PatternCase) (*Prepar
 	if len(faults) > 0 {
 		return nil, faults
 	}
+	prepared.extent = prepared.sharing.length
 	edges := prepared.edgeDistances()
 	prepared.addAssessments(edges)
 	prepared.checks = make([]strength.Check, len(prepared.assessments))
@@ -157,16 +174,57 @@ func (p *PreparedPattern) edgeDistances() [][]edgeDistance {
 	return edges
 }
 
-// addAssessments lists the checks in the order of answers: each fastener, then
-// the plates at it.
+// The words of Pattern.Methods.
+const (
+	wordElementary = "elementary"
+	wordAISC       = "aisc-360-j3"
+	wordEN         = "en-1993-1-8"
+)
+
+// StrengthMethods returns the words of a pattern's methods of strength.
+func StrengthMethods() []string { return []string{wordElementary, wordAISC, wordEN} }
+
+// addAssessments lists the checks in the order of answers: the pattern as a
+// whole, then each fastener and the plates at it, by the methods in the order
+// asked for.
 func (p *PreparedPattern) addAssessments(edges [][]edgeDistance) {
 	if p.pattern.InPlane == inPlaneCentre {
 		p.addCentre()
 	}
+	methods := p.pattern.Methods
+	if len(methods) == 0 {
+		methods = []string{wordElementary}
+	}
+	if slices.Contains(methods, wordAISC) {
+		p.near = neighbourhoods(p.pattern.Fasteners)
+	}
 	for i := range p.pattern.Fasteners {
-		p.addFastenerStrength(i)
+		if p.pattern.Fasteners[i].Type != nil {
+			for _, m := range methods {
+				switch m {
+				case wordElementary:
+					p.addElementaryFastener(i)
+				case wordAISC:
+					p.addAISCFastener(i)
+				case wordEN:
+					p.addENFastener(i)
+				}
+			}
+			p.addPreload(i)
+			p.addPullThrough(i)
+		}
 		for k := range p.pattern.Plates {
-			p.addBearing(i, k, edges[k])
+			for _, m := range methods {
+				switch m {
+				case wordElementary:
+					p.addShearOut(i, k)
+					p.addBearing(i, k, edges[k])
+				case wordAISC:
+					p.addAISCBearing(i, k)
+				case wordEN:
+					p.addENPlate(i, k)
+				}
+			}
 		}
 	}
 }

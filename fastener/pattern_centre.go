@@ -212,7 +212,7 @@ func (p *PreparedPattern) addCentre() {
 		Member: memberPattern, Mode: strength.Shear, Level: strength.Ultimate, Unit: strength.Force,
 		Method: methodCentre, Source: sourceCentre, Mark: mark,
 	}
-	at := p.place(0, check)
+	at := p.place(0, check, safety{})
 	at.c.Fastener = ""
 	p.assessments = append(p.assessments, &centreCheck{at, reason(why)})
 }

@@ -47,6 +47,10 @@ func (p *PreparedPattern) inputFaults() []strength.Fault {
 	word("/interaction", p.pattern.Interaction, interactionWord)
 	word("/in_plane", p.pattern.InPlane, inPlaneWords)
 	word("/out_of_plane", p.pattern.OutOfPlane, outOfPlaneWords)
+	for i, m := range p.pattern.Methods {
+		word(fmt.Sprintf("/methods/%d", i), m, StrengthMethods())
+	}
+	word("/method_options/aisc-360-j3/basis", p.pattern.AISC.Basis, []string{"", "lrfd", "asd"})
 	if p.pattern.OutOfPlane == "heel" {
 		switch {
 		case len(p.pattern.Plates) == 0:
@@ -70,7 +74,23 @@ func (p *PreparedPattern) inputFaults() []strength.Fault {
 				fault(field("fasteners", i, "tension_stiffness"), "stiffness \"given\" needs a positive tension stiffness, found %g", f.TensionStiffness)
 			}
 		}
-		if f.Type == nil || f.Type.Thread == nil {
+		if f.HoleDiameter != 0 && strength.Less(f.HoleDiameter, f.Diameter) {
+			fault(field("fasteners", i, "hole_diameter"), "found %v, allowed is at least the fastener's diameter %v",
+				strength.Length.Of(f.HoleDiameter), strength.Length.Of(f.Diameter))
+		}
+		if f.Type == nil {
+			continue
+		}
+		word(field("fasteners", i, "type/head"), f.Type.Head, append([]string{""}, Heads()...))
+		if b := f.Type.Preload; b != nil {
+			if b.Nominal == 0 && (b.Torque == 0 || b.NutFactor == 0) {
+				fault(field("fasteners", i, "type/preload"), "needs nominal, or torque with nut_factor")
+			}
+			if b.Scatter >= 1 || b.Relaxation >= 1 {
+				fault(field("fasteners", i, "type/preload"), "scatter and relaxation are fractions below 1, found %g and %g", b.Scatter, b.Relaxation)
+			}
+		}
+		if f.Type.Thread == nil {
 			continue
 		}
 		faults = append(faults, f.Type.Thread.faults(field("fasteners", i, "type/thread"), f.Diameter)...)
@@ -97,9 +117,9 @@ func (p *PreparedPattern) inputFaults() []strength.Fault {
 			switch {
 			case !contains(p.outlines[k], f.X, f.Y):
 				fault(pointer, "the centre of fastener %q is not inside the outline", f.ID)
-			case strength.AtMost(e, f.Diameter/2):
+			case strength.AtMost(e, f.hole()/2):
 				fault(pointer, "the hole of fastener %q reaches the outline: its centre is %v from it, more than half its diameter, %v, is allowed",
-					f.ID, strength.Length.Of(e), strength.Length.Of(f.Diameter/2))
+					f.ID, strength.Length.Of(e), strength.Length.Of(f.hole()/2))
 			}
 		}
 	}

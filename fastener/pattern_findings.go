@@ -43,6 +43,10 @@ func (p *PreparedPattern) allFindings(edges [][]edgeDistance, near []neighbour) 
 			say(strength.Note, "countersunk-bearing", "plate "+plate.ID, "common practice, no source", strength.Say(
 				"bearing counts the thickness less the whole depth of the countersink, %v", strength.Length.Of(plate.Thickness-plate.CountersinkDepth)))
 		}
+		if plate.Material.Fsu == 0 && p.outlines[k] != nil {
+			say(strength.Warning, "not-checked", "plate "+plate.ID, "", strength.Say(
+				"the material %q has no %s: shear-out toward the outline is not checked", plate.Material.Name, strength.Fsu))
+		}
 		halved := 0
 		for i := range p.pattern.Fasteners {
 			if plate.LoadShare == 0 && p.loadShare(i, k) < 1 {

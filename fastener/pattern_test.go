@@ -127,12 +127,53 @@ func assertClosed(t *testing.T, check strength.Check, m strength.Margin, steps [
 	}
 }
 
+// fill gives a pattern's types and materials every value.
+func fill(p *Pattern) {
+	axis := 90.0
+	for i := range p.Fasteners {
+		t := *p.Fasteners[i].Type
+		t.Ftu, t.Thread, t.Class, t.HeadDiameter = 800, &Thread{Form: "iso", Pitch: 1, InShearPlane: true}, "8.8", 12
+		t.Preload = &Preload{Torque: 8000, NutFactor: 0.2, Scatter: 0.25, Relaxation: 0.05, LoadingPlane: 0.5, StiffnessRatio: 0.3, Friction: 0.3, SlipFactor: 1.2}
+		if i == 2 {
+			t.Preload = &Preload{Nominal: 15000, Scatter: 0.3, ThermalGain: 100, ThermalLoss: 50}
+			t.PullThroughStrength = 9000
+		}
+		p.Fasteners[i].Type = &t
+		p.Fasteners[i].HoleDiameter = p.Fasteners[i].Diameter + 0.5
+	}
+	for k := range p.Plates {
+		m := *p.Plates[k].Material
+		m.Ftu, m.Fty, m.Fsu, m.Fcy, m.E, m.Ec = 510, 440, 290, 430, 71e3, 73e3
+		p.Plates[k].Material = &m
+		p.Plates[k].AxisAngle = &axis
+		p.Plates[k].Outline = append([][2]float64(nil), p.Plates[k].Outline...)
+	}
+}
+
 func variants() map[string]func(*Pattern) {
 	return map[string]func(*Pattern){
 		"equal": func(*Pattern) {},
 		"area":  func(p *Pattern) { p.Stiffness = "area" },
 		"3-2":   func(p *Pattern) { p.Interaction = "3-2" },
 		"en":    func(p *Pattern) { p.Interaction = "en-1993-1-8" },
+		"methods": func(p *Pattern) {
+			p.Methods, p.PackingThickness = StrengthMethods(), 8
+			p.AISC.Basis = "asd"
+			fill(p)
+		},
+		"lrfd, far apart": func(p *Pattern) {
+			p.Methods, p.Stiffness = []string{"aisc-360-j3", "en-1993-1-8"}, "area"
+			fill(p)
+			for i := range p.Fasteners {
+				p.Fasteners[i].X *= 20
+				p.Fasteners[i].Type.Thread.InShearPlane = i > 2
+			}
+			for k := range p.Plates {
+				for i := range p.Plates[k].Outline {
+					p.Plates[k].Outline[i][0] *= 20
+				}
+			}
+		},
 		"given": func(p *Pattern) { p.Stiffness = "given" },
 		"tate-rosenfeld": func(p *Pattern) {
 			p.Stiffness = "tate-rosenfeld"

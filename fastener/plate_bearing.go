@@ -6,20 +6,10 @@ import (
 	"jointledger/strength"
 )
 
-// bearingCheck is a plate borne upon by one fastener.
-type bearingCheck struct {
-	place
-	plate    int
-	share    float64
-	edge     *edgeDistance // nil without an outline
-	capacity float64
-	why      *strength.Message
-}
-
 // addBearing adds the bearing checks of plate k at fastener i, ultimate and
 // yield.
 func (p *PreparedPattern) addBearing(i, k int, edges []edgeDistance) {
-	plate := &p.pattern.Plates[k]
+	f, plate := &p.pattern.Fasteners[i], &p.pattern.Plates[k]
 	if plate.Material == nil {
 		return
 	}
@@ -27,29 +17,13 @@ func (p *PreparedPattern) addBearing(i, k int, edges []edgeDistance) {
 	if edges != nil {
 		edge = &edges[i]
 	}
-	f := &p.pattern.Fasteners[i]
 	for _, level := range []strength.Level{strength.Ultimate, strength.Limit} {
-		capacity := bearing(f, plate, edge, level)
 		check := strength.Check{
 			Member: plate.ID, Mode: strength.Bearing, Level: level, Unit: strength.Force,
 			Method: methodBearing, Source: sourceBearing,
-			Mark: strength.Weakest(p.shearMark(level), capacity.mark()),
 		}
-		p.assessments = append(p.assessments, &bearingCheck{
-			p.place(i, check), k, p.loadShare(i, k), edge, capacity.value, reason(capacity.why),
-		})
+		p.addFixed(i, check, byBearing, k, safety{}, func() allowable { return bearing(f, plate, edge, level) })
 	}
-}
-
-// loadShare is the part of a fastener's load that a plate bears.
-func (p *PreparedPattern) loadShare(i, k int) float64 {
-	switch plate := &p.pattern.Plates[k]; {
-	case plate.LoadShare > 0:
-		return plate.LoadShare
-	case k > 0 && p.pattern.Fasteners[i].planes() == 2:
-		return 0.5
-	}
-	return 1
 }
 
 // bearing returns the bearing strength in N of a plate at a fastener: F_bru D t
@@ -75,7 +49,7 @@ func bearing(f *Fastener, plate *Plate, edge *edgeDistance, level strength.Level
 	}
 	thick := "t"
 	if plate.CountersinkDepth > 0 {
-		thick, t = "t_b", t-plate.CountersinkDepth
+		thick, t = "t_b", plate.bearingThickness()
 		a.add("h_cs", plate.CountersinkDepth, strength.Length, "", "input: plates.countersink_depth", strength.Given)
 		a.add("t_b", t, strength.Length, "t - h_cs", "countersunk bearing: thickness less the whole depth, conservative", strength.CommonPractice)
 	}
@@ -114,10 +88,7 @@ func (a *allowable) addBearingStress(m *strength.Material, stress strength.Prope
 		}
 		return 1
 	})
-	mark, source := m.MarkOf(stress), m.Source
-	if source == "" {
-		source = "input: material " + m.Name
-	}
+	mark, source := m.MarkOf(stress), materialSource(m)
 	eOverD = min(eOverD, strength.BearingFull)
 	a.add("r", eOverD, strength.None, "min(e/D, 2)", "MIL-HDBK-5J section 1.4.7: none above that of 2.0", strength.Seen)
 	for i, b := range given {
@@ -137,32 +108,4 @@ func (a *allowable) addBearingStress(m *strength.Material, stress strength.Prope
 		a.add(string(stress), value, strength.Stress, "F_1 + (r - r_1) / (r_2 - r_1) (F_2 - F_1)", "by straight line between the given ratios", strength.Seen)
 		return
 	}
-}
-
-func (a *bearingCheck) margin(c *caseState) strength.Margin {
-	return compare(c.shares[a.c.Level][a.i].Resultant*a.share*a.factor[c.level], a.capacity, a.why)
-}
-
-func (a *bearingCheck) steps() []strength.Working {
-	capacity := bearing(&a.p.pattern.Fasteners[a.i], &a.p.pattern.Plates[a.plate], a.edge, a.c.Level)
-	source := "input: plates.load_share"
-	if a.p.pattern.Plates[a.plate].LoadShare == 0 {
-		source = "the whole load of the fastener"
-		if a.share < 1 {
-			source = "an outer plate of a joint in double shear"
-		}
-	}
-	capacity.add("ψ", a.share, strength.None, "", source, strength.Given)
-	return append(a.p.shearSteps(a.c.Level), capacity.steps...)
-}
-
-func (a *bearingCheck) caseSteps(c *caseState, i int) []strength.Working {
-	share := c.shares[a.c.Level][a.i]
-	steps := append(a.p.shearCaseSteps(c, i, a.c.Level, a.i),
-		strength.Working{Symbol: "P_b", Value: share.Resultant * a.share, Unit: strength.Force, Equation: "ψ V", Source: "load of this plate"})
-	capacity := "P_bru"
-	if a.c.Level == strength.Limit {
-		capacity = "P_bry"
-	}
-	return append(steps, a.demandSteps(c, "P_b", share.Resultant*a.share, capacity, a.margin(c))...)
 }

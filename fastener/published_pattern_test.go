@@ -23,9 +23,22 @@ type wirePattern struct {
 	Plates      []wirePlate    `json:"plates"`
 	Rules       []string       `json:"rules"`
 	Interaction string         `json:"interaction"`
-	InPlane     string         `json:"in_plane"`
-	OutOfPlane  string         `json:"out_of_plane"`
-	Factors     struct {
+	Methods     []string       `json:"methods"`
+	Options     struct {
+		AISC struct {
+			Basis              string `json:"basis"`
+			DeformationAllowed bool   `json:"deformation_allowed"`
+			ApplySpecial       bool   `json:"apply_special"`
+		} `json:"aisc-360-j3"`
+		EN struct {
+			GammaM2      float64 `json:"gamma_m2"`
+			ApplySpecial bool    `json:"apply_special"`
+		} `json:"en-1993-1-8"`
+	} `json:"method_options"`
+	Packing    float64 `json:"packing_thickness"`
+	InPlane    string  `json:"in_plane"`
+	OutOfPlane string  `json:"out_of_plane"`
+	Factors    struct {
 		Ultimate float64 `json:"ultimate"`
 		Fitting  float64 `json:"fitting"`
 	} `json:"factors"`
@@ -44,6 +57,7 @@ type wireFastener struct {
 	Y                float64   `json:"y"`
 	Diameter         float64   `json:"diameter"`
 	Type             *wireType `json:"type"`
+	HoleDiameter     float64   `json:"hole_diameter"`
 	ShearPlanes      int       `json:"shear_planes"`
 	ShearStiffness   float64   `json:"shear_stiffness"`
 	TensionStiffness float64   `json:"tension_stiffness"`
@@ -61,6 +75,10 @@ type wireType struct {
 		Pitch        float64 `json:"pitch"`
 		InShearPlane bool    `json:"in_shear_plane"`
 	} `json:"thread"`
+	Head                string  `json:"head"`
+	HeadDiameter        float64 `json:"head_diameter"`
+	PropertyClass       string  `json:"property_class"`
+	PullThroughStrength float64 `json:"pull_through_strength"`
 }
 
 type wirePlate struct {
@@ -70,6 +88,7 @@ type wirePlate struct {
 	Outline          [][2]float64  `json:"outline"`
 	CountersinkDepth float64       `json:"countersink_depth"`
 	LoadShare        float64       `json:"load_share"`
+	AxisAngle        *float64      `json:"axis_angle"`
 }
 
 type wireMaterial struct {
@@ -79,7 +98,10 @@ type wireMaterial struct {
 	Source    string  `json:"source"`
 	Ftu       float64 `json:"ftu"`
 	Fty       float64 `json:"fty"`
+	Fsu       float64 `json:"fsu"`
+	Fcy       float64 `json:"fcy"`
 	E         float64 `json:"e"`
+	Ec        float64 `json:"ec"`
 	Bearing   []struct {
 		EOverD float64 `json:"e_over_d"`
 		Fbru   float64 `json:"fbru"`
@@ -108,17 +130,20 @@ func (w wirePattern) pattern(t *testing.T) (Pattern, strength.Factors, []Pattern
 		t.Fatalf("units %q", w.Units)
 	}
 	force, length, moment := s.force, s.length, s.of(strength.Moment)
-	p := Pattern{Stiffness: w.Stiffness, Interaction: w.Interaction, InPlane: w.InPlane, OutOfPlane: w.OutOfPlane}
+	p := Pattern{
+		Stiffness: w.Stiffness, Interaction: w.Interaction, InPlane: w.InPlane, OutOfPlane: w.OutOfPlane,
+		Methods: w.Methods, AISC: AISCOptions(w.Options.AISC), EN: ENOptions(w.Options.EN), PackingThickness: w.Packing * length,
+	}
 	for _, f := range w.Fasteners {
 		fastener := Fastener{
-			ID: f.ID, X: f.X * length, Y: f.Y * length, Diameter: f.Diameter * length,
+			ID: f.ID, HoleDiameter: f.HoleDiameter * length, X: f.X * length, Y: f.Y * length, Diameter: f.Diameter * length,
 			ShearPlanes: f.ShearPlanes, ShearStiffness: f.ShearStiffness, TensionStiffness: f.TensionStiffness,
 		}
 		fastener.Type = f.Type.decode(s)
 		p.Fasteners = append(p.Fasteners, fastener)
 	}
 	for _, k := range w.Plates {
-		plate := Plate{ID: k.ID, Thickness: k.Thickness * length, CountersinkDepth: k.CountersinkDepth * length, LoadShare: k.LoadShare}
+		plate := Plate{ID: k.ID, Thickness: k.Thickness * length, CountersinkDepth: k.CountersinkDepth * length, LoadShare: k.LoadShare, AxisAngle: k.AxisAngle}
 		for _, o := range k.Outline {
 			plate.Outline = append(plate.Outline, [2]float64{o[0] * length, o[1] * length})
 		}
@@ -151,6 +176,7 @@ func (w *wireType) decode(s scale) *Type {
 		Name: w.Name, Source: w.Source,
 		ShearStrength: w.ShearStrength * s.force, TensionStrength: w.TensionStrength * s.force,
 		Fsu: w.Fsu * stress, Ftu: w.Ftu * stress,
+		Head: w.Head, HeadDiameter: w.HeadDiameter * s.length, Class: w.PropertyClass, PullThroughStrength: w.PullThroughStrength * s.force,
 	}
 	if th := w.Thread; th != nil {
 		t.Thread = &Thread{th.Form, th.Pitch * s.length, th.InShearPlane}
@@ -163,7 +189,10 @@ func (w *wireMaterial) decode(s scale) *strength.Material {
 		return nil
 	}
 	stress := s.of(strength.Stress)
-	m := &strength.Material{Name: w.Name, Direction: w.Direction, Basis: w.Basis, Source: w.Source, Ftu: w.Ftu * stress, Fty: w.Fty * stress}
+	m := &strength.Material{
+		Name: w.Name, Direction: w.Direction, Basis: w.Basis, Source: w.Source, Ftu: w.Ftu * stress, Fty: w.Fty * stress,
+		Fsu: w.Fsu * stress, Fcy: w.Fcy * stress, E: w.E * stress, Ec: w.Ec * stress,
+	}
 	for _, b := range w.Bearing {
 		m.Bearing = append(m.Bearing, strength.BearingStrength{EOverD: b.EOverD, Fbru: b.Fbru * stress, Fbry: b.Fbry * stress})
 	}
@@ -256,9 +285,13 @@ func decodeStrict(t *testing.T, data []byte, into any) {
 }
 
 func TestPublishedPatterns(t *testing.T) {
-	files, err := filepath.Glob("../testdata/published/fastener-*.json")
-	if err != nil || len(files) == 0 {
-		t.Fatalf("no published cases: %v", err)
+	var files []string
+	for _, pattern := range []string{"fastener-*.json", "pattern-*.json"} {
+		found, err := filepath.Glob("../testdata/published/" + pattern)
+		if err != nil || len(found) == 0 {
+			t.Fatalf("no published cases %s: %v", pattern, err)
+		}
+		files = append(files, found...)
 	}
 	for _, name := range files {
 		data, err := os.ReadFile(name)

@@ -24,6 +24,30 @@ type Type struct {
 	ShearStrength, TensionStrength float64 // N, the shear on one plane
 	Fsu, Ftu                       float64 // MPa
 	Thread                         *Thread
+
+	Head         string  // of Heads; empty is protruding
+	HeadDiameter float64 // mm, mean across points and flats of head or nut
+	Class        string  // property class of a metric bolt: "8.8"
+	// PullThroughStrength in N is that of the head through its sheet, by test.
+	PullThroughStrength float64
+	Preload             *Preload
+}
+
+// The forms of head that methods distinguish.
+const (
+	HeadProtruding         = "protruding"
+	HeadRound              = "round"
+	HeadCountersunk        = "countersunk"       // of full height, a tension head
+	HeadCountersunkReduced = "countersunk-shear" // of reduced height, a shear head
+)
+
+// Heads returns the words for forms of head.
+func Heads() []string {
+	return []string{HeadProtruding, HeadRound, HeadCountersunk, HeadCountersunkReduced}
+}
+
+func (t *Type) countersunk() bool {
+	return t.Head == HeadCountersunk || t.Head == HeadCountersunkReduced
 }
 
 // Factors of the pitch in the tensile stress area of a thread.
