@@ -52,6 +52,17 @@ func marginStep(m strength.Margin, capacity string) []strength.Working {
 	return []strength.Working{{Symbol: "MS", Value: m.Margin, Equation: capacity + " / demand - 1", Source: "margin of safety", Mark: strength.Given}}
 }
 
+// compare is strength.Compare for an allowable that may be unknown.
+func compare(demand, allowable float64, why *strength.Message) strength.Margin {
+	if why == nil {
+		return strength.Compare(demand, allowable)
+	}
+	if demand > 0 {
+		return strength.Unknown(why)
+	}
+	return strength.Margin{}
+}
+
 // reason makes the pointer of an undetermined check, nil where there is a value.
 func reason(why strength.Message) *strength.Message {
 	if why.Empty() {
@@ -109,14 +120,7 @@ func (a *fixedCheck) load(c *caseState) float64 {
 }
 
 func (a *fixedCheck) margin(c *caseState) strength.Margin {
-	demand := a.load(c) * a.factor[c.level]
-	if a.why == nil {
-		return strength.Compare(demand, a.capacity)
-	}
-	if demand > 0 {
-		return strength.Unknown(a.why)
-	}
-	return strength.Margin{}
+	return compare(a.load(c)*a.factor[c.level], a.capacity, a.why)
 }
 
 func (a *fixedCheck) steps() []strength.Working {
