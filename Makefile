@@ -1,0 +1,39 @@
+# Every target explains itself: make help
+SHELL := /bin/bash
+.DEFAULT_GOAL := help
+export GOAMD64 := v1
+
+.PHONY: help
+help: ## Show this list
+	@grep -hE '^[a-z-]+:.*## ' $(MAKEFILE_LIST) | sed -E 's/^([a-z-]+):.*## /\1\t/' | expand -t 16
+
+.PHONY: test
+test: tools ## Run everything: format, vet, staticcheck, tests with the race detector on SQLite and Postgres, a little fuzzing
+	go run ./store/throwaway -- $(MAKE) --no-print-directory checks
+
+.PHONY: checks
+checks: lint # what runs while the throwaway Postgres is up
+	go test -race -timeout 15m ./...
+	go test -run '^$$' -fuzz '^FuzzRequests$$' -fuzztime 5s ./api
+
+.PHONY: lint
+lint: ## Check format, go vet and staticcheck
+	@unformatted="$$(go tool gofumpt -l .)"; if [ -n "$$unformatted" ]; then echo "not formatted (make format):"; echo "$$unformatted"; exit 1; fi
+	go vet ./...
+	go tool staticcheck ./...
+
+.PHONY: format
+format: ## Format the code
+	go tool gofumpt -w .
+
+.PHONY: build
+build: ## Build the program, static, as ./jointledger
+	CGO_ENABLED=0 go build -trimpath -o jointledger .
+
+.PHONY: bench
+bench: ## Measure the pure code
+	go test -run '^$$' -bench . -benchmem ./lug ./fastener ./service/... ./store
+
+.PHONY: tools
+tools: # what the tests need beside Go: a C compiler for the race detector, and Postgres
+	@deploy/test-tools.sh
