@@ -86,13 +86,6 @@ var (
 	eqBushY       = Equation{Number: "9-8", Symbol: "P_y.B", Text: "F_cy Dp t_b", Unit: strength.Force, Source: affdlSource, Mark: strength.FromMemory(95)}
 
 	eqCrossRatio = Equation{Symbol: "r_x", Text: "F_ty,cross / F_tu,cross", Unit: strength.None, Source: affdlSource + ", figure 9-8", Mark: strength.Derived}
-	eqDepth14    = Equation{Symbol: "h1", Text: "W/2 - o_y - D/2 cos(45)", Unit: strength.Length, Source: affdlSource + ", figure 9-8: from the bore 45° toward the body, parallel to the load, to the outline", Mark: strength.FromMemory(75)}
-	eqDepth4     = Equation{Symbol: "h4", Text: "W/2 + o_y - D/2 cos(45)", Unit: strength.Length, Source: affdlSource + ", figure 9-8: as h1, on the other side", Mark: strength.FromMemory(75)}
-	eqDepth2     = Equation{Symbol: "h2", Text: "W/2 - o_y - D/2", Unit: strength.Length, Source: affdlSource + ", figure 9-8: on the normal through the hole centre", Mark: strength.FromMemory(75)}
-	eqDepth3     = Equation{Symbol: "h3", Text: "min(c1, e) - D/2", Unit: strength.Length, Source: affdlSource + ", figure 9-8: the least radial depth of the head", Mark: strength.FromMemory(75)}
-	eqTowardPlus = Equation{Symbol: "o_y", Text: "o", Unit: strength.Length, Source: geometrySource + ": the offset toward the side that the load acts to", Mark: strength.Derived}
-	eqTowardLess = Equation{Symbol: "o_y", Text: "-o", Unit: strength.Length, Source: geometrySource + ": the offset toward the side that the load acts to", Mark: strength.Derived}
-	eqDepth      = Equation{Symbol: "h_av", Text: "6 / (3/h1 + 1/h2 + 1/h3 + 1/h4)", Unit: strength.Length, Source: affdlSource + ", figure 9-8", Mark: strength.FromMemory(95)}
 	eqDepthRatio = Equation{Symbol: "hav/D", Text: "h_av / D", Unit: strength.None, Source: affdlSource + ", figure 9-8", Mark: strength.FromMemory(95)}
 	eqTransverse = Equation{Symbol: "P_tru.L", Text: "min(K_tru F_tu,cross, y K_try F_ty,cross) D t_b", Unit: strength.Force, Source: affdlSource + ", transverse load", Mark: strength.FromMemory(95)}
 	eqOblique    = Equation{Symbol: "P_α", Text: "P_u.L / (|cosα|^1.6 + (P_u.L / P_tru.L)^1.6 |sinα|^1.6)^0.625", Unit: strength.Force, Source: affdlSource + ", oblique load", Mark: strength.FromMemory(95)}
@@ -103,9 +96,9 @@ var affdlEquations = gather(geometryEquations, []*Equation{
 	&eqEndRatio, &eqHoleRatio, &eqSideRatio, &eqYieldRatio, &eqYieldLower, &eqRatioFull, &eqRatioFrom, &eqHandbookLine,
 	&eqBearShort, &eqBearLong, &eqBearYShort, &eqBearYLong, &eqBearStress, &eqBearYStress, &eqBearStrong, &eqBearYield, &eqBearPush, &eqBearYPush,
 	&eqNetFactor, &eqNetStrain, &eqNetU, &eqNetY, &eqNetStrong, &eqNetYieldL, &eqLugStrong, &eqBushU, &eqBushY,
-	&eqCrossRatio, &eqTowardPlus, &eqTowardLess, &eqDepth14, &eqDepth2, &eqDepth3, &eqDepth4, &eqDepth, &eqDepthRatio, &eqTransverse,
+	&eqCrossRatio, &eqDepthRatio, &eqTransverse,
 	&eqOblique, &eqObliqueIn,
-}, bodyEquations, affdlJointEquations, affdlSingleEquations, pressEquations)
+}, depthEquations, bodyEquations, affdlJointEquations, affdlSingleEquations, pressEquations)
 
 // affdl is the method at work on one joint.
 type affdl struct {
@@ -117,10 +110,13 @@ type affdl struct {
 // affdlHead is a head with its strengths settled, in N on the head itself.
 type affdlHead struct {
 	*part
-	m      *affdl
-	along  [2]result // of a pull and of a push
-	across [2]result // of a transverse load toward +y and -y
-	lining result    // the bushing's ultimate
+	m *affdl
+	// By level (limit, ultimate) and way (pull, push), net section of a pull.
+	bearing [2][2]result
+	net     [2]result
+	along   [2]result // ultimate, of a pull and of a push
+	across  [2]result // ultimate, of a transverse load toward +y and -y
+	lining  result    // the bushing's ultimate
 	// The strengths to the power -1.6.
 	alongPower, acrossPower [2]float64
 }
@@ -164,8 +160,12 @@ func (m *affdl) sayYieldRatio() {
 // settleHead finds the strengths of a head in each direction.
 func (m *affdl) settleHead(p *part) *affdlHead {
 	h := &affdlHead{part: p, m: m}
-	h.along[0] = m.settle(h.pullStrength)
-	h.along[1] = m.settle(h.pushStrength)
+	for way := range 2 {
+		h.bearing[1][way], h.bearing[0][way] = m.settleBoth(func(s *sheet) (float64, float64) { return h.bears(s, way) })
+	}
+	h.net[1], h.net[0] = m.settleBoth(h.nets)
+	h.along[0] = h.bearing[1][0].lesser(h.net[1])
+	h.along[1] = h.bearing[1][1]
 	for hand := range h.across {
 		if hand == 1 && p.head.Offset == 0 {
 			h.across[1] = h.across[0]
@@ -185,10 +185,10 @@ func (m *affdl) settleHead(p *part) *affdlHead {
 
 // head adds the checks of one head.
 func (m *affdl) head(h *affdlHead) {
-	m.axially(h, strength.NetSection, strength.Ultimate, pullAlong, &eqNetStrong, func(s *sheet, _ *load) float64 { return h.netUltimate(s) })
-	m.axially(h, strength.NetSection, strength.Limit, pullAlong, &eqNetYieldL, func(s *sheet, _ *load) float64 { return h.netYield(s) })
-	m.axially(h, strength.Bearing, strength.Ultimate, along, &eqBearStrong, func(s *sheet, l *load) float64 { return h.bearingUltimate(s, l.way) })
-	m.axially(h, strength.Bearing, strength.Limit, along, &eqBearYield, func(s *sheet, l *load) float64 { return h.bearingYield(s, l.way) })
+	for level, at := range levels {
+		m.axially(h, strength.NetSection, at, h.net[level], result{}, pullAlong)
+		m.axially(h, strength.Bearing, at, h.bearing[level][0], h.bearing[level][1], along)
+	}
 	m.transverseCheck(h)
 	m.obliqueCheck(h)
 	m.lining(h)
@@ -196,25 +196,26 @@ func (m *affdl) head(h *affdlHead) {
 	m.pressFit(h)
 }
 
-// axially adds a check that an axial load exercises, by way of its direction.
-func (m *affdl) axially(h *affdlHead, mode strength.Mode, level strength.Level, on sides, e *Equation, of func(*sheet, *load) float64) {
-	allowable := func(s *sheet, l *load) float64 {
-		value := of(s, l)
-		symbol := e.Symbol
-		if l.way == 1 && e == &eqBearStrong {
-			symbol = eqBearPush.Symbol
-		}
-		return h.allow(s, symbol, value)
+// axially adds a check that an axial load exercises, from the strengths of a
+// pull and of a push.
+func (m *affdl) axially(h *affdlHead, mode strength.Mode, level strength.Level, pulled, pushed result, on sides) {
+	write := func(s *sheet, l *load) (ultimate, yield float64) { return h.bears(s, l.way) }
+	ends := [2][2]*Equation{{&eqBearYield, &eqBearYPush}, {&eqBearStrong, &eqBearPush}}
+	if mode == strength.NetSection {
+		write = func(s *sheet, _ *load) (ultimate, yield float64) { return h.nets(s) }
+		ends = [2][2]*Equation{{&eqNetYieldL}, {&eqNetStrong}}
 	}
-	m.check(h.member, mode, level, strength.Force, strength.ByRegulation, e, func(s *sheet) law {
-		k := law{sides: on, trace: func(s *sheet, l *load) { allowable(s, l) }}
-		for i, way := range [...]sides{pullAlong, pushAlong} {
-			if on&way != 0 {
-				k.along[i] = m.settle(func(s *sheet) float64 { return allowable(s, &load{sides: way, way: i}) })
-				s.rest(k.along[i])
-			}
+	end := ends[levelIndex(level)]
+	m.check(h.member, mode, level, strength.Force, strength.ByRegulation, end[0], func(s *sheet) law {
+		s.rest(pulled)
+		s.rest(pushed)
+		return law{
+			sides: on, along: [2]allowable{pulled.over(h.share), pushed.over(h.share)},
+			trace: func(s *sheet, l *load) {
+				ultimate, yield := write(s, l)
+				h.allow(s, end[l.way].Symbol, [...]float64{yield, ultimate}[levelIndex(level)])
+			},
 		}
-		return k
 	})
 }
 
@@ -320,7 +321,7 @@ func (h *affdlHead) bearingStress(s *sheet, way int) (ultimate, yield float64) {
 		s.find(strength.Warning, "cap-unknown", h.member, affdlSource,
 			"the material %q has no handbook bearing values, above which the bearing strength of e/D %.4g must not go", h.head.Material.Name, ratio)
 	}
-	if s.recording {
+	if s.recording() {
 		if hasU {
 			e.Text += ", F_bru"
 		}
@@ -333,41 +334,27 @@ func (h *affdlHead) bearingStress(s *sheet, way int) (ultimate, yield float64) {
 	return s.apply(&e, ultimate), s.apply(&ey, yield)
 }
 
-// bearingUltimate is P_bru.L of a pull or P_br.L of a push, in N on the head.
-func (h *affdlHead) bearingUltimate(s *sheet, way int) float64 {
-	stress, _ := h.bearingStress(s, way)
-	e := &eqBearStrong
+// bears is the bearing strength of a pull or of a push, at ultimate and at
+// limit, in N on the head.
+func (h *affdlHead) bears(s *sheet, way int) (ultimate, yield float64) {
+	ultimate, yield = h.bearingStress(s, way)
+	area := h.bearingDiameter(s) * h.bearingLength(s)
+	e, ey := &eqBearStrong, &eqBearYield
 	if way == 1 {
-		e = &eqBearPush
+		e, ey = &eqBearPush, &eqBearYPush
 	}
-	return h.peaked(s, e, stress*h.bearingDiameter(s)*h.bearingLength(s), peakBearing)
+	return h.peaked(s, e, ultimate*area, peakBearing), h.peaked(s, ey, yield*area, peakBearing)
 }
 
-func (h *affdlHead) bearingYield(s *sheet, way int) float64 {
-	_, stress := h.bearingStress(s, way)
-	e := &eqBearYield
-	if way == 1 {
-		e = &eqBearYPush
-	}
-	return h.peaked(s, e, stress*h.bearingDiameter(s)*h.bearingLength(s), peakBearing)
-}
-
-// netStress writes F_nu.L and F_ny.L in MPa.
-func (h *affdlHead) netStress(s *sheet) (ultimate, yield float64) {
+// nets is the strength of the net section at ultimate and at limit, in N on
+// the head.
+func (h *affdlHead) nets(s *sheet) (ultimate, yield float64) {
 	h.elongates(s)
 	ftu, fty := h.property(s, strength.Ftu), h.property(s, strength.Fty)
 	k := h.netFactor(s)
-	return s.apply(&eqNetU, k*ftu), s.apply(&eqNetY, k*fty)
-}
-
-func (h *affdlHead) netUltimate(s *sheet) float64 {
-	ultimate, yield := h.netStress(s)
-	return h.peaked(s, &eqNetStrong, min(ultimate, h.m.yieldRatio(s)*yield)*h.netArea(s), peakSection)
-}
-
-func (h *affdlHead) netYield(s *sheet) float64 {
-	_, yield := h.netStress(s)
-	return h.peaked(s, &eqNetYieldL, yield*h.netArea(s), peakSection)
+	ultimate, yield = s.apply(&eqNetU, k*ftu), s.apply(&eqNetY, k*fty)
+	over, area := h.m.yieldRatio(s), h.netArea(s)
+	return h.peaked(s, &eqNetStrong, min(ultimate, over*yield)*area, peakSection), h.peaked(s, &eqNetYieldL, yield*area, peakSection)
 }
 
 // netFactor is K_n of figure 9-4.
@@ -395,7 +382,7 @@ func (h *affdlHead) netFactor(s *sheet) float64 {
 		return c.take(s, "Kn", &chart, "K_n", a)
 	}
 	if len(c.net) == 0 {
-		s.lack(strength.Say("the curve set %s has no chart Kn", c.set.Name()))
+		s.lack(strength.Say("the curve set %s has no chart Kn", c.name))
 		return 0
 	}
 	ratio := r()
@@ -412,7 +399,7 @@ var eqNetBetween = Equation{Symbol: "K_n", Text: "K_n1 + (K_n2 - K_n1) (r - r_1)
 func (c *charts) between(s *sheet, r float64, a spot) float64 {
 	first, last := c.net[0].r, c.net[len(c.net)-1].r
 	if strength.Less(r, first) || strength.More(r, last) {
-		s.lack(strength.Say("r = F_ty/F_tu of %.4g is outside %.4g to %.4g, the range of the charts Kn of curve set %s", r, first, last, c.set.Name()))
+		s.lack(strength.Say("r = F_ty/F_tu of %.4g is outside %.4g to %.4g, the range of the charts Kn of curve set %s", r, first, last, c.name))
 		return 0
 	}
 	k := 0
@@ -426,43 +413,21 @@ func (c *charts) between(s *sheet, r float64, a spot) float64 {
 	lo := &c.net[k-1]
 	k1 := c.take(s, lo.name, &lo.chart, "K_n1", a)
 	k2 := c.take(s, hi.name, &hi.chart, "K_n2", a)
-	s.option("r_1", lo.r, "curve set "+c.set.Name()+", chart "+lo.name, strength.Given)
-	s.option("r_2", hi.r, "curve set "+c.set.Name()+", chart "+hi.name, strength.Given)
+	s.option("r_1", lo.r, "curve set "+c.name+", chart "+lo.name, strength.Given)
+	s.option("r_2", hi.r, "curve set "+c.name+", chart "+hi.name, strength.Given)
 	return s.apply(&eqNetBetween, k1+float64((r-lo.r)/(hi.r-lo.r)*(k2-k1)))
 }
 
 // pullStrength is P_u.L, pushStrength P_br.L, in N on the head.
 func (h *affdlHead) pullStrength(s *sheet) float64 {
-	return s.apply(&eqLugStrong, min(h.bearingUltimate(s, 0), h.netUltimate(s)))
+	bearing, _ := h.bears(s, 0)
+	net, _ := h.nets(s)
+	return s.apply(&eqLugStrong, min(bearing, net))
 }
 
-func (h *affdlHead) pushStrength(s *sheet) float64 { return h.bearingUltimate(s, 1) }
-
-// depth is h_av of a transverse load toward +y (hand 0) or -y (hand 1), in mm.
-// +y is the side to which the load acts; h1 and h4 lie behind the hole, where
-// every outline has parallel sides.
-func (h *affdlHead) depth(s *sheet, hand int) float64 {
-	var d [4]float64
-	if own := h.head.SectionDepths; own != nil {
-		for i := range d {
-			d[i] = s.input(h.member, [...]string{"h1", "h2", "h3", "h4"}[i], own[i], strength.Length, h.first+fieldDepths)
-		}
-	} else {
-		half, bore, end := h.width(s)/2, h.hole(s)/2, h.edge(s)
-		c1 := h.side(s)
-		toward := h.head.Offset
-		e := &eqTowardPlus
-		if hand == 1 {
-			toward, e = -toward, &eqTowardLess
-		}
-		s.apply(e, toward)
-		back := bore * math.Sqrt2 / 2
-		d = [4]float64{
-			s.apply(&eqDepth14, half-toward-back), s.apply(&eqDepth2, half-toward-bore),
-			s.apply(&eqDepth3, min(c1, end)-bore), s.apply(&eqDepth4, half+toward-back),
-		}
-	}
-	return s.apply(&eqDepth, 6/(3/d[0]+1/d[1]+1/d[2]+1/d[3]))
+func (h *affdlHead) pushStrength(s *sheet) float64 {
+	bearing, _ := h.bears(s, 1)
+	return bearing
 }
 
 // transverse is P_tru.L in N on the head, of a load square to the axis.

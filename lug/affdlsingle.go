@@ -58,9 +58,9 @@ func (h *affdlHead) peaked(s *sheet, e *Equation, even float64, where peak) floa
 	k := s.option(symbol, h.m.number(name), "method_options."+h.m.method.ID+"."+name, strength.Given)
 	own := *e
 	own.Mark = strength.Weakest(e.Mark, strength.FromMemory(80))
-	if s.recording {
+	if s.recording() {
 		own.Text = "(" + e.Text + ") / (1 + 6 μ / (" + symbol + " " + ts + "))"
-		own.Source += ", in single shear"
+		own.cited = e.source() + ", in single shear"
 	}
 	return s.apply(&own, even/(1+6*h.eccentricity(s)/(k*t)))
 }
@@ -132,7 +132,7 @@ func (h *affdlHead) eccentricTang(s *sheet) float64 {
 	}
 	mu := h.eccentricity(s)
 	e := eqTangEcc
-	if s.recording {
+	if s.recording() {
 		e.Text = "F_tu wT t / (1 + 6 μ / t)"
 		if h.bends() {
 			e.Text = "F_tu wT t / (1 + 6 |o| / wT + 6 μ / t)"

@@ -98,6 +98,7 @@ var chartRules = map[string]map[string]chartRule{
 		"Ktru": {along: "hav/D", between: []string{"r", betweenCurves}, alongLeast: 0, alongMost: 100, least: 0, most: 3, rises: true},
 		"Ktry": {along: "hav/D", between: []string{"r", betweenCurves}, alongLeast: 0, alongMost: 100, least: 0, most: 3, rises: true},
 	},
+	// gamma is told apart by r, the end's length over the thickness, (e - D/2)/t.
 	"melcon-hoblit": {
 		"Kbr":   {along: "e/D", between: []string{"D/t"}, alongLeast: 0.5, alongMost: 100, least: 0, most: 4, rises: true, byCurve: -1},
 		"Kt":    {along: "W/D", between: []string{betweenCurves}, alongLeast: 1, alongMost: 100, least: 0, most: 1},
@@ -105,7 +106,7 @@ var chartRules = map[string]map[string]chartRule{
 		"Kbry":  {along: "e/D", between: []string{"D/t"}, alongLeast: 0.5, alongMost: 100, least: 0, most: 4, rises: true},
 		"Ktru":  {along: "Aav/Abr", between: []string{betweenCurves}, alongLeast: 0, alongMost: 100, least: 0, most: 3, rises: true},
 		"Ktry":  {along: "Aav/Abr", between: []string{betweenCurves}, alongLeast: 0, alongMost: 100, least: 0, most: 3, rises: true},
-		"gamma": {along: "Pu/(D t Ftux)", between: []string{"(e/D - 1/2) D/t"}, alongLeast: 0, alongMost: 100, least: 0, most: 1},
+		"gamma": {along: "Pu/(D t Ftux)", between: []string{"r"}, alongLeast: 0, alongMost: 100, least: 0, most: 1},
 	},
 }
 

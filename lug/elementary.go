@@ -47,11 +47,6 @@ var elementaryEquations = gather(geometryEquations, []*Equation{
 	&eqNetUltimate, &eqNetYield, &eqShearOut, &eqRatioOwn, &eqRatioFull, &eqHandbookLine, &eqBearingUltimate, &eqBearingYield, &eqBushing,
 }, bodyEquations, pinEquations)
 
-var (
-	elementaryOblique = strength.Say("elementary computes axial loads only, and this one has a transverse part: choose a method with a transverse strength")
-	elementarySingle  = strength.Say("elementary takes no account of the eccentric moment of a joint in single shear: choose a method that does")
-)
-
 func elementary(b *builder) {
 	for _, p := range b.heads() {
 		elementaryHead(b, p)
@@ -63,8 +58,8 @@ func elementary(b *builder) {
 	beam := b.beam()
 	b.pinShear(beam)
 	if b.joint.SingleShear {
-		b.check(memberPin, strength.PinBending, strength.Ultimate, strength.Moment, strength.ByRegulation, &eqPinUltimate, func(s *sheet) law {
-			s.lack(elementarySingle)
+		b.check(memberPin, strength.PinBending, strength.Ultimate, strength.Moment, strength.ByRegulation, &eqPinFull, func(s *sheet) law {
+			b.bearsStraight(s)
 			return law{sides: anyWay}
 		})
 		return
@@ -84,35 +79,19 @@ func (b *builder) pinFactor() (k float64, source string) {
 
 // elementaryHead adds the checks of one head.
 func elementaryHead(b *builder, p *part) {
-	// axially settles a check that only an axial pull can exercise.
-	axially := func(mode strength.Mode, level strength.Level, e *Equation, strengthOf func(s *sheet) float64) {
-		b.check(p.member, mode, level, strength.Force, strength.ByRegulation, e, func(s *sheet) law {
-			b.bearsStraight(s)
-			allowable := p.allow(s, e.Symbol, s.apply(e, strengthOf(s)))
-			k := fixed(pull|transverse, allowable)
-			k.axialOnly = &elementaryOblique
-			return k
-		})
-	}
-	axially(strength.NetSection, strength.Ultimate, &eqNetUltimate, func(s *sheet) float64 {
+	const on = pull | transverse
+	b.axial(p, strength.NetSection, strength.Ultimate, strength.ByRegulation, on, &eqNetUltimate, func(s *sheet) float64 {
 		return p.property(s, strength.Ftu) * p.netArea(s)
 	})
-	axially(strength.NetSection, strength.Limit, &eqNetYield, func(s *sheet) float64 {
+	b.axial(p, strength.NetSection, strength.Limit, strength.ByRegulation, on, &eqNetYield, func(s *sheet) float64 {
 		return p.property(s, strength.Fty) * p.netArea(s)
 	})
-	axially(strength.ShearOut, strength.Ultimate, &eqShearOut, func(s *sheet) float64 {
+	b.axial(p, strength.ShearOut, strength.Ultimate, strength.ByRegulation, on, &eqShearOut, func(s *sheet) float64 {
 		return 2 * p.thickness(s) * p.shearOutLength(s) * p.property(s, strength.Fsu)
 	})
 	elementaryBearing(b, p, strength.Ultimate, strength.Fbru, &eqBearingUltimate)
 	elementaryBearing(b, p, strength.Limit, strength.Fbry, &eqBearingYield)
 	b.bushing(p)
-}
-
-// bearsStraight lacks strengths that an eccentric load would lower.
-func (b *builder) bearsStraight(s *sheet) {
-	if b.joint.SingleShear {
-		s.lack(elementarySingle)
-	}
 }
 
 // elementaryBearing adds bearing at one level. A pull bears toward the end, at
@@ -134,10 +113,11 @@ func elementaryBearing(b *builder, p *part, level strength.Level, property stren
 		if ratio := s.apply(&eqThinness, p.thickness(s)/p.bearingDiameter(s)); strength.Less(ratio, thinLug) {
 			s.lack(strength.Say("t/D %.4g is below %.4g, the least for which handbook bearing values hold", ratio, thinLug))
 		}
-		k := law{sides: anyWay, axialOnly: &elementaryOblique}
+		k := law{sides: anyWay, axialOnly: b.axialOnly()}
 		for i, way := range [...]sides{pullAlong, pushAlong} {
-			k.along[i] = b.settle(func(s *sheet) float64 { return allowable(s, &load{sides: way}) })
-			s.rest(k.along[i])
+			settled := b.settle(func(s *sheet) float64 { return allowable(s, &load{sides: way}) })
+			s.rest(settled)
+			k.along[i] = settled.known()
 		}
 		k.trace = func(s *sheet, l *load) {
 			if l.axial() {
@@ -167,7 +147,7 @@ func (p *part) handbookBearing(s *sheet, property strength.Property, at *Equatio
 	}
 	s.mark = strength.Weakest(s.mark, m.MarkOf(property))
 	given := func(symbol string, value float64, unit strength.Unit) {
-		if s.recording {
+		if s.recording() {
 			s.keep(strength.Working{
 				Member: p.member, Symbol: symbol, Value: value, Unit: unit, Source: materialSource(m), Mark: m.MarkOf(property),
 			})
@@ -181,7 +161,7 @@ func (p *part) handbookBearing(s *sheet, property strength.Property, at *Equatio
 	}
 	e := eqHandbookLine
 	e.Symbol = symbol
-	if s.recording {
+	if s.recording() {
 		given("r1", lo.EOverD, strength.None)
 		given("r2", hi.EOverD, strength.None)
 		given(symbol+"1", start, strength.Stress)

@@ -2,6 +2,7 @@ package lug
 
 import (
 	"math"
+	"slices"
 	"strings"
 
 	"jointledger/strength"
@@ -11,14 +12,19 @@ import (
 type findings []strength.Finding
 
 func (f *findings) add(severity strength.Severity, code, subject, source, format string, args ...any) {
+	f.keep(strength.Finding{
+		Severity: severity, Code: code, Subject: subject, Source: source, Message: strength.Say(format, args...),
+	})
+}
+
+// keep adds a finding unless its code was found of its subject before.
+func (f *findings) keep(found strength.Finding) {
 	for i := range *f {
-		if (*f)[i].Code == code && (*f)[i].Subject == subject {
+		if (*f)[i].Code == found.Code && (*f)[i].Subject == found.Subject {
 			return
 		}
 	}
-	*f = append(*f, strength.Finding{
-		Severity: severity, Code: code, Subject: subject, Source: source, Message: strength.Say(format, args...),
-	})
+	*f = append(*f, found)
 }
 
 // conclude says what concerns the whole joint, and what is left to the user.
@@ -27,6 +33,10 @@ func (p *Prepared) conclude(f *findings, read fieldSet) {
 	for _, part := range p.heads() {
 		part.findFit(f)
 		p.findBody(f, part)
+		part.concentration(&sheet{found: f})
+		if part.bushing != nil && !p.checked(part.bushingMember) {
+			f.add(strength.Note, "bushing-not-checked", part.bushingMember, "", "none of the methods checks the bushing")
+		}
 	}
 	p.findPin(f)
 	p.findUnread(f, read)
@@ -38,7 +48,7 @@ func (p *Prepared) conclude(f *findings, read fieldSet) {
 func (p *Prepared) fromUltimate(f *findings) {
 	limit := false
 	for i := range p.laws {
-		limit = limit || p.laws[i].demand[1].FromUltimate
+		limit = limit || p.checks[i].Level == strength.Limit && !p.laws[i].unloaded
 	}
 	count := 0
 	for i := range p.loads {
@@ -145,6 +155,9 @@ func (p *Prepared) findPin(f *findings) {
 	case c != nil && p.joint.Pin == nil:
 		f.add(strength.Warning, "pin-not-checked", memberPin, "statics", "there is no pin, so that the shear and bending of the joint's pin are not checked")
 	}
+	if c != nil && p.joint.Pin != nil && !p.checked(memberPin) {
+		f.add(strength.Warning, "pin-not-checked", memberPin, "", "none of the methods checks the pin")
+	}
 	if c == nil || p.joint.SingleShear {
 		return
 	}
@@ -152,6 +165,11 @@ func (p *Prepared) findPin(f *findings) {
 		f.add(strength.Note, "leg-sharing", memberClevis, "statics",
 			"each leg is taken with half the load; the gap of %v a side could go to one side, which loads the nearer leg more: leg_share says by how much", mm(c.Gap))
 	}
+}
+
+// checked reports whether a member has any check that counts.
+func (p *Prepared) checked(member string) bool {
+	return slices.ContainsFunc(p.checks, func(c strength.Check) bool { return c.Member == member && !c.Compared })
 }
 
 // findUnread lists the optional fields that no method read.

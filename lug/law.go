@@ -82,6 +82,10 @@ func direction(sin, cos float64) sides {
 	return obliquePush
 }
 
+// levels are the levels at which loads are given, in the order of a check's
+// factors.
+var levels = [2]strength.Level{strength.Limit, strength.Ultimate}
+
 func levelIndex(l strength.Level) int {
 	if l == strength.Ultimate {
 		return 1
@@ -105,10 +109,40 @@ func (b *builder) settle(write func(*sheet) float64) result {
 	return result{value: value, why: s.why, mark: s.mark, read: s.read}
 }
 
+// settleBoth runs a calculation of two numbers once.
+func (b *builder) settleBoth(write func(*sheet) (one, other float64)) (result, result) {
+	s := b.sheet()
+	one, other := write(s)
+	return result{one, s.why, s.mark, s.read}, result{other, s.why, s.mark, s.read}
+}
+
+// lesser is the lesser of two numbers, known when both are.
+func (r result) lesser(than result) result {
+	r.value = min(r.value, than.value)
+	r.mark = strength.Weakest(r.mark, than.mark)
+	r.read |= than.read
+	if r.why == nil {
+		r.why = than.why
+	}
+	return r
+}
+
+// over is the load on the joint with which a head of that share meets r.
+func (r result) over(share float64) allowable { return allowable{r.value / share, r.why} }
+
+// known drops how a number was found.
+func (r result) known() allowable { return allowable{r.value, r.why} }
+
 // rest notes that what is written next rests on a settled number.
 func (s *sheet) rest(r result) {
 	s.mark = strength.Weakest(s.mark, r.mark)
 	s.read |= r.read
+}
+
+// allowable is what a load meets, or the reason why it is not known.
+type allowable struct {
+	value float64
+	why   *strength.Message
 }
 
 // law is how a check meets a load case.
@@ -116,7 +150,7 @@ type law struct {
 	sides sides // the load exercises the check when it has one of these
 	// along are the allowables of a pull and of a push, or why there is none,
 	// where margin is nil.
-	along [2]result
+	along [2]allowable
 	// axialOnly says why there is no margin for a load with a transverse part;
 	// nil where along does not depend on the transverse part.
 	axialOnly *strength.Message
@@ -132,13 +166,15 @@ type law struct {
 	// ratio writes, instead of demand and allowable, the steps of a combined
 	// check at the factored load P_d. The demand is 1.
 	ratio func(s *sheet, l *load, factored float64)
+	// after writes what else follows from the demand.
+	after func(s *sheet, demand float64)
 	// unloaded is a check that no load has part in: trace writes its demand.
 	unloaded bool
 }
 
 // fixed compares the load with an allowable that no load case changes.
-func fixed(on sides, allowable float64) law {
-	return law{sides: on, along: [2]result{{value: allowable}, {value: allowable}}}
+func fixed(on sides, value float64) law {
+	return law{sides: on, along: [2]allowable{{value: value}, {value: value}}}
 }
 
 // Steps that every law ends with.

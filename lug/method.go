@@ -57,11 +57,16 @@ type Equation struct {
 	Unit   strength.Unit
 	Source string // document, section
 	Mark   strength.Mark
+
+	cited string // what source returns, kept by gather
 }
 
 // source names the document, the section and the equation.
 func (e *Equation) source() string {
-	if e.Number == "" {
+	switch {
+	case e.cited != "":
+		return e.cited
+	case e.Number == "":
 		return e.Source
 	}
 	return e.Source + ", equation " + e.Number
@@ -99,6 +104,10 @@ func (m *Method) option(name string) (Option, bool) {
 var registry = []Method{
 	elementary1,
 	affdl1,
+	melconHoblit1,
+	asmeBTH1,
+	aisc360D5,
+	en1993,
 }
 
 // Methods returns every method in every revision.
@@ -124,11 +133,13 @@ func weakestMark(equations []Equation) strength.Mark {
 	return weakest
 }
 
-// gather copies equations out of their variables into a method's list.
+// gather copies equations out of their variables into a method's list, once
+// their sources are written out.
 func gather(lists ...[]*Equation) []Equation {
 	var all []Equation
 	for _, list := range lists {
 		for _, e := range list {
+			e.cited = e.source()
 			all = append(all, *e)
 		}
 	}

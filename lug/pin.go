@@ -15,21 +15,23 @@ var (
 	eqPinShear   = Equation{Symbol: "V_u", Text: "A_p F_su", Unit: strength.Force, Source: "text-book strength of materials: a pin in shear, one plane", Mark: strength.Derived}
 	// With λ = 1/2 the arm is (t1/2 + t2/4 + g)/2, the form of the Stress
 	// Analysis Manual, AFFDL-TR-69-42, chapter 9, equation 9-13.
-	eqPinArm      = Equation{Symbol: "m", Text: "λ (t1/2 + g + λ t2/2)", Unit: strength.Length, Source: "statics: the greatest moment in the pin for each unit of load", Mark: strength.Derived}
-	eqPinFaceArm  = Equation{Symbol: "m_f", Text: "λ (t1/2 + g)", Unit: strength.Length, Source: "statics: the moment at the face of the lug for each unit of load", Mark: strength.Derived}
-	eqPinMoment   = Equation{Symbol: "M", Text: "P m", Unit: strength.Moment, Source: "statics", Mark: strength.Derived}
-	eqPinUltimate = Equation{Symbol: "allowable", Text: "k_b F_tu Z_p", Unit: strength.Moment, Source: "text-book strength of materials: a pin in bending", Mark: strength.Derived}
-	eqPinYield    = Equation{Symbol: "allowable", Text: "F_ty Z_p", Unit: strength.Moment, Source: "text-book strength of materials: a pin in bending, elastic", Mark: strength.Derived}
-	eqPinPlastic  = Equation{Symbol: "k_b", Text: "min(k, 16 (1 - (dp/Dp)^3) / (3 π (1 - (dp/Dp)^4)))", Unit: strength.None, Source: "a hollow pin reaches no more than its fully plastic moment", Mark: strength.Derived}
-	eqPinFull     = Equation{Symbol: "M_u", Text: "k_b F_tu Z_p", Unit: strength.Moment, Source: "text-book strength of materials: a pin in bending", Mark: strength.Derived}
+	eqPinArm     = Equation{Symbol: "m", Text: "λ (t1/2 + g + λ t2/2)", Unit: strength.Length, Source: "statics: the greatest moment in the pin for each unit of load", Mark: strength.Derived}
+	eqPinFaceArm = Equation{Symbol: "m_f", Text: "λ (t1/2 + g)", Unit: strength.Length, Source: "statics: the moment at the face of the lug for each unit of load", Mark: strength.Derived}
+	eqPinMoment  = Equation{Symbol: "M", Text: "P m", Unit: strength.Moment, Source: "statics", Mark: strength.Derived}
+	eqPinYield   = Equation{Symbol: "M_y", Text: "F_ty Z_p", Unit: strength.Moment, Source: "text-book strength of materials: a pin in bending, elastic", Mark: strength.Derived}
+	eqPinPlastic = Equation{Symbol: "k_b", Text: "min(k, 16 (1 - (dp/Dp)^3) / (3 π (1 - (dp/Dp)^4)))", Unit: strength.None, Source: "a hollow pin reaches no more than its fully plastic moment", Mark: strength.Derived}
+	eqPinFull    = Equation{Symbol: "M_u", Text: "k_b F_tu Z_p", Unit: strength.Moment, Source: "text-book strength of materials: a pin in bending", Mark: strength.Derived}
 	// The form is that of EN 1993-1-8 3.13.
 	eqPinBendingPart = Equation{Symbol: "R_M", Text: "P_d m_f / M_u", Unit: strength.None, Source: "moment at the face of the lug over its ultimate", Mark: strength.Derived}
 	eqPinShearPart   = Equation{Symbol: "R_V", Text: "P_d λ / V_u", Unit: strength.None, Source: "shear at the face of the lug over its ultimate", Mark: strength.Derived}
 	eqPinCombined    = Equation{Symbol: "allowable", Text: "1 / sqrt(R_M^2 + R_V^2)", Unit: strength.None, Source: "bending and shear act together at the face of the lug: (M/Mu)² + (V/Vu)² <= 1, the form of EN 1993-1-8 3.13", Mark: strength.Derived}
 )
 
+// eqMomentAllowed is the allowable of a check that is written in moments.
+var eqMomentAllowed = Equation{Symbol: "allowable", Unit: strength.Moment, Source: "moment of the pin", Mark: strength.Given}
+
 var pinEquations = []*Equation{
-	&eqPinArea, &eqPinModulus, &eqPinShear, &eqPinArm, &eqPinFaceArm, &eqPinMoment, &eqPinUltimate, &eqPinYield,
+	&eqPinArea, &eqPinModulus, &eqPinShear, &eqPinArm, &eqPinFaceArm, &eqPinMoment, &eqPinYield,
 	&eqPinPlastic, &eqPinFull, &eqPinBendingPart, &eqPinShearPart, &eqPinCombined,
 }
 
@@ -38,6 +40,8 @@ type beam struct {
 	pin         *Pin
 	lug, clevis *part
 	gap         float64
+	// peak gives γ, by which the load of the lug peaks toward its faces; nil: 1.
+	peak func(*sheet) float64
 }
 
 func (b *builder) beam() *beam {
@@ -83,6 +87,9 @@ func (b *beam) arms(s *sheet) (share, t1, g float64) {
 func (b *beam) arm(s *sheet) float64 {
 	share, t1, g := b.arms(s)
 	t2 := s.input(memberLug, "t2", b.lug.head.Thickness, strength.Length, fieldThickness)
+	if b.peak != nil {
+		return s.apply(&eqMHPeakArm, share*(t1/2+g+float64(b.peak(s)*share*t2)/2))
+	}
 	return s.apply(&eqPinArm, share*(t1/2+g+float64(share*t2)/2))
 }
 
@@ -119,29 +126,31 @@ func (b *builder) pinShear(beam *beam) {
 	})
 }
 
+// bends sets the pin's greatest moment against its capacity.
+func (b *beam) bends(s *sheet, symbol string, capacity float64) law {
+	arm := b.arm(s)
+	allowable := eqMomentAllowed
+	allowable.Text = symbol
+	s.apply(&allowable, capacity)
+	return law{
+		sides:   anyWay,
+		measure: eqPinMoment.Symbol,
+		margin: func(l *load, factor float64) strength.Margin {
+			return strength.Compare(factor*float64(l.Force*arm), capacity)
+		},
+		trace: func(s *sheet, l *load) { s.apply(&eqPinMoment, l.Force*arm) },
+	}
+}
+
 // pinBending checks the pin's greatest moment, at ultimate with k_b and at
 // limit elastically.
 func (b *builder) pinBending(beam *beam, k float64, kSource string, kMark strength.Mark) {
-	bending := func(level strength.Level, e *Equation, allowable func(*sheet) float64) {
-		b.check(memberPin, strength.PinBending, level, strength.Moment, strength.ByRegulation, e, func(s *sheet) law {
-			arm := beam.arm(s)
-			moment := allowable(s)
-			return law{
-				sides:   anyWay,
-				measure: "M",
-				margin: func(l *load, factor float64) strength.Margin {
-					return strength.Compare(factor*float64(l.Force*arm), moment)
-				},
-				trace: func(s *sheet, l *load) { s.apply(&eqPinMoment, l.Force*arm) },
-			}
-		})
-	}
-	bending(strength.Ultimate, &eqPinUltimate, func(s *sheet) float64 {
+	b.check(memberPin, strength.PinBending, strength.Ultimate, strength.Moment, strength.ByRegulation, &eqPinFull, func(s *sheet) law {
 		kb := beam.plasticFactor(s, k, kSource, kMark)
-		return s.apply(&eqPinUltimate, kb*float64(beam.property(s, strength.Ftu)*beam.modulus(s)))
+		return beam.bends(s, eqPinFull.Symbol, s.apply(&eqPinFull, kb*float64(beam.property(s, strength.Ftu)*beam.modulus(s))))
 	})
-	bending(strength.Limit, &eqPinYield, func(s *sheet) float64 {
-		return s.apply(&eqPinYield, beam.property(s, strength.Fty)*beam.modulus(s))
+	b.check(memberPin, strength.PinBending, strength.Limit, strength.Moment, strength.ByRegulation, &eqPinYield, func(s *sheet) law {
+		return beam.bends(s, eqPinYield.Symbol, s.apply(&eqPinYield, beam.property(s, strength.Fty)*beam.modulus(s)))
 	})
 }
 

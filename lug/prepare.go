@@ -21,6 +21,7 @@ type Prepared struct {
 	laws     []prepared
 	findings []strength.Finding
 	cautions []string
+	several  bool // more than one method
 }
 
 var _ strength.Calculation = (*Prepared)(nil)
@@ -28,11 +29,12 @@ var _ strength.Calculation = (*Prepared)(nil)
 // prepared is a check's law with what was settled about it.
 type prepared struct {
 	law
-	why    *strength.Message // without which there is no margin
-	factor [2]float64        // by the level of the load
-	demand [2]strength.Demand
-	write  func(*sheet) law
-	place  int // of its method in the request
+	why     *strength.Message // without which there is no margin
+	factor  [2]float64        // between the load and the demand, by the level of the load
+	write   func(*sheet) law
+	safety  strength.Safety
+	special bool // special factors act on a method's own factors too
+	place   int  // of its method in the request
 }
 
 // builder collects the checks of one method.
@@ -45,6 +47,7 @@ type builder struct {
 	read    fieldSet
 	found   *findings
 	special bool // special factors act on the method's own factors too
+	oblique *strength.Message
 }
 
 // Prepare settles a joint: it measures the geometry, finds every allowable
@@ -80,11 +83,12 @@ func Prepare(j Joint, choices []Choice, f strength.Factors, cases []LoadCase) (*
 		return nil, wrong
 	}
 
-	p := &Prepared{joint: j, factors: f, loads: make([]load, len(cases))}
+	p := &Prepared{joint: j, factors: f, loads: make([]load, len(cases)), several: len(choices) > 1}
 	for i := range cases {
 		p.loads[i] = newLoad(&cases[i])
 	}
 	p.place()
+	p.checks, p.laws = make([]strength.Check, 0, 32*len(choices)), make([]prepared, 0, 32*len(choices))
 	found := &findings{}
 	var read fieldSet
 	for i := range choices {
@@ -138,14 +142,13 @@ func (b *builder) check(member string, mode strength.Mode, level strength.Level,
 	}
 	s := b.sheet()
 	s.mark = source.Mark
-	k := prepared{write: write, place: b.place}
+	k := prepared{write: write, place: b.place, safety: safety, special: b.special}
 	k.law = write(s)
 	k.why = s.why
 	c.Mark = s.mark
 	b.read |= s.read
-	for i, at := range [...]strength.Level{strength.Limit, strength.Ultimate} {
-		k.demand[i] = b.factors.Demand(c, at, safety, b.special)
-		k.factor[i] = k.demand[i].Factor()
+	for i, at := range levels {
+		k.factor[i] = b.factors.Demand(c, at, safety, b.special).Factor()
 	}
 	b.checks = append(b.checks, c)
 	b.laws = append(b.laws, k)
@@ -226,15 +229,15 @@ func (p *Prepared) margin(i, c int) strength.Margin {
 func (p *Prepared) Workings(c int) []strength.Working {
 	s := p.fresh(c, "")
 	p.laws[c].write(s)
-	return s.lines
+	return s.record.lines
 }
 
 // fresh is a sheet on which the steps of a check are written to be read.
 func (p *Prepared) fresh(c int, loadCase string) *sheet {
 	check := &p.checks[c]
-	return &sheet{recording: true, heading: strength.Working{
+	return &sheet{record: &record{heading: strength.Working{
 		Member: check.Member, Method: check.Method, Mode: check.Mode, Level: check.Level, LoadCase: loadCase,
-	}}
+	}}}
 }
 
 // CaseWorkings returns the steps behind check c that load case i makes: the
@@ -249,33 +252,42 @@ func (p *Prepared) CaseWorkings(i, c int) []strength.Working {
 	s.input("", "P", l.Force, strength.Force, fieldForce)
 	s.input("", "α", l.angle, strength.Degrees, fieldAngle)
 	if k.why != nil {
-		return s.lines
+		return s.record.lines
 	}
 	if k.trace != nil {
 		k.trace(s, l)
 	}
 	if m.Status == strength.Undetermined {
-		return s.lines
+		return s.record.lines
 	}
-	demand := k.demand[l.level]
+	demand := p.factors.Demand(p.checks[c], l.Level, k.safety, k.special)
 	switch {
 	case k.unloaded:
 	case k.ratio != nil:
 		factored := k.factor[l.level] * l.Force
-		steps := demand.Workings(s.heading, p.factors, "P", factored, strength.Force)
+		steps := demand.Workings(s.record.heading, p.factors, "P", factored, strength.Force)
 		steps[len(steps)-1].Symbol = "P_d"
-		s.lines = append(s.lines, steps...)
+		s.record.lines = append(s.record.lines, steps...)
 		s.apply(&eqUnity, m.Demand)
 		k.ratio(s, l, factored)
 	default:
-		s.lines = append(s.lines, demand.Workings(s.heading, p.factors, cmp.Or(k.measure, "P"), m.Demand, p.checks[c].Unit)...)
+		s.record.lines = append(s.record.lines, demand.Workings(s.record.heading, p.factors, cmp.Or(k.measure, "P"), m.Demand, p.checks[c].Unit)...)
+	}
+	if k.after != nil {
+		k.after(s, m.Demand)
 	}
 	s.apply(&eqMargin, m.Margin)
-	return s.lines
+	return s.record.lines
 }
 
 // Findings returns what is to be said about the joint and its load cases.
-func (p *Prepared) Findings() []strength.Finding { return p.findings }
+func (p *Prepared) Findings() []strength.Finding {
+	all := findings(slices.Clone(p.findings))
+	if p.several {
+		p.findSpread(&all)
+	}
+	return all
+}
 
 // Cautions returns what the calculation leaves to the user.
 func (p *Prepared) Cautions() []string { return p.cautions }

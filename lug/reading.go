@@ -9,8 +9,9 @@ import (
 // charts are the curve set of one method in use, with the material curve that
 // the caller named.
 type charts struct {
-	set *CurveSet
-	net []netChart
+	set  *CurveSet
+	name string // of the set
+	net  []netChart
 	// curve is the number of the material curve, where charts have such curves.
 	curve      float64
 	curveGiven bool
@@ -20,12 +21,13 @@ type charts struct {
 func (b *builder) charts() *charts {
 	c := &charts{set: b.value("curve_set").Set}
 	if c.set != nil {
+		c.name = c.set.Name()
 		if c.net = c.set.net; c.net == nil {
 			c.net = c.set.netFamily()
 		}
 		if c.set.builtIn {
 			b.found.add(strength.Warning, "derived-curves", b.name, c.set.Document,
-				"the chart factors are those of the built-in set %s, derived for this project: they are not the printed charts, which a reader's controlled copy must confirm", c.set.Name())
+				"the chart factors are those of the built-in set %s, derived for this project: they are not the printed charts, which a reader's controlled copy must confirm", c.name)
 		}
 	}
 	if v, ok := b.choice.Options["material_curve"]; ok {
@@ -50,7 +52,7 @@ type spot struct {
 func (c *charts) read(s *sheet, name, symbol string, a spot) float64 {
 	chart, ok := c.set.Charts[name]
 	if !ok {
-		s.lack(strength.Say("the curve set %s has no chart %s", c.set.Name(), name))
+		s.lack(strength.Say("the curve set %s has no chart %s", c.name, name))
 		return 0
 	}
 	return c.take(s, name, &chart, symbol, a)
@@ -66,7 +68,7 @@ func (c *charts) take(s *sheet, name string, chart *Chart, symbol string, a spot
 		}
 	case betweenCurves:
 		if !c.curveGiven {
-			s.lack(strength.Say("chart %s of curve set %s has one curve for each material: the option material_curve must give its number", name, c.set.Name()))
+			s.lack(strength.Say("chart %s of curve set %s has one curve for each material: the option material_curve must give its number", name, c.name))
 			return 0
 		}
 		y, variable = s.option("curve", c.curve, "input: method_options material_curve", strength.Given), "curve"
@@ -75,23 +77,23 @@ func (c *charts) take(s *sheet, name string, chart *Chart, symbol string, a spot
 	}
 	r := chart.read(a.x, y, a.belowFirst)
 	if r.outsideOf != "" {
-		s.lack(strength.Say("%s %.4g is outside %.4g to %.4g, the range of chart %s of curve set %s", r.outsideOf, r.found, r.from, r.upTo, name, c.set.Name()))
+		s.lack(strength.Say("%s %.4g is outside %.4g to %.4g, the range of chart %s of curve set %s", r.outsideOf, r.found, r.from, r.upTo, name, c.name))
 		return 0
 	}
 	if r.below && chart.Between == "q" {
 		s.find(strength.Note, "below-curves", name, c.set.Document,
 			"q = F_tu/(E ε_u) of %.4g lies below the first curve of chart %s: the factor there, %.4g, is used as a lower bound", y, name, r.value)
 	}
-	mark := strength.FromCurveSet(c.set.Name())
+	mark := strength.FromCurveSet(c.name)
 	s.mark = strength.Weakest(s.mark, mark)
-	if !s.recording || !s.known() {
+	if !s.recording() || !s.known() {
 		return r.value
 	}
-	source := "curve set " + c.set.Name() + ", chart " + name
+	source := "curve set " + c.name + ", chart " + name
 	if chart.Figure != "" {
 		source += " (" + chart.Figure + ")"
 	}
-	w := s.heading
+	w := s.record.heading
 	w.Mark = mark
 	step := func(symbol string, value float64, equation, how string) {
 		w.Symbol, w.Value, w.Equation, w.Source = symbol, value, equation, source+how

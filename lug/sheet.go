@@ -7,14 +7,21 @@ import "jointledger/strength"
 // were read and the first value that was missing; and again, recording, when
 // somebody asks to see the steps.
 type sheet struct {
-	heading   strength.Working // member, method, mode, level, load case of each step
-	recording bool
-	lines     []strength.Working
-	mark      strength.Mark
-	read      fieldSet
-	why       *strength.Message // the first reason for which there is no value
-	found     *findings         // nil while recording: it was all said before
+	record *record // nil while only the numbers are wanted
+	mark   strength.Mark
+	read   fieldSet
+	why    *strength.Message // the first reason for which there is no value
+	found  *findings         // nil while recording: it was all said before
 }
+
+// record is what is written to be read.
+type record struct {
+	heading strength.Working // member, method, mode, level, load case of each step
+	lines   []strength.Working
+}
+
+// recording reports whether the steps will be read.
+func (s *sheet) recording() bool { return s.record != nil }
 
 // find says something about the joint that the calculation came across.
 func (s *sheet) find(severity strength.Severity, code, subject, source, format string, args ...any) {
@@ -26,9 +33,12 @@ func (s *sheet) find(severity strength.Severity, code, subject, source, format s
 // under writes what follows as steps of another member, until the function that
 // it returns is called.
 func (s *sheet) under(member string) (back func()) {
-	old := s.heading.Member
-	s.heading.Member = member
-	return func() { s.heading.Member = old }
+	if !s.recording() {
+		return func() {}
+	}
+	old := s.record.heading.Member
+	s.record.heading.Member = member
+	return func() { s.record.heading.Member = old }
 }
 
 // lack notes that the calculation has no value, and why. What is written after
@@ -45,8 +55,8 @@ func (s *sheet) known() bool { return s.why == nil }
 // apply writes the value of an equation and returns it.
 func (s *sheet) apply(e *Equation, value float64) float64 {
 	s.mark = strength.Weakest(s.mark, e.Mark)
-	if s.recording && s.known() {
-		w := s.heading
+	if s.recording() && s.known() {
+		w := s.record.heading
 		w.Symbol, w.Value, w.Unit, w.Equation, w.Source, w.Mark = e.Symbol, value, e.Unit, e.Text, e.source(), e.Mark
 		s.keep(w)
 	}
@@ -57,10 +67,10 @@ func (s *sheet) apply(e *Equation, value float64) float64 {
 // it. where is the field's path in the request.
 func (s *sheet) input(member, symbol string, value float64, unit strength.Unit, f field) float64 {
 	s.read.add(f)
-	if s.recording {
+	if s.recording() {
 		w := strength.Working{Member: member, Symbol: symbol, Value: value, Unit: unit, Source: "input: " + f.path()}
 		if f == fieldForce || f == fieldAngle {
-			w.LoadCase = s.heading.LoadCase
+			w.LoadCase = s.record.heading.LoadCase
 		}
 		s.keep(w)
 	}
@@ -70,8 +80,8 @@ func (s *sheet) input(member, symbol string, value float64, unit strength.Unit, 
 // option writes a number of the method's options.
 func (s *sheet) option(symbol string, value float64, source string, mark strength.Mark) float64 {
 	s.mark = strength.Weakest(s.mark, mark)
-	if s.recording {
-		w := s.heading
+	if s.recording() {
+		w := s.record.heading
 		w.Mode, w.Level = 0, 0
 		w.Symbol, w.Value, w.Source, w.Mark = symbol, value, source, mark
 		s.keep(w)
@@ -87,7 +97,7 @@ func (s *sheet) property(member string, m *strength.Material, p strength.Propert
 		return 0
 	}
 	s.mark = strength.Weakest(s.mark, m.MarkOf(p))
-	if s.recording {
+	if s.recording() {
 		unit := strength.Stress
 		if p == strength.Nu || p == strength.Elongation {
 			unit = strength.None
@@ -110,10 +120,10 @@ func materialSource(m *strength.Material) string {
 
 // keep adds a line unless it stands there already.
 func (s *sheet) keep(w strength.Working) {
-	for i := range s.lines {
-		if s.lines[i] == w {
+	for i := range s.record.lines {
+		if s.record.lines[i] == w {
 			return
 		}
 	}
-	s.lines = append(s.lines, w)
+	s.record.lines = append(s.record.lines, w)
 }
