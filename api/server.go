@@ -188,23 +188,20 @@ func (v *server) body(c echo.Context, media string) ([]byte, error) {
 	if err != nil || given != media {
 		return nil, &service.Problem{Code: service.UnsupportedMediaType, Detail: "The body must come as Content-Type: " + media + "."}
 	}
-	if request.ContentLength > MostBody {
-		return nil, tooLarge()
-	}
-	data, err := io.ReadAll(http.MaxBytesReader(c.Response(), request.Body, MostBody))
-	var large *http.MaxBytesError
-	switch {
-	case errors.As(err, &large):
-		return nil, tooLarge()
-	case err != nil:
+	data, err := io.ReadAll(io.LimitReader(request.Body, MostBody+1))
+	if err != nil {
 		return nil, &service.Problem{Code: service.Malformed, Detail: "The body could not be read to its end."}
+	}
+	if len(data) > MostBody {
+		// Many clients send all before they read: without this they would
+		// see a broken connection and not the reason.
+		if _, err := io.CopyN(io.Discard, request.Body, MostBody); err != nil && !errors.Is(err, io.EOF) {
+			v.options.Log.LogAttrs(request.Context(), slog.LevelDebug, "caller has gone", slog.String("error", err.Error()))
+		}
+		return nil, &service.Problem{Code: service.TooLarge, Detail: "The body is larger than 16 MiB."}
 	}
 	v.metrics.bodies.Observe(float64(len(data)))
 	return data, nil
-}
-
-func tooLarge() *service.Problem {
-	return &service.Problem{Code: service.TooLarge, Detail: "The body is larger than 16 MiB."}
 }
 
 // write sends a response.

@@ -1,6 +1,7 @@
 package service
 
 import (
+	"cmp"
 	"slices"
 
 	"jointledger/service/strictjson"
@@ -77,7 +78,7 @@ func value(x *float64) float64 {
 func (u Units) material(m *Material) strength.Material {
 	stress := u.scale(strength.Stress)
 	s := strength.Material{
-		Name: m.Name, Direction: m.Direction, Basis: m.Basis, Source: m.Source,
+		Name: cmp.Or(m.Name, "unnamed"), Direction: m.Direction, Basis: m.Basis, Source: m.Source,
 		Ftu: value(m.Ftu) * stress, Fty: value(m.Fty) * stress,
 		FtuCross: value(m.FtuCross) * stress, FtyCross: value(m.FtyCross) * stress,
 		Fcy: value(m.Fcy) * stress, Fsu: value(m.Fsu) * stress,
