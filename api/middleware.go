@@ -2,6 +2,7 @@ package api
 
 import (
 	"context"
+	"crypto/rand"
 	"fmt"
 	"log/slog"
 	"net"
@@ -21,7 +22,7 @@ import (
 func (v *server) observe(next echo.HandlerFunc) echo.HandlerFunc {
 	return func(c echo.Context) error {
 		start := time.Now()
-		id := newRequestID()
+		id := rand.Text() // our own: a caller's is not taken over
 		header := c.Response().Header()
 		header.Set(requestIDHeader, id)
 		header.Set(echo.HeaderXContentTypeOptions, "nosniff")

@@ -16,7 +16,6 @@ import (
 	"strings"
 	"time"
 
-	"github.com/google/uuid"
 	"github.com/labstack/echo/v4"
 	"github.com/labstack/echo/v4/middleware"
 
@@ -245,12 +244,3 @@ func (p *progress) Write(data []byte) (int, error) {
 }
 
 const requestIDHeader = "X-Request-Id"
-
-// newRequestID makes our own id; a caller's is not taken over.
-func newRequestID() string {
-	id, err := uuid.NewV7()
-	if err != nil {
-		return uuid.NewString()
-	}
-	return id.String()
-}
