@@ -19,6 +19,8 @@ import (
 	"testing"
 	"time"
 
+	"github.com/rogpeppe/go-internal/testscript"
+
 	"jointledger/store/storetest"
 )
 
@@ -31,7 +33,12 @@ func TestMain(m *testing.M) {
 		main()
 		return
 	}
-	os.Exit(m.Run())
+	testscript.Main(m, map[string]func(){"jointledger": main})
+}
+
+// The scripts in testdata/program use the command line as a person does.
+func TestScripts(t *testing.T) {
+	testscript.Run(t, testscript.Params{Dir: "testdata/program"})
 }
 
 // asProcess prepares the program with arguments.
