@@ -28,30 +28,36 @@ func (m Method) Name() string { return fmt.Sprintf("%s@%d", m.ID, m.Revision) }
 
 // The names that checks carry.
 const (
-	methodElastic     = "elastic-centroid@1"
-	methodCentre      = "instantaneous-centre@1"
-	methodShear       = "fastener-shear@1"
-	methodTension     = "fastener-tension@1"
-	methodBearing     = "plate-bearing@1"
-	methodShearOut    = "plate-shear-out@1"
-	methodPreload     = "nasa-std-5020-preload@1"
-	methodPullThrough = "pull-through@1"
-	methodAISC        = "aisc-360-j3@1"
-	methodEN          = "en-1993-1-8@1"
-	sourceShearOut    = "two planes from the hole at 40° to the load, as of a lug: 2 t L F_su"
-	sourcePullThrough = "the allowable given for this head and sheet"
-	methodInteract22  = "interaction-2-2@1"
-	sourceInPlane     = "NASA RP-1228, eccentric shear: direct share plus moment share about the centroid of stiffness"
-	sourceOutOfPlane  = "rigid attached member on linear springs about the centroid of their stiffness"
-	sourceSlotted     = "rigid attached member on springs that resist nothing along a slot"
-	sourceHeel        = "rigid attached member turning about the side or vertex of its outline that stays in contact"
-	sourceCentre      = "AISC Steel Construction Manual part 7, instantaneous centre of rotation"
-	sourceBearing     = "MIL-HDBK-5J section 1.4.7: bearing stress on D t, by straight line between e/D 1.5 and 2.0"
-	sourceShear       = "NASA RP-1228: F_su times the area in the shear plane, or the rated strength"
-	sourceTension     = "the part standard's rated strength, else F_tu times the tensile stress area"
-	sourceInteract22  = "ANC-5, Bruhn chapter D1: R_s² + R_t² = 1"
-	rangeBearing      = "e/D at least 1.5 (below it only tests count), t/D at least 0.18"
-	leastThicknessToD = 0.18
+	methodElastic      = "elastic-centroid@1"
+	methodCentre       = "instantaneous-centre@1"
+	methodShear        = "fastener-shear@1"
+	methodTension      = "fastener-tension@1"
+	methodBearing      = "plate-bearing@1"
+	methodShearOut     = "plate-shear-out@1"
+	methodPlateSection = "plate-net-section@1"
+	methodBlock        = "plate-block-tearing@1"
+	methodBuckling     = "inter-fastener-buckling@1"
+	sourcePlateSection = "stress across a row of holes, N/A + M c/I of the net section, as of a lug's net section with its bending"
+	sourceBlock        = "block tearing: F_tu on the net area in tension and F_su on that in shear"
+	sourceBuckling     = "inter-rivet buckling, F_ir = η c π² E_c/12 (t/p)²"
+	methodPreload      = "nasa-std-5020-preload@1"
+	methodPullThrough  = "pull-through@1"
+	methodAISC         = "aisc-360-j3@1"
+	methodEN           = "en-1993-1-8@1"
+	sourceShearOut     = "two planes from the hole at 40° to the load, as of a lug: 2 t L F_su"
+	sourcePullThrough  = "the allowable given for this head and sheet"
+	methodInteract22   = "interaction-2-2@1"
+	sourceInPlane      = "NASA RP-1228, eccentric shear: direct share plus moment share about the centroid of stiffness"
+	sourceOutOfPlane   = "rigid attached member on linear springs about the centroid of their stiffness"
+	sourceSlotted      = "rigid attached member on springs that resist nothing along a slot"
+	sourceHeel         = "rigid attached member turning about the side or vertex of its outline that stays in contact"
+	sourceCentre       = "AISC Steel Construction Manual part 7, instantaneous centre of rotation"
+	sourceBearing      = "MIL-HDBK-5J section 1.4.7: bearing stress on D t, by straight line between e/D 1.5 and 2.0"
+	sourceShear        = "NASA RP-1228: F_su times the area in the shear plane, or the rated strength"
+	sourceTension      = "the part standard's rated strength, else F_tu times the tensile stress area"
+	sourceInteract22   = "ANC-5, Bruhn chapter D1: R_s² + R_t² = 1"
+	rangeBearing       = "e/D at least 1.5 (below it only tests count), t/D at least 0.18"
+	leastThicknessToD  = 0.18
 )
 
 // Methods returns the methods of this package, compliance formulas aside, in
@@ -108,6 +114,27 @@ func Methods() []Method {
 			Title: "Shear-out of a plate along the load", Source: sourceShearOut,
 			Range: "toward the outline; holes in between are the matter of pitch rules", Mark: strength.Derived,
 			Equations: []Equation{{"1", "P_so = 2 F_su t L", sourceShearOut, strength.Derived}},
+		},
+		{
+			ID: "plate-net-section", Revision: 1, Kind: "strength",
+			Title: "Net section of a plate across its rows", Source: sourcePlateSection,
+			Range: "plates with an axis_angle; straight across each row, not along a zigzag between staggered rows; elastic fibre stress", Mark: strength.Derived,
+			Equations: []Equation{{"1", "σ = N / A_net + M c / I_net <= F_tu, F_ty", sourcePlateSection, strength.Derived}},
+		},
+		{
+			ID: "plate-block-tearing", Revision: 1, Kind: "strength",
+			Title: "Block tearing of a plate toward its free end", Source: sourceBlock,
+			Range: "plates with an axis_angle and fasteners in rows and columns", Mark: strength.Derived,
+			Equations: []Equation{{"1", "P_bt = F_tu A_nt + F_su A_nv", sourceBlock, strength.Derived}},
+		},
+		{
+			ID: "inter-fastener-buckling", Revision: 1, Kind: "strength",
+			Title: "Buckling of a plate between fasteners", Source: sourceBuckling,
+			Range: "plates with an axis_angle, in compression between rows", Mark: strength.FromMemory(85),
+			Equations: []Equation{
+				{"1", "F_e = c_f π² E_c/12 (t/p)², c_f 4, 3, 1.5, 1", sourceBuckling, strength.FromMemory(85)},
+				{"2", "F_ir = F_cy (1 - F_cy/(4 F_e)) above F_cy/2", "Johnson's parabola", strength.Derived},
+			},
 		},
 		{
 			ID: "nasa-std-5020-preload", Revision: 1, Kind: "strength",

@@ -84,6 +84,7 @@ type PreparedPattern struct {
 	centre      *instantaneous // nil unless asked for and possible
 	loads       []centred
 	outlines    [][]side
+	rows        []*rows   // of each plate, nil without an axis
 	extent      float64   // the longest distance between fasteners along their line
 	near        [][]int32 // the neighbours that clear distances may meet
 	checks      []strength.Check
@@ -198,6 +199,12 @@ func (p *PreparedPattern) addAssessments(edges [][]edgeDistance) {
 	if slices.Contains(methods, wordAISC) {
 		p.near = neighbourhoods(p.pattern.Fasteners)
 	}
+	p.rows = make([]*rows, len(p.pattern.Plates))
+	for k := range p.rows {
+		if slices.Contains(methods, wordElementary) {
+			p.rows[k] = p.newRows(k)
+		}
+	}
 	for i := range p.pattern.Fasteners {
 		if p.pattern.Fasteners[i].Type != nil {
 			for _, m := range methods {
@@ -217,8 +224,11 @@ func (p *PreparedPattern) addAssessments(edges [][]edgeDistance) {
 			for _, m := range methods {
 				switch m {
 				case wordElementary:
+					p.addNetSections(i, k)
 					p.addShearOut(i, k)
 					p.addBearing(i, k, edges[k])
+					p.addBlock(i, k)
+					p.addBuckling(i, k)
 				case wordAISC:
 					p.addAISCBearing(i, k)
 				case wordEN:
@@ -267,6 +277,13 @@ func (p *PreparedPattern) enter(i int) {
 		copy(ultimate, elastic)
 		s.ultimate = p.centre.share(p.sharing, p.loads[i], ultimate)
 		p.sharing.settleShears(p.loads[i], ultimate)
+	}
+	for _, r := range p.rows {
+		if r == nil {
+			continue
+		}
+		r.sum(strength.Limit, p, elastic)
+		r.sum(strength.Ultimate, p, s.shares[strength.Ultimate])
 	}
 }
 

@@ -280,10 +280,31 @@ func (p *PreparedPattern) shearCaseSteps(c *caseState, i int, level strength.Lev
 		return p.sharing.shearCaseSteps(p.cases[i], p.loads[i], fastener, share)
 	}
 	steps := p.centre.caseSteps(p, i)
-	step := patternStep("V", share.Resultant, strength.Force, "R / λ", "share at ultimate, scaled to the load", strength.FromMemory(95))
-	if share.Resultant == 0 {
-		step.Equation = ""
+	id, mark, moved := p.pattern.Fasteners[fastener].ID, strength.FromMemory(95), share.Resultant > 0
+	for _, s := range []struct {
+		symbol, equation string
+		value            float64
+	}{
+		{"V_x", "R δ_x / (Δ λ)", share.Shear[0]},
+		{"V_y", "R δ_y / (Δ λ)", share.Shear[1]},
+		{"V", "R / λ", share.Resultant},
+	} {
+		if !moved {
+			s.equation = "" // at the centre itself
+		}
+		step := patternStep(s.symbol, s.value, strength.Force, s.equation, "share at ultimate, scaled to the load", mark)
+		step.Fastener = id
+		steps = append(steps, step)
 	}
-	step.Fastener = p.pattern.Fasteners[fastener].ID
-	return append(steps, step)
+	return steps
+}
+
+// allShearCaseSteps are the steps to the shears of every fastener.
+func (p *PreparedPattern) allShearCaseSteps(c *caseState, i int, level strength.Level) []strength.Working {
+	steps := p.shearCaseSteps(c, i, level, 0)
+	for j := 1; j < len(p.pattern.Fasteners); j++ {
+		own := p.shearCaseSteps(c, i, level, j)
+		steps = append(steps, own[len(own)-3:]...) // V_x, V_y and V
+	}
+	return steps
 }

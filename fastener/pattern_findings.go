@@ -47,6 +47,13 @@ func (p *PreparedPattern) allFindings(edges [][]edgeDistance, near []neighbour) 
 			say(strength.Warning, "not-checked", "plate "+plate.ID, "", strength.Say(
 				"the material %q has no %s: shear-out toward the outline is not checked", plate.Material.Name, strength.Fsu))
 		}
+		if plate.AxisAngle == nil {
+			say(strength.Warning, "not-checked", "plate "+plate.ID, "", strength.Say(
+				"it has no axis_angle: sections across its rows, block tearing and buckling between fasteners are not checked"))
+		} else if p.outlines[k] == nil {
+			say(strength.Warning, "not-checked", "plate "+plate.ID, "", strength.Say(
+				"it has no outline: sections across its rows, block tearing and buckling between fasteners are not checked"))
+		}
 		halved := 0
 		for i := range p.pattern.Fasteners {
 			if plate.LoadShare == 0 && p.loadShare(i, k) < 1 {

@@ -161,6 +161,8 @@ func variants() map[string]func(*Pattern) {
 			p.AISC.Basis = "asd"
 			fill(p)
 		},
+		"rows":                 func(p *Pattern) { fill(p) },
+		"rows at the ultimate": func(p *Pattern) { fill(p); p.InPlane = "instantaneous-centre" },
 		"lrfd, far apart": func(p *Pattern) {
 			p.Methods, p.Stiffness = []string{"aisc-360-j3", "en-1993-1-8"}, "area"
 			fill(p)
