@@ -18,6 +18,8 @@ func (v *server) routes() []route {
 	return []route{
 		{http.MethodPost, "/v1/lugs", service.Reader, view, jsonMedia, v.calculate(service.Lug)},
 		{http.MethodPost, "/v1/fastener-groups", service.Reader, view, jsonMedia, v.calculate(service.FastenerGroup)},
+		{http.MethodPost, "/v1/splices", service.Reader, view, jsonMedia, v.calculate(service.Splice)},
+		{http.MethodPost, "/v1/splices/steps", service.Reader, view, jsonMedia, v.steps},
 
 		{http.MethodPost, "/v1/records", service.Analyst, nil, jsonMedia, v.record},
 		{http.MethodGet, "/v1/records", service.Reader, []string{
@@ -95,6 +97,14 @@ func (v *server) calculate(kind service.Kind) func(context.Context, *Request) (*
 		}
 		return encoded(v.service.Calculate(ctx, kind, r.Body, view))
 	}
+}
+
+func (v *server) steps(_ context.Context, r *Request) (*Response, error) {
+	view, err := viewOf(r.Query)
+	if err != nil {
+		return nil, err
+	}
+	return encoded(service.Steps(r.Body, view))
 }
 
 // idempotency reads the Idempotency-Key of a request that appends.

@@ -18,6 +18,7 @@ type Kind string
 const (
 	Lug           Kind = "lug"
 	FastenerGroup Kind = "fastener-group"
+	Splice        Kind = "splice"
 )
 
 // Words implements strictjson.Words.
@@ -54,6 +55,8 @@ type extras struct {
 	MethodOptions map[string]map[string]strictjson.Raw `json:"method_options,omitzero"`
 	Centroid      *[2]float64                          `json:"centroid,omitzero"`
 	Shares        []CaseShares                         `json:"shares,omitzero"`
+	Transfers     []CaseTransfers                      `json:"transfers,omitzero"`
+	Compared      []ComparedTransfers                  `json:"compared_transfers,omitzero"`
 }
 
 // kindEntry makes an empty document of a kind.
@@ -66,6 +69,7 @@ type kindEntry struct {
 var kinds = []kindEntry{
 	{Lug, func() document { return new(LugDocument) }},
 	{FastenerGroup, func() document { return new(GroupDocument) }},
+	{Splice, func() document { return new(SpliceDocument) }},
 }
 
 // lookup finds what is registered at run time rather than built in.

@@ -144,6 +144,12 @@ func fastenerMethods() []MethodItem {
 		}
 		items = append(items, item)
 	}
+	for _, c := range fastener.ComplianceFormulas() {
+		items = append(items, MethodItem{
+			ID: c.ID, Revision: c.Revision, Method: c.Name(), Kind: "compliance", Title: c.Title,
+			Source: c.Source, Range: c.Range, Mark: c.Mark.String(),
+		})
+	}
 	return items
 }
 

@@ -1,8 +1,6 @@
 package service
 
 import (
-	"slices"
-
 	"jointledger/fastener"
 	"jointledger/service/strictjson"
 	"jointledger/strength"
@@ -210,15 +208,9 @@ func (d *GroupDocument) prepare(f *faults) *prepared {
 	if len(f.list) > 0 {
 		return nil
 	}
-	var methods []string
-	for _, c := range p.Checks() {
-		if !slices.Contains(methods, c.Method) {
-			methods = append(methods, c.Method)
-		}
-	}
 	return &prepared{
 		assembly: assembly{
-			calculation: p, units: d.Units, methods: methods,
+			calculation: p, units: d.Units, methods: methodsOf(p),
 			cases: loadCases(d.LoadCases, func(c *GroupLoadCase) string { return c.ID }),
 		},
 		places: len(d.Fasteners),

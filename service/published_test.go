@@ -14,7 +14,7 @@ import (
 // published calls do with the kind and the input of every published case.
 func published(t *testing.T, do func(t *testing.T, kind service.Kind, input json.RawMessage)) {
 	t.Helper()
-	kinds := map[string]service.Kind{"lug": service.Lug, "fastener": service.FastenerGroup}
+	kinds := map[string]service.Kind{"lug": service.Lug, "fastener": service.FastenerGroup, "splice": service.Splice}
 	files, err := filepath.Glob("../testdata/published/*.json")
 	if err != nil || len(files) == 0 {
 		t.Fatal("no published cases: ", err)
