@@ -123,7 +123,7 @@ func (v *server) adapt(r route) echo.HandlerFunc {
 	return func(c echo.Context) error {
 		ctx := c.Request().Context()
 		request := &Request{
-			ID: c.Response().Header().Get(requestIDHeader), Param: c.Param,
+			ID: c.Response().Header().Get(requestIDHeader), Param: func(name string) string { return param(c, name) },
 			Header: c.Request().Header, Path: c.Request().URL.Path,
 		}
 		var err error
@@ -152,6 +152,20 @@ func (v *server) adapt(r route) echo.HandlerFunc {
 		}
 		return v.write(c, response)
 	}
+}
+
+// param is a parameter of the path as the caller meant it: Echo leaves it
+// escaped where the path was written with escapes that it did not need.
+func param(c echo.Context, name string) string {
+	value := c.Param(name)
+	if c.Request().URL.RawPath == "" {
+		return value
+	}
+	plain, err := url.PathUnescape(value)
+	if err != nil {
+		return value
+	}
+	return plain
 }
 
 // queryOf reads the query and refuses parameters that the route does not know.
