@@ -196,14 +196,12 @@ func (d *LugDocument) resolveOptions(m lug.Method, look lookup, f *faults) lug.O
 				options[o.Name] = v
 			}
 		} else if o.HasDefault {
-			options[o.Name] = o.Default
-			if o.Kind == lug.CurveSetRef && o.Default.Word != "" {
-				v, err := lookUpCurveSet(o.Default.Word, look)
-				if err != nil {
-					f.lookedUp(at, err)
-				}
-				options[o.Name] = v
+			v := o.Default
+			if v.Set != nil {
+				// By its name, and so in the record by its digest.
+				v.Word = v.Set.Name()
 			}
+			options[o.Name] = v
 		}
 		if v, ok := options[o.Name]; ok {
 			resolved[o.Name] = writeOption(o, v, raw)
