@@ -8,6 +8,16 @@ import (
 	"jointledger/service/strictjson"
 )
 
+// The kinds of terms.
+const (
+	termMethod     = "method"
+	termMaterial   = "material"
+	termCurveSet   = "curve-set"
+	termInline     = "inline-curve-set"
+	termCurveSetID = "curve-set-id"
+	termRecord     = "record"
+)
+
 // EntryOf makes what is stored of an entry from its canonical bytes alone, but
 // for its index. The columns repeat what the bytes say, for finding it.
 func EntryOf(canonical []byte) (Entry, error) {
@@ -42,13 +52,13 @@ func EntryOf(canonical []byte) (Entry, error) {
 	case entryCurveSet:
 		var b CurveSet
 		read(&b)
-		e.Columns = Columns{Terms: []Term{{"curve-set", b.ID + "@" + b.Version}, {"curve-set-id", b.ID}}}
+		e.Columns = Columns{Terms: []Term{{termCurveSet, b.ID + "@" + b.Version}, {termCurveSetID, b.ID}}}
 	case entryDecision:
 		var b decisionBody
 		read(&b)
 		e.Columns = Columns{Subject: Subject{Part: b.Part, Revision: b.Revision}, Verdict: b.Decision}
 		for _, r := range b.Records {
-			e.Terms = append(e.Terms, Term{"record", r.ID})
+			e.Terms = append(e.Terms, Term{termRecord, r.ID})
 		}
 	}
 	if err != nil {
@@ -93,7 +103,7 @@ func recordColumns(b *recordBody) (Columns, error) {
 		Verdict: result.Verdict, Margin: result.margin(),
 	}
 	for _, m := range result.ByMethod {
-		c.Terms = append(c.Terms, Term{"method", m.Method})
+		c.Terms = append(c.Terms, Term{termMethod, m.Method})
 	}
 	var input any
 	if err := strictjson.DecodeAny(b.Input, &input); err != nil {
@@ -123,11 +133,16 @@ func inputTerms(value any, found []Term) []Term {
 			switch name {
 			case "material":
 				if s := text(v, "name"); s != "" {
-					found = append(found, Term{"material", s})
+					found = append(found, Term{termMaterial, s})
 				}
 			case "curve_set":
 				if s := text(v, "id"); s != "" {
-					found = append(found, Term{"curve-set", s + "@" + text(v, "version")})
+					name := s + "@" + text(v, "version")
+					found = append(found, Term{termCurveSet, name})
+					if text(v, "digest") == "" {
+						// A whole set, which can have any name.
+						found = append(found, Term{termInline, name})
+					}
 				}
 			default:
 				found = inputTerms(v, found)

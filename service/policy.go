@@ -42,8 +42,8 @@ type Policy struct {
 // LeastMargin asks for a margin at joints whose name matches a pattern with
 // * for any characters and ? for one.
 type LeastMargin struct {
-	Joints string  `json:"joints" validate:"pattern"`
-	Margin float64 `json:"margin" validate:"signed"`
+	Joints string  `json:"joints" validate:"id"`
+	Margin float64 `json:"margin" validate:"amount"`
 }
 
 // Choice allows only some names, or bars some.
@@ -82,6 +82,9 @@ func NewPolicies(text []byte) (Policies, error) {
 				if _, twice := known[p.Name]; twice {
 					f.add(pointer("policies", i, "name"), "the name %.80q is taken", p.Name)
 				}
+				for _, name := range unknownMethods(p.Methods) {
+					f.add(pointer("policies", i, "methods"), "there is no method %.80q", name)
+				}
 				known[p.Name] = p
 			}
 		}
@@ -102,6 +105,24 @@ func NewPolicies(text []byte) (Policies, error) {
 	return known, nil
 }
 
+// unknownMethods finds what a choice names in vain: barring a misspelt method
+// would bar nothing.
+func unknownMethods(c *Choice) (unknown []string) {
+	if c == nil {
+		return nil
+	}
+	known := map[string]bool{}
+	for _, m := range append(lugMethods(), fastenerMethods()...) {
+		known[m.ID], known[m.Method] = true, true
+	}
+	for _, name := range slices.Concat(c.Allow, c.Bar) {
+		if !known[name] {
+			unknown = append(unknown, name)
+		}
+	}
+	return unknown
+}
+
 // digest is SHA-256 over the canonical form with the defaults written out.
 func (p Policy) digest() (string, error) {
 	canonical, err := strictjson.Canonical(p)
@@ -115,12 +136,21 @@ func (p Policy) digest() (string, error) {
 // leastMargin is what the policy asks at a joint, 0 when nothing more.
 func (p Policy) leastMargin(joint string) float64 {
 	for _, l := range p.LeastMargins {
-		// A joint's name may have slashes, which * must match too.
-		if ok, err := path.Match(strings.ReplaceAll(l.Joints, "/", "\x00"), strings.ReplaceAll(joint, "/", "\x00")); ok && err == nil {
+		if matches(l.Joints, joint) {
 			return l.Margin
 		}
 	}
 	return 0
+}
+
+// plainPattern leaves * and ? alone their meaning: they stand for a slash too,
+// and a bracket stands for itself.
+var plainPattern = strings.NewReplacer("/", "\x00", `\`, `\\`, "[", `\[`, "]", `\]`)
+
+// matches reports whether a whole name is of a pattern.
+func matches(pattern, name string) bool {
+	ok, err := path.Match(plainPattern.Replace(pattern), strings.ReplaceAll(name, "/", "\x00"))
+	return ok && err == nil
 }
 
 // refuses says why the choice does not let a name pass, empty when it does.

@@ -4,11 +4,15 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"math"
+	"strings"
 	"sync"
 	"time"
+	"unicode"
 
 	"jointledger/service/ledger"
 	"jointledger/service/strictjson"
+	"jointledger/strength"
 )
 
 // releaseRequest is what a vault's check-in hook asks.
@@ -41,6 +45,26 @@ const (
 	Release = "release"
 	Hold    = "hold"
 )
+
+// Text writes a decision in plain lines, the first of them release or hold.
+func (d *Decision) Text() string {
+	var b strings.Builder
+	b.WriteString(d.Decision + "\n")
+	for _, f := range d.Findings {
+		line := f.Joint + ": " + f.Code + ": " + f.Message
+		if f.Record != nil {
+			line += " [record " + *f.Record + "]"
+		}
+		// What a caller wrote must not end a line or steer a terminal.
+		b.WriteString(strings.Map(func(r rune) rune {
+			if unicode.IsControl(r) {
+				return ' '
+			}
+			return r
+		}, line) + "\n")
+	}
+	return b.String()
+}
 
 // ReleaseFinding is one reason to hold.
 type ReleaseFinding struct {
@@ -102,10 +126,34 @@ func (s *Service) Judge(ctx context.Context, caller Caller, body []byte, dryRun 
 	if err != nil {
 		return nil, false, err
 	}
-	now := s.clock.Now()
-	decided, err := s.judge(ctx, &request, policy, now)
+	for range mostJudgements {
+		decision, again, err := s.judgeOnce(ctx, caller, &request, policy, digest, dryRun, idempotency)
+		if !errors.Is(err, errMoved) {
+			return decision, again, s.fail(err)
+		}
+	}
+	return nil, false, s.fail(fmt.Errorf("%w: the records of part %s, revision %s, kept changing", ErrUnavailable, request.Part, request.Revision))
+}
+
+// mostJudgements is how often a part is judged anew because its records
+// changed meanwhile.
+const mostJudgements = 10
+
+// errMoved says that the records changed under a decision before it was in the
+// log.
+var errMoved = errors.New("the records changed meanwhile")
+
+// judgeOnce decides, and appends the decision if it still holds when its turn
+// in the log comes.
+func (s *Service) judgeOnce(ctx context.Context, caller Caller, request *releaseRequest, policy Policy, digest string, dryRun bool, idempotency Idempotency) (*Decision, bool, error) {
+	head, err := s.store.Head(ctx)
 	if err != nil {
-		return nil, false, s.fail(err)
+		return nil, false, err
+	}
+	now := s.clock.Now()
+	decided, err := s.judge(ctx, request, policy, now)
+	if err != nil {
+		return nil, false, err
 	}
 	decided.PolicyDigest = digest
 	decision := &Decision{
@@ -118,16 +166,18 @@ func (s *Service) Judge(ctx context.Context, caller Caller, body []byte, dryRun 
 	if err != nil {
 		return nil, false, err
 	}
-	done := s.log.append(&pending{ctx: ctx, entry: entry, answer: idempotency.answer(caller)})
+	done := s.log.append(&pending{
+		ctx: ctx, entry: entry, answer: idempotency.answer(caller), judges: true, admit: s.unmoved(head.Size, decided),
+	})
 	switch {
 	case done.err != nil:
-		return nil, false, s.fail(done.err)
+		return nil, false, done.err
 	case done.earlier != nil:
 		if err := idempotency.replay(done.earlier); err != nil {
 			return nil, false, err
 		}
 		if entry, err = s.store.Entry(ctx, done.earlier.Index); err != nil {
-			return nil, false, s.fail(err)
+			return nil, false, err
 		}
 		decision, err = decisionOf(entry)
 		return decision, true, err
@@ -139,6 +189,23 @@ func (s *Service) Judge(ctx context.Context, caller Caller, body []byte, dryRun 
 	s.watch.Decided(decided.Decision, codes)
 	decision.ID, decision.Index, decision.At = &entry.ID, &done.index, entry.At
 	return decision, false, nil
+}
+
+// unmoved admits a decision unless the log has grown, since the size at which
+// it was made, by something that it would have looked at.
+func (s *Service) unmoved(size int64, decided *decisionBody) func(context.Context) (State, error) {
+	rests := map[string]bool{}
+	for _, r := range decided.Records {
+		rests[r.ID] = true
+	}
+	return func(ctx context.Context) (State, error) {
+		return "", s.store.Entries(ctx, size, math.MaxInt64, func(e Entry) error {
+			if rests[e.Target] || e.Type == entryRecord && e.Part == decided.Part && e.Revision == decided.Revision {
+				return errMoved
+			}
+			return nil
+		})
+	}
 }
 
 // decisionOf shows an entry as the gate answered it.
@@ -231,7 +298,7 @@ func (d *decisionBody) look(j releaseJoint, r *judged, policy Policy, now time.T
 	case r.result.Verdict != "adequate":
 		hold("not-adequate", "the latest record is %s", r.result.Verdict)
 	case least > 0:
-		if m := r.result.margin(); m == nil || *m < least {
+		if m := r.result.margin(); m == nil || strength.Less(*m, least) {
 			hold("margin", "the least margin is below %g, which the policy asks for here", least)
 		}
 	}
@@ -249,7 +316,14 @@ func (d *decisionBody) look(j releaseJoint, r *judged, policy Policy, now time.T
 		}
 	}
 	for _, t := range r.entry.Terms {
-		if why := policy.CurveSets.refuses(t.Value); t.Kind == "curve-set" && why != "" {
+		why := ""
+		switch {
+		case t.Kind == termCurveSet:
+			why = policy.CurveSets.refuses(t.Value)
+		case t.Kind == termInline && policy.CurveSets != nil && len(policy.CurveSets.Allow) > 0:
+			why = "came with the input, so that its name says nothing"
+		}
+		if why != "" {
 			hold("curve-set", "the record rests on the curve set %s, which %s", t.Value, why)
 		}
 	}
@@ -295,11 +369,41 @@ func (s *Service) judgedRecords(ctx context.Context, part, revision string) ([]*
 		work.Go(func() { records[i], errs[i] = judgedRecord(e, about[e.ID]) })
 	}
 	work.Wait()
-	if err := errors.Join(errs...); err != nil {
+	inTree, err := s.inTree(ctx, entries, about)
+	if err != nil {
+		return nil, err
+	}
+	if err := errors.Join(append(errs, inTree)...); err != nil {
 		s.watch.Altered(err)
 		return nil, err
 	}
 	return records, nil
+}
+
+// inTree compares entries, whose leaves are those of their bytes, with the
+// leaves that the tree was grown on.
+func (s *Service) inTree(ctx context.Context, records []Entry, about map[string][]Entry) (altered, err error) {
+	var entries []Entry
+	for _, r := range records {
+		entries = append(append(entries, r), about[r.ID]...)
+	}
+	indexes := make([]int64, len(entries))
+	for i, e := range entries {
+		indexes[i] = ledger.LeafIndex(e.Index)
+	}
+	leaves, err := s.store.Hashes(ctx, indexes)
+	switch {
+	case errors.Is(err, ErrNotFound):
+		return fmt.Errorf("%w: the tree has no leaf of an entry", errAltered), nil
+	case err != nil:
+		return nil, err
+	}
+	for i, e := range entries {
+		if leaves[i] != e.Leaf {
+			altered = errors.Join(altered, fmt.Errorf("%w: entry %d (%s) is not the leaf that the tree has there", errAltered, e.Index, e.ID))
+		}
+	}
+	return altered, nil
 }
 
 // judgedRecord reads a record from its bytes and compares what was stored

@@ -25,7 +25,10 @@ type pending struct {
 	// admit checks, while nobody else can append, that the entry may be
 	// appended, and returns the state that it leaves its record in.
 	admit func(ctx context.Context) (State, error)
-	done  chan appended
+	// judges tells that the entry is a judgement of what the log says: nothing
+	// but other judgements may stand before it in its batch.
+	judges bool
+	done   chan appended
 }
 
 // appended is what became of a pending entry.
@@ -221,9 +224,9 @@ func (s *sequencer) answerEarlier(ctx context.Context, batch []*pending) ([]*pen
 // admit answers the entries that may not be appended. Two entries about one
 // record never stand in one batch, so that each is judged on what the log says.
 func (s *sequencer) admit(ctx context.Context, batch []*pending) (left []*pending, states []State, err error) {
-	about := map[string]bool{}
+	about, changes := map[string]bool{}, false
 	for i, p := range batch {
-		if p.entry.Target != "" && about[p.entry.Target] {
+		if p.entry.Target != "" && about[p.entry.Target] || p.judges && changes {
 			s.held = append(s.held, p)
 			continue
 		}
@@ -239,6 +242,7 @@ func (s *sequencer) admit(ctx context.Context, batch []*pending) (left []*pendin
 			}
 		}
 		left, states = append(left, p), append(states, state)
+		changes = changes || !p.judges
 	}
 	return left, states, nil
 }

@@ -125,8 +125,10 @@ type Columns struct {
 
 // Term is one name that a record rests on.
 type Term struct {
-	// Kind is method, material or curve-set of a record; an entry of the type
-	// curve-set has its own name as curve-set and its id as curve-set-id.
+	// Kind is method, material or curve-set of a record, and inline-curve-set
+	// beside curve-set where the set came with its input; record of a release
+	// decision; an entry of the type curve-set has its own name as curve-set
+	// and its id as curve-set-id.
 	Kind  string
 	Value string
 }

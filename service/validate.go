@@ -4,7 +4,6 @@ import (
 	"errors"
 	"fmt"
 	"math"
-	"path"
 	"reflect"
 	"strings"
 	"unicode"
@@ -60,10 +59,6 @@ var rules = map[string]rule{
 	"version": {"must be a version such as 0.1.0", func(fl validator.FieldLevel) bool {
 		_, ok := readVersion(fl.Field().String())
 		return ok
-	}},
-	"pattern": {"must be a pattern of 1 to 200 characters with * and ?", func(fl validator.FieldLevel) bool {
-		_, err := path.Match(fl.Field().String(), "")
-		return err == nil && isID(fl.Field().String())
 	}},
 	"mark": {"must be given, seen, derived, common practice or memory N%", func(fl validator.FieldLevel) bool {
 		_, ok := strength.ParseMark(fl.Field().String())
