@@ -2,6 +2,7 @@ package api
 
 import (
 	"context"
+	"mime"
 
 	"jointledger/service"
 )
@@ -100,10 +101,18 @@ func (v *server) releaseCheck(ctx context.Context, r *Request) (*Response, error
 		return nil, err
 	}
 	response, err := encoded(decision, nil)
-	if err == nil && again {
-		response.Header = map[string]string{"Idempotency-Replayed": "true"}
+	if err != nil {
+		return nil, err
 	}
-	return response, err
+	response.Header = map[string]string{"Vary": "Accept"}
+	// For a shell: no JSON to take apart.
+	if media, _, err := mime.ParseMediaType(r.Header.Get("Accept")); err == nil && media == "text/plain" {
+		response.ContentType, response.Body = textMedia, []byte(decision.Text())
+	}
+	if again {
+		response.Header["Idempotency-Replayed"] = "true"
+	}
+	return response, nil
 }
 
 func (v *server) registerCurveSet(ctx context.Context, r *Request) (*Response, error) {
