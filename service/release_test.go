@@ -372,7 +372,6 @@ func TestADecisionIsKept(t *testing.T) {
 // would.
 type altering struct {
 	service.Store
-	mu     sync.Mutex
 	record func(*service.Entry)
 	about  func(*service.Entry)
 	hashes func([]ledger.Hash)
