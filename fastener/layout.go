@@ -2,13 +2,14 @@ package fastener
 
 import (
 	"fmt"
+	"slices"
 	"strconv"
 	"strings"
 
 	"jointledger/strength"
 )
 
-// RuleSet is a named practice of layout.
+// RuleSet is a named practice of layout, built in or the caller's own.
 type RuleSet struct {
 	ID            string
 	Revision      int
@@ -20,42 +21,69 @@ type RuleSet struct {
 // Name is the set as records carry it, id@revision.
 func (r RuleSet) Name() string { return fmt.Sprintf("%s@%d", r.ID, r.Revision) }
 
-// Rule bounds one measure of the layout.
+// Rule bounds one measure of the layout by Diameters D + Thicknesses t + Length,
+// but not more than Cap. D is the fastener's diameter; t the thickness of the
+// plate, or of the thinnest where the measure is of no plate.
 type Rule struct {
-	Measure  Measure
-	Severity strength.Severity // of breaking it
-	// The bound is Diameters D + Thicknesses t.
+	Measure                Measure
+	Severity               strength.Severity // of breaking it
 	Diameters, Thicknesses float64
+	Length, Cap            float64 // mm; a cap of 0 is none
+	OfHole                 bool    // D is the hole's
+	// Table gives the bound by diameter in place of the rest, which holds for
+	// diameters above its last step.
+	Table []Step
+	Rows  Rows   // the patterns that it is for
+	When  string // a condition that a reader must judge
 }
+
+// Step is a bound in mm for diameters up to one.
+type Step struct{ UpTo, Bound float64 }
+
+// Rows tells single rows of fasteners from several.
+type Rows uint8
+
+// The rows that a rule is for; zero is any.
+const (
+	SingleRow Rows = iota + 1
+	SeveralRows
+)
 
 // Measure is what a rule measures, by the word that findings carry as code.
 type Measure string
 
-// The measures.
+// The measures, in the order of answers. Along and across are the direction of
+// a fastener's load, over all load cases: a neighbour within 45° of the line of
+// the load is along it.
 const (
-	// EdgeDistance is from a hole's centre to the nearest side, at least.
-	EdgeDistance Measure = "edge-distance"
-	// Pitch is from a fastener's centre to the nearest other, at least.
-	Pitch Measure = "pitch"
-	// CountersinkDepth is of a countersunk plate, at most.
-	CountersinkDepth Measure = "countersink-depth"
+	EdgeDistance      Measure = "edge-distance"       // hole centre to the nearest side, at least
+	EdgeDistanceAlong Measure = "edge-distance-along" // hole centre to the outline the way it pushes, at least
+	EdgeDistanceMost  Measure = "edge-distance-most"  // of the fastener nearest to a side, at most
+	Pitch             Measure = "pitch"               // to the nearest other, at least
+	PitchAlong        Measure = "pitch-along"         // to the nearest other along the load, at least
+	PitchAcross       Measure = "pitch-across"        // to the nearest other across the load, at least
+	PitchMost         Measure = "pitch-most"          // to the nearest other, at most
+	CountersinkDepth  Measure = "countersink-depth"   // of a countersunk plate, at most
 )
 
-// RuleSets returns the built-in sets, every revision ever released.
-func RuleSets() []RuleSet {
-	return []RuleSet{
-		{
-			ID: "common-practice", Revision: 1, Title: "Common practice of airframe layout",
-			Source: "common practice, no source", Mark: strength.CommonPractice,
-			Rules: []Rule{
-				{Measure: EdgeDistance, Severity: strength.Violation, Diameters: 1.5},
-				{Measure: EdgeDistance, Severity: strength.Warning, Diameters: 2},
-				{Measure: Pitch, Severity: strength.Violation, Diameters: 3},
-				{Measure: Pitch, Severity: strength.Warning, Diameters: 4},
-				{Measure: CountersinkDepth, Severity: strength.Violation, Thicknesses: 0.7},
-			},
-		},
-	}
+// Measures returns the measures in the order of answers.
+func Measures() []Measure {
+	return []Measure{EdgeDistance, EdgeDistanceAlong, EdgeDistanceMost, Pitch, PitchAlong, PitchAcross, PitchMost, CountersinkDepth}
+}
+
+// words for people, and whether the bound is the most.
+var measureWords = map[Measure]struct {
+	title string
+	most  bool
+}{
+	EdgeDistance:      {"edge distance", false},
+	EdgeDistanceAlong: {"edge distance along the load", false},
+	EdgeDistanceMost:  {"edge distance", true},
+	Pitch:             {"pitch", false},
+	PitchAlong:        {"pitch along the load", false},
+	PitchAcross:       {"pitch across the load", false},
+	PitchMost:         {"pitch", true},
+	CountersinkDepth:  {"countersink depth", true},
 }
 
 // FindRules finds a set by "id", the latest revision, or by "id@revision".
@@ -70,71 +98,110 @@ func FindRules(name string) (RuleSet, bool) {
 	return found, found.Revision > 0
 }
 
-// bound is the value that a rule asks for.
-func (r Rule) bound(d, t float64) float64 {
-	return float64(r.Diameters*d) + float64(r.Thicknesses*t)
-}
-
-// Asks writes the bound in symbols.
-func (r Rule) Asks() string {
-	if r.Thicknesses > 0 {
-		return fmt.Sprintf("%g t", r.Thicknesses)
+// Check says what keeps a caller's own set from being used; pointers start at
+// the set.
+func (r RuleSet) Check() []strength.Fault {
+	var faults []strength.Fault
+	fault := func(rule int, name, format string, args ...any) {
+		faults = append(faults, strength.Fault{Pointer: field("rules", rule, name), Message: strength.Say(format, args...)})
 	}
-	return fmt.Sprintf("%g D", r.Diameters)
+	if len(r.Rules) == 0 {
+		faults = append(faults, strength.Fault{Pointer: "/rules", Message: strength.Say("a rule set needs at least one rule")})
+	}
+	for i, rule := range r.Rules {
+		if !slices.Contains(Measures(), rule.Measure) {
+			fault(i, "measure", "%q is not known; allowed are %q", string(rule.Measure), Measures())
+		}
+		if rule.Severity < strength.Violation || rule.Severity > strength.Note {
+			fault(i, "severity", "allowed are violation, warning and note")
+		}
+		if rule.Diameters < 0 || rule.Thicknesses < 0 || rule.Length < 0 || rule.Cap < 0 {
+			fault(i, "diameters", "diameters, thicknesses, length and cap are not negative")
+		} else if rule.Diameters+rule.Thicknesses+rule.Length == 0 {
+			fault(i, "diameters", "one of diameters, thicknesses and length must be more than 0")
+		}
+	}
+	return faults
 }
 
-// worst returns the severest broken rule of a measure; each measure is at
-// least its bound, or at most where most is set.
-func (r RuleSet) worst(measure Measure, found, d, t float64, most bool) (Rule, bool) {
+// bound is the value that a rule asks for, in mm.
+func (r Rule) bound(f *Fastener, t float64) float64 {
+	d := 0.0
+	if f != nil {
+		d = f.Diameter
+		if r.OfHole {
+			d = f.hole()
+		}
+		for _, step := range r.Table {
+			if strength.AtMost(d, step.UpTo) {
+				return step.Bound
+			}
+		}
+	}
+	b := float64(r.Diameters*d) + float64(r.Thicknesses*t) + r.Length
+	if r.Cap > 0 {
+		b = min(b, r.Cap)
+	}
+	return b
+}
+
+// Asks writes the bound in symbols: D the diameter, D_h the hole, t the
+// thickness, lengths in mm.
+func (r Rule) Asks() string {
+	var terms []string
+	d := "D"
+	if r.OfHole {
+		d = "D_h"
+	}
+	if r.Diameters > 0 {
+		terms = append(terms, fmt.Sprintf("%.4g %s", r.Diameters, d))
+	}
+	if r.Thicknesses > 0 {
+		terms = append(terms, fmt.Sprintf("%g t", r.Thicknesses))
+	}
+	if r.Length > 0 {
+		terms = append(terms, fmt.Sprintf("%g mm", r.Length))
+	}
+	asks := strings.Join(terms, " + ")
+	if r.Cap > 0 {
+		asks = fmt.Sprintf("min(%s, %g mm)", asks, r.Cap)
+	}
+	if len(r.Table) > 0 {
+		last := r.Table[len(r.Table)-1]
+		asks = fmt.Sprintf("by table up to D %g mm, above it %s", last.UpTo, asks)
+	}
+	switch r.Rows {
+	case SingleRow:
+		asks += ", single row"
+	case SeveralRows:
+		asks += ", several rows"
+	}
+	if r.When != "" {
+		asks += ", " + r.When
+	}
+	return asks
+}
+
+// worst returns the severest broken rule of a measure.
+func (r RuleSet) worst(measure Measure, found float64, f *Fastener, t float64, rows Rows) (Rule, bool) {
 	var worst Rule
 	for _, rule := range r.Rules {
-		broken := strength.Less(found, rule.bound(d, t))
-		if most {
-			broken = strength.More(found, rule.bound(d, t))
+		if rule.Measure != measure || rule.Rows != 0 && rule.Rows != rows {
+			continue
 		}
-		if rule.Measure == measure && broken && (worst.Severity == 0 || rule.Severity < worst.Severity) {
+		bound := rule.bound(f, t)
+		broken := strength.Less(found, bound)
+		if measureWords[measure].most {
+			broken = strength.More(found, bound)
+		}
+		if broken && (worst.Severity == 0 || rule.Severity < worst.Severity) {
 			worst = rule
 		}
 	}
 	return worst, worst.Severity != 0
 }
 
-// layoutFindings holds a pattern against a set of rules.
-func (p *PreparedPattern) layoutFindings(set RuleSet, edges [][]edgeDistance, near []neighbour) []strength.Finding {
-	var findings []strength.Finding
-	report := func(rule Rule, subject string, m strength.Message) {
-		findings = append(findings, strength.Finding{
-			Severity: rule.Severity, Code: string(rule.Measure), Subject: subject, Message: m,
-			Source: set.Name() + ": " + set.Source,
-		})
-	}
-	for i, f := range p.pattern.Fasteners {
-		subject := "fastener " + f.ID
-		d := f.Diameter
-		for k, plate := range p.pattern.Plates {
-			if edges[k] == nil {
-				continue
-			}
-			e := edges[k][i].e
-			if rule, broken := set.worst(EdgeDistance, e, d, plate.Thickness, false); broken {
-				report(rule, subject, strength.Say("edge distance %v (%.4g D) in plate %q is less than %v (%s)",
-					strength.Length.Of(e), e/d, plate.ID, strength.Length.Of(rule.bound(d, plate.Thickness)), rule.Asks()))
-			}
-		}
-		if near[i].index < 0 {
-			continue
-		}
-		if rule, broken := set.worst(Pitch, near[i].distance, d, 0, false); broken {
-			report(rule, subject, strength.Say("pitch %v (%.4g D) to fastener %q is less than %v (%s)",
-				strength.Length.Of(near[i].distance), near[i].distance/d, p.pattern.Fasteners[near[i].index].ID,
-				strength.Length.Of(rule.bound(d, 0)), rule.Asks()))
-		}
-	}
-	for _, plate := range p.pattern.Plates {
-		if rule, broken := set.worst(CountersinkDepth, plate.CountersinkDepth, 0, plate.Thickness, true); broken {
-			report(rule, "plate "+plate.ID, strength.Say("countersink depth %v is more than %v (%s)",
-				strength.Length.Of(plate.CountersinkDepth), strength.Length.Of(rule.bound(0, plate.Thickness)), rule.Asks()))
-		}
-	}
-	return findings
+// measures reports whether the set has a rule on one of the measures.
+func (r RuleSet) measures(some ...Measure) bool {
+	return slices.ContainsFunc(r.Rules, func(rule Rule) bool { return slices.Contains(some, rule.Measure) })
 }

@@ -81,6 +81,9 @@ func (p *PreparedPattern) inputFaults() []strength.Fault {
 		if f.Type == nil {
 			continue
 		}
+		if d := f.Type.Diameter; d > 0 && (strength.Less(f.Diameter, d) || strength.More(f.Diameter, d)) {
+			fault(field("fasteners", i, "diameter"), "found %v, but type %q is of %v", strength.Length.Of(f.Diameter), f.Type.Name, strength.Length.Of(d))
+		}
 		word(field("fasteners", i, "type/head"), f.Type.Head, append([]string{""}, Heads()...))
 		if b := f.Type.Preload; b != nil {
 			if b.Nominal == 0 && (b.Torque == 0 || b.NutFactor == 0) {

@@ -19,7 +19,7 @@ type block struct {
 func (p *PreparedPattern) blocks(r *rows) []block {
 	c := &r.sections[len(r.sections)-1]
 	lo, hi := slices.Min(r.w), slices.Max(r.w)
-	t := r.transverse
+	t := r.thickness
 	origin := p.pattern.Fasteners[0]
 	// gap is the length along a way from a point, less holes that it runs through.
 	gap := func(s, w, ds, dw, length float64) float64 {

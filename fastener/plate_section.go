@@ -13,13 +13,13 @@ import (
 // its axis, from the free end to where the plate is held or loaded. What the
 // fasteners up to a station put on the plate passes through the section there.
 type rows struct {
-	plate      int
-	cos, sin   float64
-	order      []int32   // fasteners by station
-	s, w       []float64 // of each fastener, along and across the axis
-	sections   []section
-	upTo       [strength.Ultimate + 1][]passing // of each in order
-	transverse float64                          // t
+	plate     int
+	cos, sin  float64
+	order     []int32   // fasteners by station
+	s, w      []float64 // of each fastener, along and across the axis
+	sections  []section
+	upTo      [strength.Ultimate + 1][]passing // of each in order
+	thickness float64                          // t
 }
 
 // passing are the sums of what the fasteners up to one put on the plate: along
@@ -49,7 +49,7 @@ func (p *PreparedPattern) newRows(k int) *rows {
 		return nil
 	}
 	n := len(p.pattern.Fasteners)
-	r := &rows{plate: k, order: make([]int32, n), s: make([]float64, n), w: make([]float64, n), transverse: plate.Thickness}
+	r := &rows{plate: k, order: make([]int32, n), s: make([]float64, n), w: make([]float64, n), thickness: plate.Thickness}
 	r.cos, r.sin = plate.axis()
 	origin := p.pattern.Fasteners[0]
 	for i, f := range p.pattern.Fasteners {

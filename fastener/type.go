@@ -25,6 +25,8 @@ type Type struct {
 	Fsu, Ftu                       float64 // MPa
 	Thread                         *Thread
 
+	// Diameter in mm is that of a type that belongs to one; 0: any.
+	Diameter     float64
 	Head         string  // of Heads; empty is protruding
 	HeadDiameter float64 // mm, mean across points and flats of head or nut
 	Class        string  // property class of a metric bolt: "8.8"
