@@ -236,3 +236,20 @@ func TestCurveSetOfARequest(t *testing.T) {
 		}
 	}
 }
+
+// The depths of an offset hole depend on which side the load acts to. W 60,
+// D 25, hole 5 mm toward +y: toward +y h1 = 30 - 5 - 8.83883 = 16.16117,
+// h2 = 30 - 5 - 12.5 = 12.5, h3 = 25 - 12.5 = 12.5, h4 = 30 + 5 - 8.83883 =
+// 26.16117; toward -y h1 and h4 change places and h2 = 22.5.
+func TestDepthsOfAnOffsetHole(t *testing.T) {
+	back := 12.5 * math.Sqrt2 / 2
+	plus := 6 / (3/(25-back) + 1/12.5 + 1/12.5 + 1/(35-back))
+	minus := 6 / (3/(35-back) + 1/22.5 + 1/12.5 + 1/(25-back))
+	for _, c := range []struct{ offset, angle, want float64 }{{5, 90, plus}, {5, 270, minus}, {-5, 90, minus}, {-5, -90, plus}} {
+		j := bare()
+		j.Lug.Width, j.Lug.Offset = 60, c.offset
+		if got := workingOf(t, j, nil, c.angle, strength.Transverse, "h_av"); math.Abs(got-c.want) > 1e-9 {
+			t.Errorf("offset %g at %g°: %.6f, by hand %.6f", c.offset, c.angle, got, c.want)
+		}
+	}
+}

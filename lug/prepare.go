@@ -185,11 +185,19 @@ func (p *Prepared) sort() {
 			cmp.Compare(a.Mode, b.Mode),
 		)
 	})
-	checks, laws := make([]strength.Check, len(order)), make([]prepared, len(order))
-	for to, from := range order {
-		checks[to], laws[to] = p.checks[from], p.laws[from]
+	// The permutation is applied in place, cycle by cycle.
+	for start := range order {
+		check, law := p.checks[start], p.laws[start]
+		at := start
+		for order[at] != start {
+			from := order[at]
+			p.checks[at], p.laws[at] = p.checks[from], p.laws[from]
+			order[at] = at
+			at = from
+		}
+		p.checks[at], p.laws[at] = check, law
+		order[at] = at
 	}
-	p.checks, p.laws = checks, laws
 }
 
 // Checks returns the checks in the order of answers. Not to be changed.

@@ -1,0 +1,127 @@
+package lug_test
+
+import (
+	"math"
+	"strings"
+	"testing"
+
+	"jointledger/lug"
+	"jointledger/strength"
+	"pgregory.net/rapid"
+)
+
+func tolerance(t testing.TB, pointer string, nominal, minus, plus float64) lug.Tolerance {
+	t.Helper()
+	set, ok := lug.LengthAt(pointer)
+	if !ok {
+		t.Fatalf("no length at %s", pointer)
+	}
+	return lug.Tolerance{Pointer: pointer, Nominal: nominal, Minus: minus, Plus: plus, Set: set}
+}
+
+// Each mode takes its own worst corner. Thickness 12 ± 0.1, hole 25 +0.2 -0:
+// net section at 11.9 and 25.2: 450 (80 - 25.2) 11.9 = 293,454 N; bearing at
+// 11.9 and 25: 720 x 25 x 11.9 = 214,200 N (at 25.2 it is 714.92 x 25.2 x 11.9).
+func TestWorstCorners(t *testing.T) {
+	lengths := []lug.Tolerance{
+		tolerance(t, "/lug/thickness", 12, 0.1, 0.1), tolerance(t, "/lug/hole_diameter", 25, 0, 0.2),
+	}
+	p, wrong := lug.PrepareToleranced(bare(), lengths, methods("elementary"), usual(), at(50000, 0))
+	if wrong != nil {
+		t.Fatal(wrong)
+	}
+	out, nominal := make([]strength.Margin, len(p.Checks())), make([]strength.Margin, len(p.Checks()))
+	p.Margins(0, out)
+	p.NominalMargins(0, nominal)
+	for k, c := range p.Checks() {
+		var want, usual float64
+		var corner string
+		switch {
+		case c.Level == strength.Limit:
+			continue
+		case c.Mode == strength.NetSection:
+			want, usual, corner = 293454, 297000, "at /lug/thickness 11.9, /lug/hole_diameter 25.2"
+		case c.Mode == strength.Bearing:
+			want, usual, corner = 214200, 216000, "at /lug/thickness 11.9, /lug/hole_diameter 25"
+		default:
+			continue
+		}
+		if math.Abs(out[k].Allowable-want) > 1e-6 || math.Abs(nominal[k].Allowable-usual) > 1e-6 || render(p.Corner(0, k)) != corner {
+			t.Errorf("%s: %g (%s), nominal %g", c.Mode, out[k].Allowable, render(p.Corner(0, k)), nominal[k].Allowable)
+		}
+		if w, ok := working(p.CaseWorkings(0, k), "allowable"); !ok || w.Value != out[k].Allowable {
+			t.Errorf("%s: the workings are of another corner: %v", c.Mode, w.Value)
+		}
+	}
+}
+
+func TestToleranceFaults(t *testing.T) {
+	for _, c := range []struct {
+		name    string
+		lengths []lug.Tolerance
+		pointer string
+		words   string
+	}{
+		{"negative", []lug.Tolerance{tolerance(t, "/lug/width", 80, -1, 1)}, "/lug/width/minus", "below zero"},
+		{"all of it", []lug.Tolerance{tolerance(t, "/lug/thickness", 12, 12, 1)}, "/lug/thickness/minus", "leaves nothing"},
+		{"a pin that does not fit at a corner", []lug.Tolerance{
+			tolerance(t, "/pin/diameter", 24.9, 0.1, 0.1), tolerance(t, "/lug/hole_diameter", 25, 0.1, 0.1),
+		}, "/pin/diameter", "/lug/hole_diameter 24.9"},
+	} {
+		j := bare()
+		j.Pin = &lug.Pin{Diameter: 24.9, Material: steel()}
+		_, wrong := lug.PrepareToleranced(j, c.lengths, methods("elementary"), usual(), at(1, 0))
+		found := false
+		for _, f := range wrong {
+			found = found || f.Pointer == c.pointer && strings.Contains(render(f.Message), c.words)
+		}
+		if !found {
+			t.Errorf("%s: %v", c.name, wrong)
+		}
+	}
+	seven := make([]lug.Tolerance, lug.MostTolerances+1)
+	for i := range seven {
+		seven[i] = tolerance(t, "/lug/width", 80, 1, 1)
+	}
+	if _, wrong := lug.PrepareToleranced(bare(), seven, methods("elementary"), usual(), at(1, 0)); len(wrong) != 1 {
+		t.Errorf("seven tolerances: %v", wrong)
+	}
+	for _, pointer := range []string{"/lug/material", "/lug/taper_angle", "/lug", ""} {
+		if _, ok := lug.LengthAt(pointer); ok {
+			t.Errorf("%q is a length", pointer)
+		}
+	}
+}
+
+// No margin is above the nominal one, and each is that of the joint built at
+// the corner that is named.
+func TestCornersAreTheWorst(t *testing.T) {
+	rapid.Check(t, func(r *rapid.T) {
+		j := drawJoint(r)
+		lengths := []lug.Tolerance{
+			tolerance(t, "/lug/thickness", j.Lug.Thickness, 0.01*j.Lug.Thickness, 0.01*j.Lug.Thickness),
+			tolerance(t, "/clevis/gap", j.Clevis.Gap, 0, 0.1*j.Clevis.Gap),
+			tolerance(t, "/pin/diameter", j.Pin.Diameter, 0.005*j.Pin.Diameter, 0),
+		}
+		p, wrong := lug.PrepareToleranced(j, lengths, everyMethod(), usual(), at(20000, drawAngle(r)))
+		if wrong != nil {
+			return
+		}
+		out, nominal := make([]strength.Margin, len(p.Checks())), make([]strength.Margin, len(p.Checks()))
+		p.Margins(0, out)
+		p.NominalMargins(0, nominal)
+		for k, c := range p.Checks() {
+			if settled(nominal[k]) && settled(out[k]) && out[k].Margin > nominal[k].Margin {
+				r.Fatalf("%+v: %g above the nominal %g", c, out[k].Margin, nominal[k].Margin)
+			}
+			if nominal[k].Status > out[k].Status {
+				r.Fatalf("%+v: %s, nominal %s", c, out[k].Status, nominal[k].Status)
+			}
+			if settled(out[k]) {
+				if w, ok := working(p.CaseWorkings(0, k), "margin"); !ok || w.Value != out[k].Margin {
+					r.Fatalf("%+v: the workings have the margin %g, the check %g", c, w.Value, out[k].Margin)
+				}
+			}
+		}
+	})
+}
