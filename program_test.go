@@ -106,11 +106,11 @@ func (s *server) stop(t testing.TB, signal syscall.Signal) error {
 	}
 }
 
-var client = &http.Client{Timeout: 20 * time.Second}
+var httpClient = &http.Client{Timeout: 20 * time.Second}
 
 func get(t testing.TB, url string) (int, []byte) {
 	t.Helper()
-	response, err := client.Get(url)
+	response, err := httpClient.Get(url)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -132,7 +132,7 @@ func post(url string, body []byte, key string) (*http.Response, []byte, error) {
 	if key != "" {
 		request.Header.Set("Idempotency-Key", key)
 	}
-	response, err := client.Do(request)
+	response, err := httpClient.Do(request)
 	if err != nil {
 		return nil, nil, err
 	}
@@ -296,7 +296,7 @@ func TestPostgresLostAndBack(t *testing.T) {
 		var status int
 		var header http.Header
 		if body == "" {
-			response, err := client.Get(s.url + path)
+			response, err := httpClient.Get(s.url + path)
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -375,7 +375,7 @@ func TestTermDrains(t *testing.T) {
 	request.Header.Set("Content-Type", "application/json")
 	answered := make(chan int, 1)
 	go func() {
-		response, err := client.Do(request)
+		response, err := httpClient.Do(request)
 		if err != nil {
 			t.Error(err)
 			answered <- 0
