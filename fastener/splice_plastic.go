@@ -47,7 +47,7 @@ func newPlastic(k *stack, s *Splice) *plasticSharing {
 		if q.byArea {
 			q.weight[i] = float64(row.Count) * row.Diameter * row.Diameter
 		}
-		sums[k.pair[i]] += q.weight[i]
+		sums[k.pair[i]] += float64(q.weight[i])
 	}
 	for i := range q.weight {
 		q.weight[i] /= sums[k.pair[i]]

@@ -83,7 +83,7 @@ func (q *stepSearch) set(y []float64) bool {
 func (q *stepSearch) volume() float64 {
 	sum := 0.0
 	for i := range q.thickness {
-		sum += q.bayVolume(i)
+		sum += float64(q.bayVolume(i))
 	}
 	return sum
 }
@@ -243,7 +243,7 @@ func (q *stepSearch) starts() [][]float64 {
 		variable(func(f freeBay) float64 { return f.middle }),
 		variable(func(f freeBay) float64 {
 			share := q.scarf(f.span)
-			return math.Log(math.Exp(f.middle+f.by)*share + math.Exp(f.middle-f.by)*(1-share))
+			return math.Log(float64(math.Exp(f.middle+f.by)*share) + float64(math.Exp(f.middle-f.by)*(1-share)))
 		}),
 	}
 }
