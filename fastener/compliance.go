@@ -44,6 +44,7 @@ type ComplianceFormula struct {
 	// formula's forms.
 	Title, Source, Range string
 	Mark                 strength.Mark
+	Equations            []Equation
 	// DoubleShear tells that there is a form for double shear.
 	DoubleShear bool
 

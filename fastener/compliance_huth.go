@@ -22,6 +22,9 @@ var huth = ComplianceFormula{
 	Source: sourceHuth,
 	Range:  "bolted or riveted metal, bolted carbon-epoxy; single shear, double shear with equal straps",
 	Mark:   strength.FromMemory(90), DoubleShear: true,
+	Equations: []Equation{
+		{"1", "C = ((t_1 + t_2)/(2 d))^a (b/n) [1/(t_1 E_1) + 1/(n t_2 E_2) + 1/(2 t_1 E_f) + 1/(2 n t_2 E_f)], n 1 in single and 2 in double shear; a 2/3, b 3.0 bolted; a 2/5, b 2.2 riveted; a 2/3, b 4.2 bolted-composite", sourceHuth, strength.FromMemory(90)},
+	},
 	single: huthForm, double: huthForm,
 }
 

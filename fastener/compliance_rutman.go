@@ -29,6 +29,10 @@ var rutman = ComplianceFormula{
 	Source: sourceRutman,
 	Range:  "single shear, elastic, plates that do not rotate",
 	Mark:   strength.Derived, needsNu: true,
+	Equations: []Equation{
+		{"1", "k_j = t_j/(1/E_j + 1/E_f), r_j = t_j³/12/(1/E_j + 1/E_f)", sourceRutman, strength.Seen},
+		{"2", "C = 1/k_1 + 1/k_2 + l/(κ G A) + m²/r_1 + (l - m)²/r_2 + l ((m - l/2)² + l²/12)/(E_f I), m = (l/r_2 + l²/(2 E_f I))/(1/r_1 + 1/r_2 + l/(E_f I)), l = (t_1 + t_2)/2", sourceRutman + "; closed form by least work", strength.Derived},
+	},
 	single: rutmanSingle,
 }
 

@@ -15,6 +15,9 @@ var swift = ComplianceFormula{
 	Source: sourceSwift,
 	Range:  "single shear; constants of aluminium fasteners, a separate fastener modulus being a generalisation",
 	Mark:   strength.FromMemory(85),
+	Equations: []Equation{
+		{"1", "C = 5/(d E_f) + 0.8 (1/(t_1 E_1) + 1/(t_2 E_2))", sourceSwift, strength.FromMemory(85)},
+	},
 	single: swiftSingle,
 }
 

@@ -32,6 +32,10 @@ var tateRosenfeld = ComplianceFormula{
 	Source: sourceTate,
 	Range:  "elastic, no slip; double shear with equal straps, else the single-shear form of later papers",
 	Mark:   strength.FromMemory(90), DoubleShear: true, needsNu: true,
+	Equations: []Equation{
+		{"double shear", "C_b = (2 t_2 + t_1)/(3 G A) + (8 t_2³ + 16 t_2² t_1 + 8 t_2 t_1² + t_1³)/(192 E_f I) + (2 t_2 + t_1)/(t_2 t_1 E_f) + 1/(t_2 E_2) + 2/(t_1 E_1), C = C_b/2 on the whole load", sourceTate, strength.FromMemory(95)},
+		{"single shear", "C = 1/(E_f t_1) + 1/(E_f t_2) + 1/(E_1 t_1) + 1/(E_2 t_2) + 32 (t_1 + t_2)(1 + ν_f)/(9 E_f π d²) + 8 (t_1³ + 5 t_1² t_2 + 5 t_1 t_2² + t_2³)/(5 E_f π d⁴)", sourceTateSingle, strength.FromMemory(90)},
+	},
 	single: tateSingle, double: tateDouble,
 }
 

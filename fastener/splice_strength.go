@@ -2,7 +2,6 @@ package fastener
 
 import (
 	"math"
-	"strings"
 
 	"jointledger/strength"
 )
@@ -48,11 +47,10 @@ func spliceMethods() []Method {
 
 // rowCheck compares one demand with one allowable at a row.
 type rowCheck struct {
-	check   strength.Check
-	row     int // from 0
-	node    int // the member's place in the stack, of member checks
-	demands demands
-	factor  [strength.Ultimate + 1]float64
+	check  strength.Check
+	row    int                            // from 0
+	node   int                            // the member's place in the stack, of member checks; else -1
+	factor [strength.Ultimate + 1]float64 // on a load given at that level
 
 	capacity float64 // of all fasteners of the row
 	why      *strength.Message
@@ -61,13 +59,14 @@ type rowCheck struct {
 // addChecks lists the checks in the order of answers: row by row, the fastener
 // and then the members in stacking order.
 func (p *PreparedSplice) addChecks() {
+	known := map[capacityKey]capacity{}
 	for r := range p.splice.Rows {
 		if p.stack.rows[r+1]-p.stack.rows[r] > 1 {
-			p.addFastenerChecks(r)
+			p.addFastenerChecks(r, known)
 		}
 		for x := p.stack.rows[r]; x < p.stack.rows[r+1]; x++ {
 			if p.splice.Members[p.stack.nodes[x].member].Material != nil {
-				p.addMemberChecks(x)
+				p.addMemberChecks(x, known)
 			}
 		}
 	}
@@ -77,26 +76,81 @@ func (p *PreparedSplice) addChecks() {
 	}
 }
 
-func (p *PreparedSplice) addCheck(c strength.Check, row, node int, capacity allowable) {
+// capacity is what a check needs of an allowable: no steps.
+type capacity struct {
+	value float64
+	why   *strength.Message
+	mark  strength.Mark
+}
+
+// capacityKey is all that a capacity depends on: rows that are alike have it
+// worked out once.
+type capacityKey struct {
+	member, mode, level     int
+	count, planes           int
+	diameter, clearance     float64
+	fastener                Type // without what it points to
+	thread                  Thread
+	thickness, width, inBay float64
+}
+
+// capacityOf works out the capacity of a check at row, of the member at node,
+// or of the fastener without one.
+func (p *PreparedSplice) capacityOf(c strength.Check, row, node int, known map[capacityKey]capacity) capacity {
+	r := &p.splice.Rows[row]
+	key := capacityKey{
+		member: -1, mode: int(c.Mode), level: int(c.Level),
+		count: r.Count, planes: r.ShearPlanes, diameter: r.Diameter, clearance: r.Clearance,
+	}
+	if node < 0 {
+		key.fastener = *r.Type
+		if key.fastener.Thread, key.fastener.Preload = nil, nil; r.Type.Thread != nil {
+			key.thread = *r.Type.Thread
+		}
+	} else {
+		at := p.stack.nodes[node]
+		m := &p.splice.Members[at.member]
+		key.member, key.thickness, key.width, key.inBay = at.member, m.rowThickness(row), m.rowWidth(at), m.bayThickness(at)
+	}
+	found, ok := known[key]
+	if !ok {
+		a := p.allowable(c, row, node)
+		found = capacity{a.value, reason(a.why), a.mark()}
+		known[key] = found
+	}
+	return found
+}
+
+// allowable works out the strength that a check compares with, with its steps.
+func (p *PreparedSplice) allowable(c strength.Check, row, node int) allowable {
+	switch {
+	case node < 0:
+		return p.splice.rowShear(row)
+	case c.Mode == strength.NetSection:
+		return p.netSection(node, c.Level)
+	}
+	return p.rowBearing(node, c.Level)
+}
+
+func (p *PreparedSplice) addCheck(c strength.Check, row, node int, capacity capacity) {
 	c.Row, c.Unit = row+1, strength.Force
-	c.Mark = strength.Weakest(c.Mark, strength.Derived, capacity.mark())
+	c.Mark = strength.Weakest(c.Mark, strength.Derived, capacity.mark)
 	if !c.Compared {
 		c.Mark = strength.Weakest(c.Mark, p.complianceMark)
 	}
-	check := rowCheck{check: c, row: row, node: node, capacity: capacity.value, why: reason(capacity.why)}
+	check := rowCheck{check: c, row: row, node: node, capacity: capacity.value, why: capacity.why}
 	for _, given := range []strength.Level{strength.Limit, strength.Ultimate} {
-		check.demands[given] = p.factors.Demand(c, given, strength.ByRegulation, false)
-		check.factor[given] = check.demands[given].Factor()
+		check.factor[given] = p.factors.Demand(c, given, strength.ByRegulation, false).Factor()
 	}
 	p.rowChecks = append(p.rowChecks, check)
 }
 
-func (p *PreparedSplice) addFastenerChecks(r int) {
+func (p *PreparedSplice) addFastenerChecks(r int, known map[capacityKey]capacity) {
 	if p.splice.Rows[r].Type == nil {
 		return
 	}
 	c := strength.Check{Member: memberFastener, Mode: strength.Shear, Level: strength.Ultimate, Method: methodShear, Source: sourceShear, Mark: strength.Seen}
-	capacity := p.splice.rowShear(r)
+	capacity := p.capacityOf(c, r, -1, known)
 	p.addCheck(c, r, -1, capacity)
 	if p.plastic != nil {
 		c.Method, c.Source, c.Mark, c.Compared = methodPlastic, sourcePlastic, strength.CommonPractice, true
@@ -104,35 +158,25 @@ func (p *PreparedSplice) addFastenerChecks(r int) {
 	}
 }
 
-func (p *PreparedSplice) addMemberChecks(x int) {
+func (p *PreparedSplice) addMemberChecks(x int, known map[capacityKey]capacity) {
 	node := p.stack.nodes[x]
 	id := p.splice.Members[node.member].ID
 	for _, level := range []strength.Level{strength.Ultimate, strength.Limit} {
 		c := strength.Check{Member: id, Mode: strength.NetSection, Level: level, Method: methodNetSection, Source: sourceNetSection}
-		p.addCheck(c, node.row, x, p.netSection(x, level))
+		p.addCheck(c, node.row, x, p.capacityOf(c, node.row, x, known))
 	}
 	if p.stack.rows[node.row+1]-p.stack.rows[node.row] == 1 {
 		return
 	}
 	for _, level := range []strength.Level{strength.Ultimate, strength.Limit} {
 		c := strength.Check{Member: id, Mode: strength.Bearing, Level: level, Method: methodBearing, Source: sourceBearing, Mark: strength.Seen}
-		p.addCheck(c, node.row, x, p.rowBearing(x, level))
+		p.addCheck(c, node.row, x, p.capacityOf(c, node.row, x, known))
 	}
 }
-
-// rowSources names the places of a splice's request in steps that patterns
-// share.
-var rowSources = strings.NewReplacer(
-	"input: fasteners.", "given: rows.", "input: type", "given: rows.type",
-	"input: plates.thickness", "given: members.row_thickness", "input: plates.", "given: members.", "input: material", "given: material",
-)
 
 // ofRow turns the strength of one fastener into that of the row's fasteners,
 // in each of a number of layers.
 func (s *Splice) ofRow(a allowable, r int, each string, layers float64) allowable {
-	for i := range a.steps {
-		a.steps[i].Source = rowSources.Replace(a.steps[i].Source)
-	}
 	if !a.why.Empty() {
 		return a
 	}
@@ -204,7 +248,7 @@ func (p *PreparedSplice) netSection(x int, level strength.Level) (a allowable) {
 	}
 	width := m.rowWidth(node)
 	if width == 0 {
-		a.why = strength.Say("member %q has no bay at row %d, so the width of its net section is not known", m.ID, node.row+1)
+		a.why = strength.Say("member %q has no bay beside its only row, so the width of its net section is not known", m.ID)
 		return a
 	}
 	strong := m.Material.Value(property)

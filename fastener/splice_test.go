@@ -405,6 +405,17 @@ func BenchmarkSplice10000Rows(b *testing.B) {
 	}
 }
 
+func BenchmarkSplice10000RowsChecked(b *testing.B) {
+	s, cases := dressed(10000), pull(1000)
+	for b.Loop() {
+		p, faults := PrepareSplice(s, noFactors, cases)
+		if len(faults) > 0 {
+			b.Fatal(faults)
+		}
+		p.Margins(0, make([]strength.Margin, len(p.Checks())))
+	}
+}
+
 func BenchmarkSpliceLoadCase(b *testing.B) {
 	p := mustPrepare(b, uniformLap(100, 2, 3, 1e-5), append(pull(1000), pull(-500)...))
 	out := p.NewTransfers()

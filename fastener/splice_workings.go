@@ -47,16 +47,7 @@ func (p *PreparedSplice) Workings(c int) []strength.Working {
 	case p.main.why.Empty():
 		steps = p.sharingSteps()
 	}
-	var capacity allowable
-	switch {
-	case check.node < 0:
-		capacity = p.splice.rowShear(check.row)
-	case check.check.Mode == strength.NetSection:
-		capacity = p.netSection(check.node, check.check.Level)
-	default:
-		capacity = p.rowBearing(check.node, check.check.Level)
-	}
-	return append(steps, stampRow(check, "", capacity.steps)...)
+	return append(steps, stampRow(check, "", p.allowable(check.check, check.row, check.node).steps)...)
 }
 
 // CaseWorkings implements strength.Calculation.
@@ -76,16 +67,24 @@ func (p *PreparedSplice) CaseWorkings(i, c int) []strength.Working {
 	own := []strength.Working{{Symbol: symbol, Value: load, Unit: strength.Force, Equation: equation, Source: source, Mark: strength.Derived}}
 	level := p.cases[i].level
 	demand := load * check.factor[level]
-	own = append(own, check.demands[level].Workings(strength.Working{}, p.factors, symbol, demand, strength.Force)...)
+	own = append(own, p.factors.Demand(check.check, level, strength.ByRegulation, false).Workings(strength.Working{}, p.factors, symbol, demand, strength.Force)...)
 	own = append(own, marginStep(compare(demand, check.capacity, check.why), "P_row")...)
 	return append(steps, stampRow(check, p.cases[i].id, own)...)
 }
+
+// rowSources names the places of a splice's request in steps that patterns
+// share.
+var rowSources = strings.NewReplacer(
+	"input: fasteners.", "given: rows.", "input: type", "given: rows.type",
+	"input: plates.thickness", "given: members.row_thickness", "input: plates.", "given: members.", "input: material", "given: material",
+)
 
 // stampRow writes the place of a check into its own steps.
 func stampRow(check *rowCheck, loadCase string, steps []strength.Working) []strength.Working {
 	c := &check.check
 	for i := range steps {
 		s := &steps[i]
+		s.Source = rowSources.Replace(s.Source)
 		s.Member, s.Row, s.Method, s.Mode, s.Level, s.LoadCase = c.Member, c.Row, c.Method, c.Mode, c.Level, loadCase
 	}
 	return steps
