@@ -305,7 +305,7 @@ func (p *PreparedPattern) stamp(c int, loadCase string, steps []strength.Working
 	for i := range steps {
 		s := &steps[i]
 		s.LoadCase = loadCase
-		if s.Member == memberPattern {
+		if s.Member != "" {
 			continue
 		}
 		s.Member, s.Fastener, s.Method, s.Mode, s.Level = check.Member, check.Fastener, check.Method, check.Mode, check.Level

@@ -154,30 +154,30 @@ func (c *instantaneous) caseSteps(p *PreparedPattern, i int) []strength.Working 
 		step.Fastener, step.Method = fastener, methodCentre
 		steps = append(steps, step)
 	}
-	add("u", a.u*farthestMove, strength.Length, "", "motion of the centroid at ultimate, found by iteration; the sums below balance the load", "")
-	add("v", a.v*farthestMove, strength.Length, "", "the same across", "")
+	add("δ_0x", a.u*farthestMove, strength.Length, "", "motion of the centroid at ultimate, found by iteration; the sums below balance the load", "")
+	add("δ_0y", a.v*farthestMove, strength.Length, "", "the same across", "")
 	add("θ", a.turn*farthestMove, strength.None, "", "turn of the member at ultimate, in radians", "")
 	var sx, sy, sm float64
 	for j, f := range e.fasteners {
 		dx, dy := a.u-float64(a.turn*e.y[j]), a.v+float64(a.turn*e.x[j])
-		add("δ_x", dx*farthestMove, strength.Length, "u - θ (y - y_c)", sourceCentre, f.ID)
-		add("δ_y", dy*farthestMove, strength.Length, "v + θ (x - x_c)", sourceCentre, f.ID)
+		add("δ_x", dx*farthestMove, strength.Length, "δ_0x - θ (y - y_c)", sourceCentre, f.ID)
+		add("δ_y", dy*farthestMove, strength.Length, "δ_0y + θ (x - x_c)", sourceCentre, f.ID)
 		add("Δ", math.Hypot(dx, dy)*farthestMove, strength.Length, "sqrt(δ_x² + δ_y²)", sourceCentre+"; the farthest moves 0.34 in (8.636 mm), Δ_max", f.ID)
 		r := c.strength[j] * curve(math.Hypot(dx, dy))
-		add("R", r, strength.Force, "V_u (1 - exp(-3.4 Δ/Δ_max))^0.55", sourceCentre, f.ID)
+		add("R_f", r, strength.Force, "V_u (1 - exp(-3.4 Δ/Δ_max))^0.55", sourceCentre, f.ID)
 		k := c.weight[j]
 		sx, sy = sx+float64(k*dx), sy+float64(k*dy)
 		sm += float64(e.x[j]*k*dy) - float64(e.y[j]*k*dx)
 	}
 	add("Δ_max", farthestMove, strength.Length, "", "AISC Manual part 7: 0.34 in", "")
-	add("R_x", sx, strength.Force, "Σ(R δ_x/Δ)", "sum over the fasteners", "")
-	add("R_y", sy, strength.Force, "Σ(R δ_y/Δ)", "sum over the fasteners", "")
-	add("M_R", sm, strength.Moment, "Σ(R ((x - x_c) δ_y - (y - y_c) δ_x)/Δ)", "sum over the fasteners, about the centroid", "")
+	add("R_x", sx, strength.Force, "Σ(R_f δ_x/Δ)", "sum over the fasteners", "")
+	add("R_y", sy, strength.Force, "Σ(R_f δ_y/Δ)", "sum over the fasteners", "")
+	add("M_R", sm, strength.Moment, "Σ(R_f ((x - x_c) δ_y - (y - y_c) δ_x)/Δ)", "sum over the fasteners, about the centroid", "")
 	equation := "sqrt((R_x² + R_y²) / (P_x² + P_y²))"
 	if load.x == 0 && load.y == 0 {
 		equation = "M_R / M_z"
 	}
-	add("λ", a.factor, strength.None, equation, "the factor on the load at which the farthest fastener has moved 0.34 in", "")
+	add("λ_P", a.factor, strength.None, equation, "the factor on the load at which the farthest fastener has moved 0.34 in", "")
 	return steps
 }
 
@@ -245,11 +245,11 @@ func (a *centreCheck) caseSteps(c *caseState, i int) []strength.Working {
 	demand := a.p.centre.demand(e, load)
 	equation, source := "sqrt(P_x² + P_y²)", "in-plane resultant"
 	if load.x == 0 && load.y == 0 {
-		steps = append(steps, patternStep("r_max", e.reach, strength.Length, "max(sqrt((x - x_c)² + (y - y_c)²))", "the farthest fastener", strength.Derived))
+		steps = append(steps, patternStep("r_max", e.reach, strength.Length, "", "distance of the farthest fastener from the centroid", strength.Derived))
 		equation, source = "max(M_z, -M_z) / r_max", "a moment alone, as the force that it makes at the farthest fastener"
 	}
 	steps = append(steps, patternStep("P", demand, strength.Force, equation, source, strength.Derived),
-		patternStep("P_u", c.ultimate.factor*demand, strength.Force, "λ P", sourceCentre, strength.FromMemory(95)))
+		patternStep("P_u", c.ultimate.factor*demand, strength.Force, "λ_P P", sourceCentre, strength.FromMemory(95)))
 	return append(steps, a.demandSteps(c, "P", demand, "P_u", a.margin(c))...)
 }
 
@@ -285,9 +285,9 @@ func (p *PreparedPattern) shearCaseSteps(c *caseState, i int, level strength.Lev
 		symbol, equation string
 		value            float64
 	}{
-		{"V_x", "R δ_x / (Δ λ)", share.Shear[0]},
-		{"V_y", "R δ_y / (Δ λ)", share.Shear[1]},
-		{"V", "R / λ", share.Resultant},
+		{"V_x", "R_f δ_x / (Δ λ_P)", share.Shear[0]},
+		{"V_y", "R_f δ_y / (Δ λ_P)", share.Shear[1]},
+		{"V", "R_f / λ_P", share.Resultant},
 	} {
 		if !moved {
 			s.equation = "" // at the centre itself

@@ -228,8 +228,8 @@ func (s *slotted) caseSteps(e *elastic, load centred) []strength.Working {
 	u, v, turn := s.motion(load)
 	move := strength.Force.Over(e.unit)
 	return []strength.Working{
-		patternStep("u", u, move, "(P_x - K_xy v - K_xθ θ) / K_xx, with v and θ at once", sourceSlotted, strength.Derived),
-		patternStep("v", v, move, "(P_y - K_xy u - K_yθ θ) / K_yy, with u and θ at once", sourceSlotted, strength.Derived),
-		patternStep("θ", turn, move.Over(strength.Length), "(M_z - K_xθ u - K_yθ v) / K_θ, with u and v at once", sourceSlotted, strength.Derived),
+		patternStep("δ_0x", u, move, "(P_x - K_xy δ_0y - K_xθ θ) / K_xx, with δ_0y and θ at once", sourceSlotted, strength.Derived),
+		patternStep("δ_0y", v, move, "(P_y - K_xy δ_0x - K_yθ θ) / K_yy, with δ_0x and θ at once", sourceSlotted, strength.Derived),
+		patternStep("θ", turn, move.Over(strength.Length), "(M_z - K_xθ δ_0x - K_yθ δ_0y) / K_θ, with δ_0x and δ_0y at once", sourceSlotted, strength.Derived),
 	}
 }

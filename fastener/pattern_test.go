@@ -78,6 +78,7 @@ func TestWorkingsClose(t *testing.T) {
 					}
 					steps := append(prepared.Workings(c), prepared.CaseWorkings(i, c)...)
 					assertClosed(t, check, margins[c], steps)
+					followPattern(t, check.Member+" "+check.Mode.String()+" "+check.Method, steps)
 					followed++
 				}
 			}
@@ -91,7 +92,10 @@ func TestWorkingsClose(t *testing.T) {
 var identifier = regexp.MustCompile(`[\p{L}][\p{L}\p{Nd}_']*(?:,[\p{L}\p{Nd}_']+)*`)
 
 // functions are the identifiers that are no symbols.
-var functions = map[string]bool{"sqrt": true, "min": true, "max": true, "exp": true, "with": true, "and": true, "at": true, "once": true, "solved": true, "for": true, "Σ": true, "π": true, "cos": true, "sin": true}
+var functions = map[string]bool{
+	"sqrt": true, "min": true, "max": true, "exp": true, "cos": true, "sin": true, "Σ": true, "π": true,
+	"solved": true, "for": true, "with": true, "and": true, "at": true, "once": true,
+}
 
 func assertClosed(t *testing.T, check strength.Check, m strength.Margin, steps []strength.Working) {
 	t.Helper()
@@ -110,6 +114,8 @@ func assertClosed(t *testing.T, check strength.Check, m strength.Margin, steps [
 		if s.Equation == "" && s.Source == "" {
 			t.Errorf("%s: %s has neither equation nor source", check.Mode, s.Symbol)
 		}
+	}
+	for _, s := range steps {
 		for _, symbol := range identifier.FindAllString(s.Equation, -1) {
 			if !functions[symbol] && !known[symbol] {
 				t.Errorf("%s %s: %s = %s: no working explains %s", check.Member, check.Mode, s.Symbol, s.Equation, symbol)
@@ -208,7 +214,9 @@ func TestWorkingsOfALineClose(t *testing.T) {
 		prepared.Margins(0, margins)
 		for c, check := range prepared.Checks() {
 			if margins[c].Status != strength.NotExercised {
-				assertClosed(t, check, margins[c], append(prepared.Workings(c), prepared.CaseWorkings(0, c)...))
+				steps := append(prepared.Workings(c), prepared.CaseWorkings(0, c)...)
+				assertClosed(t, check, margins[c], steps)
+				followPattern(t, check.Member+" "+check.Mode.String()+" "+check.Method, steps)
 			}
 		}
 	}

@@ -56,7 +56,7 @@ func (e *elastic) shearCaseSteps(c PatternCase, load centred, i int, share Share
 	switch {
 	case e.slots != nil:
 		steps = append(steps, e.slots.caseSteps(e, load)...)
-		x, y = "k_xx (u - θ (y - y_c)) + k_xy (v + θ (x - x_c))", "k_xy (u - θ (y - y_c)) + k_yy (v + θ (x - x_c))"
+		x, y = "k_xx (δ_0x - θ (y - y_c)) + k_xy (δ_0y + θ (x - x_c))", "k_xy (δ_0x - θ (y - y_c)) + k_yy (δ_0y + θ (x - x_c))"
 		source, mark = sourceSlotted, strength.Derived
 	case e.j == 0:
 		x, y = "k_v P_x/K_v", "k_v P_y/K_v"

@@ -42,8 +42,8 @@ func (p *PreparedPattern) blocks(r *rows) []block {
 	}
 	down := func(w float64) float64 { return t * gap(c.station, w, -1, 0, reach(w, -1, 0)) }
 	all := []block{
-		{"from the column of least w to the edge beyond", t * gap(c.station, lo, 0, 1, reach(lo, 0, 1)), down(lo)},
-		{"from the column of most w to the edge beyond", t * gap(c.station, hi, 0, -1, reach(hi, 0, -1)), down(hi)},
+		{"from the column of least η to the edge beyond", t * gap(c.station, lo, 0, 1, reach(lo, 0, 1)), down(lo)},
+		{"from the column of most η to the edge beyond", t * gap(c.station, hi, 0, -1, reach(hi, 0, -1)), down(hi)},
 	}
 	if hi > lo {
 		all = append([]block{{"between the outer columns", t * gap(c.station, lo, 0, 1, hi-lo), down(lo) + down(hi)}}, all...)
@@ -79,11 +79,11 @@ func (p *PreparedPattern) blockStrength(r *rows) (a allowable) {
 		a.why = strength.Say("the corner of the last row of plate %q does not lie inside its outline", p.pattern.Plates[r.plate].ID)
 		return a
 	}
-	a.add("F_tu", m.Ftu, strength.Stress, "", materialSource(m), m.MarkOf(strength.Ftu))
-	a.add("F_su", m.Fsu, strength.Stress, "", materialSource(m), m.MarkOf(strength.Fsu))
+	a.add("F_tu,plate", m.Ftu, strength.Stress, "", materialSource(m), m.MarkOf(strength.Ftu))
+	a.add("F_su,plate", m.Fsu, strength.Stress, "", materialSource(m), m.MarkOf(strength.Fsu))
 	a.add("A_nt", weakest.tension, strength.Area, "", "net area in tension across the last row, "+weakest.name+", from outline and holes", strength.Derived)
 	a.add("A_nv", weakest.shear, strength.Area, "", "net area in shear from there to the free end", strength.Derived)
-	a.add("P_bt", a.value, strength.Force, "F_tu A_nt + F_su A_nv", sourceBlock, strength.Derived)
+	a.add("P_bt", a.value, strength.Force, "F_tu,plate A_nt + F_su,plate A_nv", sourceBlock, strength.Derived)
 	return a
 }
 

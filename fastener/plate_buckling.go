@@ -38,10 +38,10 @@ func interFastener(m *strength.Material, head string, t, pitch float64) (a allow
 	a.add("E_c", m.Ec, strength.Stress, "", materialSource(m), m.MarkOf(strength.Ec))
 	a.add("F_cy", m.Fcy, strength.Stress, "", materialSource(m), m.MarkOf(strength.Fcy))
 	a.add("t", t, strength.Length, "", "input: plates.thickness", strength.Given)
-	a.add("p", pitch, strength.Length, "", "to the next row along the axis", strength.Derived)
+	a.add("p_r", pitch, strength.Length, "", "to the next row along the axis", strength.Derived)
 	slimness := t / pitch
 	elastic := c.c * math.Pi * math.Pi * m.Ec / 12 * slimness * slimness
-	a.add("F_e", elastic, strength.Stress, "c_f π² E_c/12 (t/p)²", sourceBuckling, strength.FromMemory(85))
+	a.add("F_e", elastic, strength.Stress, "c_f π² E_c/12 (t/p_r)²", sourceBuckling, strength.FromMemory(85))
 	a.value = elastic
 	equation, source := "F_e", "elastic, F_e <= F_cy/2"
 	if elastic > m.Fcy/2 {

@@ -274,25 +274,29 @@ func (r *rows) geometrySteps(p *PreparedPattern, c *section) (a allowable) {
 	plate := &p.pattern.Plates[r.plate]
 	origin := p.pattern.Fasteners[0]
 	s0, w0 := r.turn(origin.X, origin.Y) // places are counted from the axes of the pattern
-	a.add("a_x", r.cos, strength.None, "", "cosine of plates.axis_angle", strength.Given)
-	a.add("a_y", r.sin, strength.None, "", "sine of plates.axis_angle", strength.Given)
+	for _, s := range []struct {
+		symbol, source string
+		value          float64
+	}{{"a_x", "cosine of plates.axis_angle", r.cos}, {"a_y", "sine of plates.axis_angle", r.sin}} {
+		a.steps = append(a.steps, strength.Working{Member: plate.ID, Method: methodPlateSection, Symbol: s.symbol, Value: s.value, Source: s.source})
+	}
 	a.add("t", plate.Thickness, strength.Length, "", "input: plates.thickness", strength.Given)
-	a.add("s_0", s0+c.station, strength.Length, "", "station of the row along the axis", strength.Derived)
+	a.add("ξ_0", s0+c.station, strength.Length, "", "station of the row along the axis", strength.Derived)
 	var area, first, second []string
 	for n, g := range c.segments {
-		lo, hi := fmt.Sprintf("w_a%d", n+1), fmt.Sprintf("w_b%d", n+1)
+		lo, hi := fmt.Sprintf("η_a%d", n+1), fmt.Sprintf("η_b%d", n+1)
 		const source = "an end of a net segment across the row, from outline and holes"
 		a.add(lo, w0+g[0], strength.Length, "", source, strength.Derived)
 		a.add(hi, w0+g[1], strength.Length, "", source, strength.Derived)
 		area = append(area, "("+hi+" - "+lo+")")
 		first = append(first, "("+hi+"² - "+lo+"²)")
-		second = append(second, "(("+hi+" - w_0)³ - ("+lo+" - w_0)³)")
+		second = append(second, "(("+hi+" - η_0)³ - ("+lo+" - η_0)³)")
 	}
 	if len(c.segments) == 0 {
 		return a
 	}
 	a.add("A_net", c.area, strength.Area, "t ("+strings.Join(area, " + ")+")", "net area across the row", strength.Derived)
-	a.add("w_0", w0+c.centre, strength.Length, "t ("+strings.Join(first, " + ")+") / (2 A_net)", "its centre", strength.Derived)
+	a.add("η_0", w0+c.centre, strength.Length, "t ("+strings.Join(first, " + ")+") / (2 A_net)", "its centre", strength.Derived)
 	a.add("I_net", c.second, strength.Quartic, "t ("+strings.Join(second, " + ")+") / 3", "its second moment in the plane", strength.Derived)
 	return a
 }
@@ -308,7 +312,7 @@ func (r *rows) throughSteps(p *PreparedPattern, c *caseState, i int, level stren
 		id := p.pattern.Fasteners[j].ID
 		add := func(symbol string, value float64, unit strength.Unit, equation, source string, mark strength.Mark) {
 			step := patternStep(symbol, value, unit, equation, source, mark)
-			step.Fastener = id
+			step.Member, step.Method, step.Fastener = p.pattern.Plates[r.plate].ID, methodPlateSection, id
 			a.steps = append(a.steps, step)
 		}
 		part := p.loadShare(j, r.plate)
@@ -318,14 +322,14 @@ func (r *rows) throughSteps(p *PreparedPattern, c *caseState, i int, level stren
 		}
 		shear := c.shares[level][j].Shear
 		add("ψ", math.Abs(part), strength.None, "", "part of the fastener's load that this plate bears", strength.Given)
-		add("s", s0+r.s[j], strength.Length, "a_x x + a_y y", "along the axis", strength.Derived)
-		add("w", w0+r.w[j], strength.Length, "a_x y - a_y x", "across the axis", strength.Derived)
+		add("ξ", s0+r.s[j], strength.Length, "a_x x + a_y y", "along the axis", strength.Derived)
+		add("η", w0+r.w[j], strength.Length, "a_x y - a_y x", "across the axis", strength.Derived)
 		add("g_x", part*shear[0], strength.Force, x, "what the fastener puts on this plate; it lies between the free end and the row", strength.Derived)
 		add("g_y", part*shear[1], strength.Force, y, "the same", strength.Derived)
 	}
 	pull, moment := r.through(level, cut)
 	a.add("N", pull, strength.Force, "- Σ(a_x g_x + a_y g_y)", "pull through the row", strength.Derived)
-	a.add("M", moment, strength.Moment, "Σ((s - s_0) (a_x g_y - a_y g_x) - (w - w_0) (a_x g_x + a_y g_y))", "moment through the row at its centre", strength.Derived)
+	a.add("M", moment, strength.Moment, "Σ((ξ - ξ_0) (a_x g_y - a_y g_x) - (η - η_0) (a_x g_x + a_y g_y))", "moment through the row at its centre", strength.Derived)
 	return append(steps, a.steps...)
 }
 
@@ -335,8 +339,8 @@ func (a *netSectionCheck) caseSteps(c *caseState, i int) []strength.Working {
 	}
 	steps := a.rows.throughSteps(a.p, c, i, a.c.Level, a.section)
 	one, two := a.rows.fibres(a.c.Level, a.section)
-	last := fmt.Sprintf("w_b%d", len(a.section.segments))
-	fibre := "max(N / A_net + M (" + last + " - w_0) / I_net, N / A_net + M (w_a1 - w_0) / I_net, 0)"
+	last := fmt.Sprintf("η_b%d", len(a.section.segments))
+	fibre := "max(N / A_net + M (" + last + " - η_0) / I_net, N / A_net + M (η_a1 - η_0) / I_net, 0)"
 	steps = append(steps, strength.Working{
 		Symbol: "σ", Value: max(one, two, 0), Unit: strength.Stress, Equation: fibre,
 		Source: "stress of the fibre most stretched, elastic; the section's shear is left out", Mark: strength.Derived,

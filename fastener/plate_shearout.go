@@ -63,7 +63,7 @@ func (a *shearOutCheck) steps() []strength.Working {
 	s.add("y", f.Y, strength.Length, "", "input: fasteners.y", strength.Given)
 	f.holeStep(&s)
 	s.add("t", plate.Thickness, strength.Length, "", "input: plates.thickness", strength.Given)
-	s.add("F_su", plate.Material.Fsu, strength.Stress, "", materialSource(plate.Material), plate.Material.MarkOf(strength.Fsu))
+	s.add("F_su,plate", plate.Material.Fsu, strength.Stress, "", materialSource(plate.Material), plate.Material.MarkOf(strength.Fsu))
 	a.p.shareStep(&s, a.i, a.plate)
 	return append(a.p.shearSteps(a.c.Level), s.steps...)
 }
@@ -91,7 +91,7 @@ func (a *shearOutCheck) caseSteps(c *caseState, i int) []strength.Working {
 	length := max(rays[n].length-behind, 0)
 	s.add("L", length, strength.Length, "max(l - x_0, 0)", sourceShearOut, strength.Derived)
 	plate := &a.p.pattern.Plates[a.plate]
-	s.add("P_so", 2*plate.Material.Fsu*plate.Thickness*length, strength.Force, "2 F_su t L", sourceShearOut, strength.Derived)
+	s.add("P_so", 2*plate.Material.Fsu*plate.Thickness*length, strength.Force, "2 F_su,plate t L", sourceShearOut, strength.Derived)
 	steps = append(append(steps, s.steps...), bearingLoadStep(share.Resultant*a.share))
 	return append(steps, a.demandSteps(c, "P_b", share.Resultant*a.share, "P_so", a.margin(c))...)
 }

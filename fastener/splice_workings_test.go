@@ -21,6 +21,8 @@ type follower struct {
 	known map[string]float64
 	rest  []rune
 	bad   string
+	// function reads what follows a name that is no symbol, where it knows one.
+	function func(name string) (measured, bool)
 }
 
 type measured struct{ value, size float64 }
@@ -171,6 +173,11 @@ func (f *follower) named() measured {
 			f.bad = name + " is not closed"
 		}
 		return m
+	}
+	if f.function != nil {
+		if m, ok := f.function(name); ok {
+			return m
+		}
 	}
 	value, ok := f.known[name]
 	if !ok {

@@ -97,7 +97,7 @@ func (p *PreparedPattern) aiscShear(f *Fastener) (a allowable) {
 		value, equation = value*beta, "η_p "+equation
 	}
 	a.add("R_nv", value, strength.Force, equation, sourceAISCShear, strength.FromMemory(95))
-	p.pattern.AISC.reduce(&a, "R_nv", "R_v", value, sourceAISCShear)
+	p.pattern.AISC.reduce(&a, "R_nv", "V_c", value, sourceAISCShear)
 	return a
 }
 
@@ -110,7 +110,7 @@ func (p *PreparedPattern) aiscTension(f *Fastener) (a allowable) {
 	a.add("F_nt", 0.75*f.Type.Ftu, strength.Stress, "0.75 F_ub", sourceAISCTension, strength.FromMemory(95))
 	value := 0.75 * f.Type.Ftu * area
 	a.add("R_nt", value, strength.Force, "F_nt A_b", sourceAISCTension, strength.FromMemory(95))
-	p.pattern.AISC.reduce(&a, "R_nt", "R_t", value, sourceAISCTension)
+	p.pattern.AISC.reduce(&a, "R_nt", "T_c", value, sourceAISCTension)
 	return a
 }
 
