@@ -1,6 +1,7 @@
 package main
 
 import (
+	"context"
 	"errors"
 	"fmt"
 	"io"
@@ -16,14 +17,20 @@ type verifyCommand struct {
 	KeyFile    string   `name:"key" required:"" help:"File with the ledger's public key, as GET /v1/ledger/key gives it." placeholder:"KEYFILE"`
 	Since      []string `help:"File with a checkpoint that was kept earlier: the log must begin with its entries." placeholder:"CHECKPOINTFILE"`
 	HashesOnly bool     `help:"Do not compute the records again."`
-	Exports    []string `arg:"" name:"export" help:"The export, then its follow-ups in their order; - is standard input."`
+	Exports    []string `arg:"" optional:"" name:"export" help:"The export, then its follow-ups in their order; - is standard input."`
+
+	Data        string `help:"Folder of an embedded database to verify in place of an export, every row of it." placeholder:"DIR"`
+	DatabaseURL string `help:"Postgres URL, or @FILE, of a database to verify in place of an export." name:"database-url" placeholder:"URL"`
 }
 
 // progressEvery is how often a long run says how far it is.
 const progressEvery = 2 * time.Second
 
 // Run exits 0 only when everything holds.
-func (c verifyCommand) Run(std *streams) error {
+func (c verifyCommand) Run(ctx context.Context, std *streams) error {
+	if inDatabase := c.Data != "" || c.DatabaseURL != ""; inDatabase == (len(c.Exports) > 0) {
+		return errors.New("give exports to verify, or one database with --data or --database-url")
+	}
 	text, err := os.ReadFile(c.KeyFile)
 	if err != nil {
 		return err
@@ -34,7 +41,7 @@ func (c verifyCommand) Run(std *streams) error {
 	}
 	verifier := ledger.NewVerifier(key)
 	recomputer := &service.Recomputer{}
-	err = c.verify(verifier, recomputer, std)
+	err = c.verify(ctx, verifier, recomputer, std)
 	var failed *ledger.Failure
 	if errors.As(err, &failed) {
 		fmt.Fprintf(std.out, "does not hold: %s\n", failed)
@@ -51,7 +58,7 @@ func (c verifyCommand) Run(std *streams) error {
 	return nil
 }
 
-func (c verifyCommand) verify(verifier *ledger.Verifier, recomputer *service.Recomputer, std *streams) error {
+func (c verifyCommand) verify(ctx context.Context, verifier *ledger.Verifier, recomputer *service.Recomputer, std *streams) error {
 	for _, path := range c.Since {
 		checkpoint, err := os.ReadFile(path)
 		if err != nil {
@@ -72,12 +79,24 @@ func (c verifyCommand) verify(verifier *ledger.Verifier, recomputer *service.Rec
 		}
 		return recomputer.Entry(e.Envelope)
 	}
+	if c.Data != "" || c.DatabaseURL != "" {
+		return c.database(ctx, verifier, each)
+	}
 	for _, path := range c.Exports {
 		if err := c.export(verifier, path, std.in, each); err != nil {
 			return err
 		}
 	}
 	return verifier.Done()
+}
+
+// database verifies a ledger where it is stored.
+func (c verifyCommand) database(ctx context.Context, verifier *ledger.Verifier, each func(ledger.Verified) error) error {
+	store, err := place{Data: c.Data, DatabaseURL: c.DatabaseURL}.open(ctx)
+	if err != nil {
+		return err
+	}
+	return errors.Join(service.Audit(ctx, store, verifier, each), store.Close())
 }
 
 func (c verifyCommand) export(verifier *ledger.Verifier, path string, in io.Reader, each func(ledger.Verified) error) error {
