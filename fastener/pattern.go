@@ -318,10 +318,17 @@ func (p *PreparedPattern) Findings() []strength.Finding { return p.findings }
 
 // Cautions implements strength.Calculation.
 func (p *PreparedPattern) Cautions() []string {
-	return []string{
+	cautions := []string{
 		"The attached member is taken as rigid: prying and the flexibility of flanges and plates are left out and may raise the tension and shear of single fasteners.",
 		"Each fastener is taken to fill its hole and to share by stiffness alone: clearances, friction and yielding are left out.",
 	}
+	if p.centre != nil {
+		cautions = append(cautions, "The curve of the instantaneous centre was measured on high-strength steel bolts in bearing; for other fasteners its shares at ultimate are an assumption.")
+	}
+	if p.sharing.heel != nil {
+		cautions = append(cautions, "The attached member is taken to turn about its outline on a rigid support: a flexible foot bears nearer to the fasteners, which raises their tension.")
+	}
+	return cautions
 }
 
 // The members of a pattern's workings and checks that are no plate.

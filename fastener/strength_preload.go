@@ -160,6 +160,9 @@ func (a *slipCheck) steps() []strength.Working {
 func (a *slipCheck) caseSteps(c *caseState, i int) []strength.Working {
 	share := a.shareOf(c)
 	steps := append(a.p.shearCaseSteps(c, i, a.c.Level, a.i), a.p.sharing.tensionCaseSteps(a.p.cases[i], a.p.loads[i], a.i, *share)...)
+	if !(share.Resultant > 0) {
+		return steps
+	}
 	steps = append(steps, strength.Working{
 		Symbol: "V_slip", Value: a.limit(share), Unit: strength.Force, Mark: strength.Derived,
 		Equation: "n μ/FS_slip P_0min V / (V + n μ/FS_slip max(1 - n_p φ, 0) T_p)",
