@@ -65,6 +65,14 @@ type Store interface {
 	// Touch notes that a key was used.
 	Touch(ctx context.Context, id, at string) error
 
+	// AddSession keeps a session and forgets those that have ended by now.
+	AddSession(ctx context.Context, session Session, now string) error
+	// SessionKey returns the key, revoked or not, of a session that has not
+	// ended by now. ErrNotFound.
+	SessionKey(ctx context.Context, hash [32]byte, now string) (Key, error)
+	// EndSession forgets a session, if there is one.
+	EndSession(ctx context.Context, hash [32]byte) error
+
 	// Close lets go of the engine.
 	Close() error
 }
@@ -196,4 +204,11 @@ type KeyChange struct {
 	Add    *Key
 	Revoke string // id
 	At     string
+}
+
+// Session is a browser that signed in with a key. Its token is nowhere stored.
+type Session struct {
+	Hash  [32]byte // SHA-256 of the token
+	Key   string   // id
+	Until string
 }

@@ -195,5 +195,22 @@ func (f *Faulty) Touch(ctx context.Context, id, at string) error {
 	return err
 }
 
+// AddSession implements service.Store.
+func (f *Faulty) AddSession(ctx context.Context, session service.Session, now string) error {
+	_, err := do(f, "AddSession", func() (struct{}, error) { return nothing(f.inner.AddSession(ctx, session, now)) })
+	return err
+}
+
+// SessionKey implements service.Store.
+func (f *Faulty) SessionKey(ctx context.Context, hash [32]byte, now string) (service.Key, error) {
+	return do(f, "SessionKey", func() (service.Key, error) { return f.inner.SessionKey(ctx, hash, now) })
+}
+
+// EndSession implements service.Store.
+func (f *Faulty) EndSession(ctx context.Context, hash [32]byte) error {
+	_, err := do(f, "EndSession", func() (struct{}, error) { return nothing(f.inner.EndSession(ctx, hash)) })
+	return err
+}
+
 // Close implements service.Store; it never fails on purpose.
 func (f *Faulty) Close() error { return f.inner.Close() }

@@ -1,0 +1,12 @@
+-- Browsers that signed in. Operational, outside the proof. A server that owns
+-- nothing also needs:
+--
+--   GRANT SELECT, INSERT, DELETE ON sessions TO jointledger_server;
+
+CREATE TABLE sessions (
+    hash   bytea PRIMARY KEY CHECK (length(hash) = 32),
+    key_id text COLLATE "C" NOT NULL REFERENCES keys (id),
+    until  text COLLATE "C" NOT NULL
+);
+
+CREATE INDEX sessions_until ON sessions (until);
