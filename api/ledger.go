@@ -24,6 +24,18 @@ func (v *server) recordProof(ctx context.Context, r *Request) (*Response, error)
 	return plain(v.service.Proof(ctx, r.Param("id")))
 }
 
+func (v *server) verification(ctx context.Context, r *Request) (*Response, error) {
+	return encoded(v.service.Verify(ctx, r.Param("id")))
+}
+
+func (v *server) part(ctx context.Context, r *Request) (*Response, error) {
+	return encoded(v.service.Part(ctx, r.Query.Get("part")))
+}
+
+func (v *server) partChanges(ctx context.Context, r *Request) (*Response, error) {
+	return encoded(v.service.Changes(ctx, r.Query.Get("part"), r.Query.Get("from"), r.Query.Get("to")))
+}
+
 func (v *server) checkpoint(ctx context.Context, _ *Request) (*Response, error) {
 	return plain(v.service.Checkpoint(ctx))
 }

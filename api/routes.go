@@ -29,9 +29,13 @@ func (v *server) routes() []route {
 		{http.MethodGet, "/v1/records/:id", service.Reader, nil, "", v.recordByID},
 		{http.MethodGet, "/v1/records/:id/entry", service.Reader, nil, "", v.recordEntry},
 		{http.MethodGet, "/v1/records/:id/proof", service.Reader, nil, "", v.recordProof},
+		{http.MethodGet, "/v1/records/:id/verification", service.Reader, nil, "", v.verification},
 		{http.MethodPost, "/v1/records/:id/sign-offs", service.Checker, nil, jsonMedia, v.signOff},
 		{http.MethodPost, "/v1/records/:id/withdrawal", service.Analyst, nil, jsonMedia, v.withdraw},
 		{http.MethodPost, "/v1/records/:id/replay", service.Reader, nil, "", v.replay},
+
+		{http.MethodGet, "/v1/parts", service.Reader, []string{"part"}, "", v.part},
+		{http.MethodGet, "/v1/parts/changes", service.Reader, []string{"part", "from", "to"}, "", v.partChanges},
 
 		{http.MethodPost, "/v1/replays", service.Reader, nil, jsonMedia, v.replays},
 

@@ -399,11 +399,7 @@ func (s *Service) Records(ctx context.Context, q RecordQuery) (*RecordList, erro
 			list.NextCursor = &cursor
 			break
 		}
-		list.Items = append(list.Items, RecordSummary{
-			ID: r.ID, Index: r.Index, RecordedAt: r.At, Author: r.Author, Subject: subject(r.Subject),
-			GeometryDigest: r.GeometryDigest, Kind: r.Kind, Verdict: r.Verdict, Margin: r.Margin,
-			RecordDigest: ledger.DigestText(r.Leaf), State: r.State,
-		})
+		list.Items = append(list.Items, summaryOf(r))
 	}
 	return list, nil
 }

@@ -100,6 +100,11 @@ func Lines(data []byte) func(pointer string) int {
 // nil pointer null.
 func Encode(v any) ([]byte, error) { return json.Marshal(v, json.Deterministic(true)) }
 
+// Spread writes v as Encode does, over lines that people can read.
+func Spread(v any) ([]byte, error) {
+	return json.Marshal(v, json.Deterministic(true), jsontext.WithIndent("  "))
+}
+
 // Canonical writes v in the form of RFC 8785.
 func Canonical(v any) ([]byte, error) {
 	data, err := json.Marshal(v, json.Deterministic(true))
