@@ -278,7 +278,9 @@ func (h *affdlHead) bearingStress(s *sheet, way int) (ultimate, yield float64) {
 		ratio = h.edgeRatio(s)
 	}
 	long := strength.AtLeast(ratio, fullEdge)
-	if !long {
+	if long {
+		ratio = max(ratio, fullEdge) // which it meets within the tolerance
+	} else {
 		capAt = &eqRatioFrom
 		hole := h.hole(s)
 		end = s.apply(&eqEndRatio, h.edge(s)-hole/2) / hole

@@ -79,6 +79,15 @@ func TestDerivedK(t *testing.T) {
 	}
 }
 
+// An e/D that is 1.5 but for rounding is 1.5.
+func TestFullEdgeWithinTolerance(t *testing.T) {
+	j := bare()
+	j.Lug.Shape, j.Lug.EdgeDistance = lug.Square, 37.5*(1-1e-12)
+	if got := workingOf(t, j, nil, 0, strength.Bearing, "K"); got != 1.335 {
+		t.Errorf("K is %.6f", got)
+	}
+}
+
 // Kn between ratios r and strains q, by hand from the table: r = 0.85 lies half
 // way between 0.8 and 0.9, q = 0.3 half way between 0.2 and 0.4, D/W = 0.5:
 // r 0.9: (0.896 + 0.736)/2 = 0.816; r 0.8: (0.837 + 0.705)/2 = 0.771;
