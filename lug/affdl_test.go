@@ -262,3 +262,37 @@ func TestDepthsOfAnOffsetHole(t *testing.T) {
 		}
 	}
 }
+
+// The built-in set is itself when it comes by way of a document, which keeps
+// its points alone; another set cannot take its id.
+func TestBuiltInSetByWayOfADocument(t *testing.T) {
+	document := func() *lug.CurveSet {
+		set := *builtIn()
+		plain := lug.CurveSet{ID: set.ID, Version: set.Version, Method: set.Method, Charts: map[string]lug.Chart{}}
+		for name, c := range set.Charts {
+			own := lug.Chart{Figure: c.Figure, Along: c.Along, Between: c.Between}
+			for _, curve := range c.Curves {
+				own.Curves = append(own.Curves, lug.Curve{At: curve.At, Points: append([][2]float64(nil), curve.Points...)})
+			}
+			plain.Charts[name] = own
+		}
+		return &plain
+	}
+	choice := []lug.Choice{{Method: affdl, Options: lug.Options{"curve_set": {Set: document()}}}}
+	p, q := prepare(t, slim(), choice, at(1000, 37)), prepare(t, slim(), methods(affdl), at(1000, 37))
+	a, b := margins(p, 0), margins(q, 0)
+	for k := range a {
+		if a[k].Margin != b[k].Margin || a[k].Status != b[k].Status {
+			t.Errorf("%+v: %+v, the built-in set %+v", p.Checks()[k], a[k], b[k])
+		}
+	}
+	if !hasFinding(p, "derived-curves") {
+		t.Error("it does not say that it is derived")
+	}
+	other := document()
+	other.Charts["K"].Curves[0].Points[3][1] *= 1.01
+	choice[0].Options["curve_set"] = lug.Value{Set: other}
+	if _, wrong := lug.Prepare(slim(), choice, usual(), at(1000, 37)); len(wrong) != 1 {
+		t.Errorf("other points under the id of the built-in set: %v", wrong)
+	}
+}

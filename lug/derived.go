@@ -1,7 +1,9 @@
 package lug
 
 import (
+	"maps"
 	"math"
+	"slices"
 	"strconv"
 )
 
@@ -84,6 +86,23 @@ var derived1 = makeDerived1()
 
 // BuiltInCurveSets returns the curve sets that need no registration.
 func BuiltInCurveSets() []CurveSet { return []CurveSet{*derived1} }
+
+// builtInBy finds the built-in set that a set is by its id.
+func builtInBy(id string) *CurveSet {
+	if id == derived1.ID {
+		return derived1
+	}
+	return nil
+}
+
+// equal reports whether two sets say the same.
+func (c *CurveSet) equal(d *CurveSet) bool {
+	return c.Name() == d.Name() && c.Method == d.Method && maps.EqualFunc(c.Charts, d.Charts, func(a, b Chart) bool {
+		return a.Along == b.Along && a.Between == b.Between && slices.EqualFunc(a.Curves, b.Curves, func(a, b Curve) bool {
+			return a.At == b.At && slices.Equal(a.Points, b.Points)
+		})
+	})
+}
 
 func makeDerived1() *CurveSet {
 	set := &CurveSet{

@@ -165,7 +165,7 @@ func checkOptions(m *Method, options Options, f *faults) {
 func (o *Option) check(at, method string, v Value, f *faults) {
 	switch o.Kind {
 	case Number:
-		if v.Number < o.Least || v.Number > o.Most {
+		if strength.Less(v.Number, o.Least) || strength.More(v.Number, o.Most) {
 			f.add(at, "the value is %.6g and must be from %.6g to %.6g", v.Number, o.Least, o.Most)
 		}
 	case Word:
@@ -182,7 +182,11 @@ func (o *Option) check(at, method string, v Value, f *faults) {
 			f.add(at, "the method needs a curve set here")
 		case v.Set.Method != method:
 			f.add(at, "the curve set %s is of the method %q", v.Set.Name(), v.Set.Method)
-		case !v.Set.builtIn:
+		case builtInBy(v.Set.ID) != nil:
+			if known := builtInBy(v.Set.ID); !v.Set.builtIn && !v.Set.equal(known) {
+				f.add(at, "the id %q is that of the built-in curve set %s, and this one says something else", v.Set.ID, known.Name())
+			}
+		default:
 			for _, wrong := range v.Set.Check() {
 				f.add(at+wrong.Pointer, "%v", wrong.Message)
 			}

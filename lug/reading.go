@@ -21,6 +21,10 @@ type charts struct {
 func (b *builder) charts() *charts {
 	c := &charts{set: b.value("curve_set").Set}
 	if c.set != nil {
+		// A built-in set that came by way of a document is the built-in one.
+		if known := builtInBy(c.set.ID); known != nil {
+			c.set = known
+		}
 		c.name = c.set.Name()
 		if c.net = c.set.net; c.net == nil {
 			c.net = c.set.netFamily()
