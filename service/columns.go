@@ -3,6 +3,7 @@ package service
 import (
 	"fmt"
 	"slices"
+	"strconv"
 
 	"jointledger/service/ledger"
 	"jointledger/service/strictjson"
@@ -25,21 +26,33 @@ func EntryOf(canonical []byte) (Entry, error) {
 	if err != nil {
 		return Entry{}, err
 	}
+	e, _, err := entryOf(canonical, envelope)
+	return e, err
+}
+
+// sealedEntry is EntryOf for bytes whose hash was signed, and which need no
+// second look at their form. The record is nil of an entry of another type.
+func sealedEntry(canonical []byte) (Entry, *recordHead, error) {
+	envelope, err := ledger.Split(canonical)
+	if err != nil {
+		return Entry{}, nil, err
+	}
+	return entryOf(canonical, envelope)
+}
+
+func entryOf(canonical []byte, envelope ledger.Envelope) (Entry, *recordHead, error) {
 	e := Entry{
 		ID: envelope.ID, Type: envelope.Type, At: envelope.At, Author: envelope.Author,
 		Bytes: canonical, Leaf: ledger.Leaf(canonical),
 	}
-	read := func(into any) {
-		if err == nil {
-			err = strictjson.Decode(envelope.Body, into)
-		}
-	}
+	var record *recordHead
+	var err error
+	read := func(into any) { err = strictjson.DecodeLoosely(envelope.Body, into) }
 	switch envelope.Type {
 	case entryRecord:
-		var b recordBody
-		read(&b)
-		if err == nil {
-			e.Columns, err = recordColumns(&b)
+		record = new(recordHead)
+		if read(record); err == nil {
+			e.Columns, err = record.columns()
 		}
 	case entrySignOff:
 		var b signOffBody
@@ -62,9 +75,18 @@ func EntryOf(canonical []byte) (Entry, error) {
 		}
 	}
 	if err != nil {
-		return Entry{}, fmt.Errorf("the entry %s: %w", envelope.ID, err)
+		return Entry{}, nil, fmt.Errorf("the entry %s: %w", envelope.ID, err)
 	}
-	return e, nil
+	return e, record, nil
+}
+
+// recordHead is what is read of a record's body without the rest.
+type recordHead struct {
+	Subject        subject        `json:"subject"`
+	GeometryDigest string         `json:"geometry_digest"`
+	Kind           Kind           `json:"kind"`
+	Input          strictjson.Raw `json:"input"`
+	Result         resultHead     `json:"result"`
 }
 
 // resultHead is what is read of a record's result without the rest.
@@ -93,20 +115,17 @@ func (r *resultHead) margin() *float64 {
 	return r.Governing.Margin
 }
 
-func recordColumns(b *recordBody) (Columns, error) {
-	var result resultHead
-	if err := strictjson.DecodeLoosely(b.Result, &result); err != nil {
-		return Columns{}, err
-	}
+// columns repeats what a record says, for finding it.
+func (r *recordHead) columns() (Columns, error) {
 	c := Columns{
-		Subject: Subject(b.Subject), GeometryDigest: b.GeometryDigest, Kind: string(b.Kind),
-		Verdict: result.Verdict, Margin: result.margin(),
+		Subject: Subject(r.Subject), GeometryDigest: r.GeometryDigest, Kind: string(r.Kind),
+		Verdict: r.Result.Verdict, Margin: r.Result.margin(),
 	}
-	for _, m := range result.ByMethod {
+	for _, m := range r.Result.ByMethod {
 		c.Terms = append(c.Terms, Term{termMethod, m.Method})
 	}
 	var input any
-	if err := strictjson.DecodeAny(b.Input, &input); err != nil {
+	if err := strictjson.DecodeAny(r.Input, &input); err != nil {
 		return Columns{}, err
 	}
 	found := inputTerms(input, nil)
@@ -154,18 +173,22 @@ func inputTerms(value any, found []Term) []Term {
 
 // unaltered compares what is stored of an entry with what its bytes say.
 func unaltered(stored Entry) error {
-	is, err := EntryOf(stored.Bytes)
+	is, _, err := sealedEntry(stored.Bytes)
 	if err != nil {
 		return fmt.Errorf("%w: entry %d: %w", errAltered, stored.Index, err)
 	}
+	return sameColumns(stored, is)
+}
+
+func sameColumns(stored, is Entry) error {
 	margin := func(m *float64) string {
 		if m == nil {
 			return "none"
 		}
-		return fmt.Sprint(*m)
+		return strconv.FormatFloat(*m, 'g', -1, 64)
 	}
 	for _, column := range []struct{ name, stored, says string }{
-		{"leaf", stored.Leaf.String(), is.Leaf.String()},
+		{"leaf", string(stored.Leaf[:]), string(is.Leaf[:])},
 		{"id", stored.ID, is.ID},
 		{"type", stored.Type, is.Type},
 		{"at", stored.At, is.At},

@@ -226,11 +226,10 @@ func decisionOf(entry Entry) (*Decision, error) {
 
 // judged is a record with all that the gate reads of it, from its own bytes.
 type judged struct {
-	entry  Entry
-	body   recordBody
-	result resultHead
-	state  State
-	roles  map[string]bool
+	entry Entry
+	*recordHead
+	state State
+	roles map[string]bool
 }
 
 // judge looks at the latest record of each kind and aspect at each joint.
@@ -242,7 +241,7 @@ func (s *Service) judge(ctx context.Context, request *releaseRequest, policy Pol
 	byJoint := map[string][]*judged{}
 	var order []string
 	for _, r := range records {
-		joint := r.body.Subject.Joint
+		joint := r.Subject.Joint
 		if byJoint[joint] == nil {
 			order = append(order, joint)
 		}
@@ -259,7 +258,7 @@ func (s *Service) judge(ctx context.Context, request *releaseRequest, policy Pol
 			d.hold(j.Joint, nil, "no-record", "there is no record of this joint under part %s, revision %s", request.Part, request.Revision)
 		}
 		for _, r := range byJoint[j.Joint] {
-			d.Records = append(d.Records, decisionRecord{r.entry.ID, digestOf(r.entry), r.state})
+			d.Records = append(d.Records, decisionRecord{r.entry.ID, ledger.DigestText(r.entry.Leaf), r.state})
 			d.look(j, r, policy, now)
 		}
 	}
@@ -278,9 +277,9 @@ func (d *decisionBody) hold(joint string, r *judged, code, format string, args .
 	f := ReleaseFinding{Joint: joint, Code: code, Message: fmt.Sprintf(format, args...)}
 	if r != nil {
 		f.Record = &r.entry.ID
-		about := string(r.body.Kind)
-		if r.body.Subject.Aspect != "" {
-			about += ", " + r.body.Subject.Aspect
+		about := string(r.Kind)
+		if r.Subject.Aspect != "" {
+			about += ", " + r.Subject.Aspect
 		}
 		f.Message = fmt.Sprintf("%s (%s)", f.Message, about)
 	}
@@ -295,22 +294,22 @@ func (d *decisionBody) look(j releaseJoint, r *judged, policy Policy, now time.T
 	}
 	least := policy.leastMargin(j.Joint)
 	switch {
-	case r.result.Verdict != "adequate":
-		hold("not-adequate", "the latest record is %s", r.result.Verdict)
+	case r.Result.Verdict != "adequate":
+		hold("not-adequate", "the latest record is %s", r.Result.Verdict)
 	case least > 0:
-		if m := r.result.margin(); m == nil || strength.Less(*m, least) {
+		if m := r.Result.margin(); m == nil || strength.Less(*m, least) {
 			hold("margin", "the least margin is below %g, which the policy asks for here", least)
 		}
 	}
-	if r.body.GeometryDigest != j.GeometryDigest {
-		hold("geometry-changed", "the latest record is for the geometry %.80q, and that of the joint is %.80q", r.body.GeometryDigest, j.GeometryDigest)
+	if r.GeometryDigest != j.GeometryDigest {
+		hold("geometry-changed", "the latest record is for the geometry %.80q, and that of the joint is %.80q", r.GeometryDigest, j.GeometryDigest)
 	}
 	for _, role := range *policy.SignOffs {
 		if !r.roles[role] {
 			hold("not-"+role, "the latest record is not %s", role)
 		}
 	}
-	for _, m := range r.result.ByMethod {
+	for _, m := range r.Result.ByMethod {
 		if why := policy.Methods.refuses(m.Method); why != "" && !m.Compared {
 			hold("method", "the record rests on the method %s, which %s", m.Method, why)
 		}
@@ -327,7 +326,7 @@ func (d *decisionBody) look(j releaseJoint, r *judged, policy Policy, now time.T
 			hold("curve-set", "the record rests on the curve set %s, which %s", t.Value, why)
 		}
 	}
-	for _, f := range r.result.Findings {
+	for _, f := range r.Result.Findings {
 		barred := *policy.Violations == "hold" && f.Severity == "violation"
 		for _, code := range policy.BarFindings {
 			barred = barred || code == f.Code
@@ -342,8 +341,8 @@ func (d *decisionBody) look(j releaseJoint, r *judged, policy Policy, now time.T
 			hold("too-old", "the record is of %s, more than %g days ago", r.entry.At, *policy.GreatestAgeDays)
 		}
 	}
-	if policy.LeastEngine != nil && olderThan(r.result.Engine, *policy.LeastEngine) {
-		hold("engine", "the record was computed by version %s, before %s", r.result.Engine, *policy.LeastEngine)
+	if policy.LeastEngine != nil && olderThan(r.Result.Engine, *policy.LeastEngine) {
+		hold("engine", "the record was computed by version %s, before %s", r.Result.Engine, *policy.LeastEngine)
 	}
 }
 
@@ -409,28 +408,26 @@ func (s *Service) inTree(ctx context.Context, records []Entry, about map[string]
 // judgedRecord reads a record from its bytes and compares what was stored
 // beside them.
 func judgedRecord(e Entry, about []Entry) (*judged, error) {
-	r := &judged{entry: e, state: stateOf(about), roles: map[string]bool{}}
-	for _, each := range append([]Entry{e}, about...) {
-		if err := unaltered(each); err != nil {
+	is, record, err := sealedEntry(e.Bytes)
+	if err == nil && record == nil {
+		err = errors.New("it is no record")
+	}
+	if err != nil {
+		return nil, fmt.Errorf("%w: entry %d: %w", errAltered, e.Index, err)
+	}
+	if err := sameColumns(e, is); err != nil {
+		return nil, err
+	}
+	// The terms come from the bytes too: the gate asks them.
+	e.Terms = is.Terms
+	r := &judged{entry: e, recordHead: record, state: stateOf(about), roles: map[string]bool{}}
+	for _, a := range about {
+		if err := unaltered(a); err != nil {
 			return nil, err
 		}
-		if each.Type == entrySignOff {
-			r.roles[each.Role] = true
+		if a.Type == entrySignOff {
+			r.roles[a.Role] = true
 		}
-	}
-	// Terms come from the bytes too: the gate asks them.
-	columns, err := EntryOf(e.Bytes)
-	if err != nil {
-		return nil, fmt.Errorf("%w: entry %d: %w", errAltered, e.Index, err)
-	}
-	r.entry.Terms = columns.Terms
-	body, err := recordBodyOf(e.Bytes)
-	if err != nil {
-		return nil, fmt.Errorf("%w: entry %d: %w", errAltered, e.Index, err)
-	}
-	r.body = *body
-	if err := strictjson.DecodeLoosely(body.Result, &r.result); err != nil {
-		return nil, fmt.Errorf("%w: entry %d: %w", errAltered, e.Index, err)
 	}
 	return r, nil
 }

@@ -77,7 +77,7 @@ func Parse(canonical []byte) (Envelope, error) {
 	if len(canonical) > MaxEntry {
 		return Envelope{}, fmt.Errorf("it has %d bytes; an entry has at most %d", len(canonical), MaxEntry)
 	}
-	e, err := split(canonical)
+	e, err := Split(canonical)
 	if err != nil {
 		return Envelope{}, err
 	}
@@ -86,8 +86,9 @@ func Parse(canonical []byte) (Envelope, error) {
 
 var errForm = errors.New(`it is not an entry {"at", "author", "body", "id", "type"} in canonical form (RFC 8785)`)
 
-// split takes an entry apart without looking into the body.
-func split(b []byte) (e Envelope, err error) {
+// Split takes apart the bytes of an entry that were found, by their hash, to be
+// those that Seal wrote: it does not look into the body.
+func Split(b []byte) (e Envelope, err error) {
 	rest, ok := bytes.CutPrefix(b, []byte(beforeAt))
 	if !ok || len(rest) < lengthAt {
 		return e, errForm
