@@ -101,11 +101,12 @@ func (c *CurveSet) check(f *faults) {
 	f.take(c.lug().Check(), SI)
 }
 
-// builtInCurveSets finds the sets that come with the program.
-func builtInCurveSet(name string) *CurveSet {
+// builtInCurveSet finds a set that comes with the program. It knows more than
+// its wire form, which has only points of its curves.
+func builtInCurveSet(name string) *lug.CurveSet {
 	for _, set := range lug.BuiltInCurveSets() {
 		if name == set.ID || name == set.Name() {
-			return curveSetDocument(&set)
+			return &set
 		}
 	}
 	return nil
@@ -113,12 +114,12 @@ func builtInCurveSet(name string) *CurveSet {
 
 // lookUpCurveSet finds a set by id, the latest, or by id@version.
 func lookUpCurveSet(name string, look lookup) (lug.Value, error) {
-	set := builtInCurveSet(name)
-	if set == nil {
-		var err error
-		if set, err = look.curveSet(name); err != nil {
-			return lug.Value{}, err
-		}
+	if set := builtInCurveSet(name); set != nil {
+		return lug.Value{Set: set, Word: name}, nil
+	}
+	set, err := look.curveSet(name)
+	if err != nil {
+		return lug.Value{}, err
 	}
 	return lug.Value{Set: set.lug(), Word: name}, nil
 }

@@ -114,8 +114,10 @@ func (s *Service) CurveSets(ctx context.Context) (*CurveSetList, error) {
 
 // CurveSetByName returns the set id@version.
 func (s *Service) CurveSetByName(ctx context.Context, name string) (*CurveSetAnswer, error) {
-	answer := &CurveSetAnswer{CurveSet: builtInCurveSet(name), BuiltIn: true}
-	if answer.CurveSet == nil {
+	answer := &CurveSetAnswer{BuiltIn: true}
+	if set := builtInCurveSet(name); set != nil {
+		answer.CurveSet = curveSetDocument(set)
+	} else {
 		entry, err := s.store.CurveSet(ctx, name)
 		if errors.Is(err, ErrNotFound) {
 			return nil, problem(NotFound, "There is no curve set %.80q.", name)

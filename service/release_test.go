@@ -561,3 +561,32 @@ func BenchmarkRelease(b *testing.B) {
 		}
 	}
 }
+
+// The built-in curve set is the same however it is named: its formulas and its
+// warning do not depend on the words of the request.
+func TestTheBuiltInCurveSetIsOneHoweverNamed(t *testing.T) {
+	const lug = `{"units": "US", "methods": ["affdl-tr-69-42"]%s,
+  "lug": {"shape": "round", "width": 2, "thickness": 0.5, "hole_diameter": 0.75, "edge_distance": 1.125, "material": "7050-T7451-plate-0.250-1.500-L"},
+  "factors": {"ultimate": 1.5, "fitting": 1.15}, "load_cases": [{"id": "LC1", "level": "limit", "force": 9000, "angle": 37}]}`
+	results := map[string]bool{}
+	for _, named := range []string{``, `"derived-1"`, `"derived-1@1"`} {
+		if named != "" {
+			named = `, "method_options": {"affdl-tr-69-42": {"curve_set": ` + named + `}}`
+		}
+		r, err := service.Calculate(service.Lug, fmt.Appendf(nil, lug, named), service.View{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if !slices.ContainsFunc(r.Findings, func(f service.Finding) bool { return f.Code == "derived-curves" }) {
+			t.Errorf("%s: nothing says that the curves are derived", named)
+		}
+		text, err := json.Marshal(r)
+		if err != nil {
+			t.Fatal(err)
+		}
+		results[string(text)] = true
+	}
+	if len(results) != 1 {
+		t.Errorf("%d answers to one question", len(results))
+	}
+}
