@@ -139,8 +139,8 @@ func (s *Service) Changes(ctx context.Context, part, from, to string) (*Changes,
 		}
 		sides[i] = map[key]side{}
 		for _, r := range records {
-			k := key{r.body.Subject.Joint, r.body.Subject.Aspect, string(r.body.Kind)}
-			sides[i][k] = side{ChangeState{r.entry.ID, r.body.GeometryDigest, r.result.Verdict, r.result.margin(), r.state}, r.body.Input}
+			k := key{r.Subject.Joint, r.Subject.Aspect, string(r.Kind)}
+			sides[i][k] = side{ChangeState{r.entry.ID, r.GeometryDigest, r.Result.Verdict, r.Result.margin(), r.state}, r.Input}
 			if !slices.Contains(order, k) {
 				order = append(order, k)
 			}
