@@ -109,6 +109,7 @@ func (m *aisc) effective(p *part, s *sheet) float64 {
 // proportions tells which of the proportions of section D5.2 a head misses.
 func (m *aisc) proportions(p *part) {
 	s := m.sheet()
+	defer m.wipe(s)
 	be := m.effective(p, s)
 	end, hole := p.head.EdgeDistance-p.head.HoleDiameter/2, p.head.HoleDiameter
 	const source = aiscSource + ".2"

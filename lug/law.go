@@ -105,6 +105,7 @@ type result struct {
 // settle runs a calculation once, for its number.
 func (b *builder) settle(write func(*sheet) float64) result {
 	s := b.sheet()
+	defer b.wipe(s)
 	value := write(s)
 	return result{value: value, why: s.why, mark: s.mark, read: s.read}
 }
@@ -112,6 +113,7 @@ func (b *builder) settle(write func(*sheet) float64) result {
 // settleBoth runs a calculation of two numbers once.
 func (b *builder) settleBoth(write func(*sheet) (one, other float64)) (result, result) {
 	s := b.sheet()
+	defer b.wipe(s)
 	one, other := write(s)
 	return result{one, s.why, s.mark, s.read}, result{other, s.why, s.mark, s.read}
 }

@@ -46,6 +46,7 @@ type builder struct {
 	place   int // of the method in the request
 	read    fieldSet
 	found   *findings
+	wiped   []*sheet
 	special bool // special factors act on the method's own factors too
 	oblique *strength.Message
 }
@@ -88,7 +89,8 @@ func Prepare(j Joint, choices []Choice, f strength.Factors, cases []LoadCase) (*
 		p.loads[i] = newLoad(&cases[i])
 	}
 	p.place()
-	p.checks, p.laws = make([]strength.Check, 0, 32*len(choices)), make([]prepared, 0, 32*len(choices))
+	p.checks = make([]strength.Check, 0, 12*len(p.heads())*len(choices))
+	p.laws = make([]prepared, 0, cap(p.checks))
 	found := &findings{}
 	var read fieldSet
 	for i := range choices {
@@ -150,12 +152,26 @@ func (b *builder) check(member string, mode strength.Mode, level strength.Level,
 	for i, at := range levels {
 		k.factor[i] = b.factors.Demand(c, at, safety, b.special).Factor()
 	}
+	b.wipe(s)
 	b.checks = append(b.checks, c)
 	b.laws = append(b.laws, k)
 }
 
-// sheet is one on which numbers are settled.
-func (b *builder) sheet() *sheet { return &sheet{found: b.found} }
+// sheet is one on which numbers are settled, wiped if it was used before.
+func (b *builder) sheet() *sheet {
+	if n := len(b.wiped); n > 0 {
+		s := b.wiped[n-1]
+		b.wiped = b.wiped[:n-1]
+		return s
+	}
+	return &sheet{found: b.found}
+}
+
+// wipe makes a sheet ready for another calculation.
+func (b *builder) wipe(s *sheet) {
+	*s = sheet{found: b.found}
+	b.wiped = append(b.wiped, s)
+}
 
 // number is a numeric option, or its default.
 func (b *builder) number(name string) float64 { return b.value(name).Number }
