@@ -148,7 +148,7 @@ func (p *PreparedSplice) caseFindings() []strength.Finding {
 		say(strength.Warning, "contact-not-settled", "rows", strength.Say("in %d of %d load cases the contact of clearances did not settle: their checks are undetermined", stopped, len(p.cases)))
 	}
 	if compressed > 0 {
-		say(strength.Note, "compression-not-checked", "members", strength.Say("in %d of %d load cases members with a material are compressed: their net section is checked in tension only, and buckling between rows is not checked", compressed, len(p.cases)))
+		say(strength.Note, "compression", "members", strength.Say("in %d of %d load cases members with a material are compressed: they are checked for buckling between rows, not for that of the whole member, and their net section in tension only", compressed, len(p.cases)))
 	}
 	for m := range p.splice.Members {
 		if unexpanded[m] {

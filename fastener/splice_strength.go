@@ -92,6 +92,8 @@ type capacityKey struct {
 	fastener                Type // without what it points to
 	thread                  Thread
 	thickness, width, inBay float64
+	bay                     Bay
+	pitch                   float64
 }
 
 // capacityOf works out the capacity of a check at row, of the member at node,
@@ -111,6 +113,12 @@ func (p *PreparedSplice) capacityOf(c strength.Check, row, node int, known map[c
 		at := p.stack.nodes[node]
 		m := &p.splice.Members[at.member]
 		key.member, key.thickness, key.width, key.inBay = at.member, m.rowThickness(row), m.rowWidth(at), m.bayThickness(at)
+		if c.Mode == strength.InterFastenerBuckling {
+			key.bay, key.pitch = m.bay(row), p.splice.Pitches[row]
+			if r.Type != nil {
+				key.fastener = Type{Name: r.Type.Name, Head: r.Type.Head}
+			}
+		}
 	}
 	found, ok := known[key]
 	if !ok {
@@ -128,6 +136,8 @@ func (p *PreparedSplice) allowable(c strength.Check, row, node int) allowable {
 		return p.splice.rowShear(row)
 	case c.Mode == strength.NetSection:
 		return p.netSection(node, c.Level)
+	case c.Mode == strength.InterFastenerBuckling:
+		return p.bayBuckling(node)
 	}
 	return p.rowBearing(node, c.Level)
 }
@@ -165,11 +175,14 @@ func (p *PreparedSplice) addMemberChecks(x int, known map[capacityKey]capacity) 
 		c := strength.Check{Member: id, Mode: strength.NetSection, Level: level, Method: methodNetSection, Source: sourceNetSection}
 		p.addCheck(c, node.row, x, p.capacityOf(c, node.row, x, known))
 	}
-	if p.stack.rows[node.row+1]-p.stack.rows[node.row] == 1 {
-		return
+	if p.stack.rows[node.row+1]-p.stack.rows[node.row] > 1 {
+		for _, level := range []strength.Level{strength.Ultimate, strength.Limit} {
+			c := strength.Check{Member: id, Mode: strength.Bearing, Level: level, Method: methodBearing, Source: sourceBearing, Mark: strength.Seen}
+			p.addCheck(c, node.row, x, p.capacityOf(c, node.row, x, known))
+		}
 	}
-	for _, level := range []strength.Level{strength.Ultimate, strength.Limit} {
-		c := strength.Check{Member: id, Mode: strength.Bearing, Level: level, Method: methodBearing, Source: sourceBearing, Mark: strength.Seen}
+	if !node.last {
+		c := strength.Check{Member: id, Mode: strength.InterFastenerBuckling, Level: strength.Ultimate, Method: methodBuckling, Source: sourceBuckling}
 		p.addCheck(c, node.row, x, p.capacityOf(c, node.row, x, known))
 	}
 }
@@ -277,13 +290,34 @@ func (p *PreparedSplice) netSection(x int, level strength.Level) (a allowable) {
 		equation = "2 " + equation
 	}
 	a.add("A_net", area, strength.Area, equation, sourceNetSection, strength.Derived)
-	from := m.Material.Source
-	if from == "" {
-		from = "given: material " + m.Material.Name
-	}
-	a.add(string(property), strong, strength.Stress, "", from, m.Material.MarkOf(property))
+	a.add(string(property), strong, strength.Stress, "", materialSource(m.Material), m.Material.MarkOf(property))
 	a.value = strong * area
 	a.add("P_row", a.value, strength.Force, string(property)+" A_net", sourceNetSection, strength.Derived)
+	return a
+}
+
+// bayBuckling is the strength of a member in compression between a row and the
+// next, F_ir w t, by the form of the row's heads.
+func (p *PreparedSplice) bayBuckling(x int) (a allowable) {
+	node := p.stack.nodes[x]
+	m, row := &p.splice.Members[node.member], &p.splice.Rows[node.row]
+	if row.Type == nil {
+		a.why = strength.Say("row %d has no type, so the form of its heads is not known", node.row+1)
+		return a
+	}
+	bay := m.bay(node.row)
+	a = interFastener(m.Material, row.Type.Head, bay.Thickness, p.splice.Pitches[node.row])
+	if !a.why.Empty() {
+		return a
+	}
+	a.add("w", bay.Width, strength.Length, "", "given: members.bays.width", strength.Given)
+	equation := "F_ir w t"
+	if layers := p.stack.layers(node.member); layers > 1 {
+		equation = "2 " + equation
+		a.value *= layers
+	}
+	a.value *= bay.Width * bay.Thickness
+	a.add("P_row", a.value, strength.Force, equation, sourceBuckling, strength.Derived)
 	return a
 }
 
@@ -304,8 +338,11 @@ func (p *PreparedSplice) load(c *rowCheck) float64 {
 	v, k := &p.main, p.stack
 	if c.node >= 0 {
 		left, right := v.sides(c.node, &p.cases[p.solved])
-		if c.check.Mode == strength.NetSection {
+		switch c.check.Mode {
+		case strength.NetSection:
 			return max(left, right, 0)
+		case strength.InterFastenerBuckling:
+			return max(-right, 0)
 		}
 		return math.Abs(left - right)
 	}

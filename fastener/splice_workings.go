@@ -76,7 +76,7 @@ func (p *PreparedSplice) CaseWorkings(i, c int) []strength.Working {
 // share.
 var rowSources = strings.NewReplacer(
 	"input: fasteners.", "given: rows.", "input: type", "given: rows.type",
-	"input: plates.thickness", "given: members.row_thickness", "input: plates.", "given: members.", "input: material", "given: material",
+	"input: plates.thickness", "given: members.row_thickness, of the bay for buckling", "input: plates.", "given: members.", "input: material", "given: material",
 )
 
 // stampRow writes the place of a check into its own steps.
@@ -95,7 +95,10 @@ func (p *PreparedSplice) loadStep(c *rowCheck) (symbol, equation, source string)
 	k := p.stack
 	if c.node >= 0 {
 		left, right := k.sideSymbols(c.node)
-		if c.check.Mode == strength.NetSection {
+		switch c.check.Mode {
+		case strength.InterFastenerBuckling:
+			return "N_c", "max(-" + right + ", 0)", "compression of the bay right of the row"
+		case strength.NetSection:
 			return "N", "max(" + left + ", " + right + ", 0)", "bypass and bearing load together, on the row's more loaded side"
 		}
 		return "B", "|" + left + " - " + right + "|", "load of all fasteners of the row on the member"

@@ -214,7 +214,7 @@ func followWorkings(t interface{ Fatalf(string, ...any) }, what string, steps []
 // that are invented.
 func checked(t *rapid.T, s Splice) Splice {
 	plate := &strength.Material{
-		Name: "SM plate", Source: "invented", Mark: strength.FromMemory(85), Ftu: 440, Fty: 370,
+		Name: "SM plate", Source: "invented", Mark: strength.FromMemory(85), Ftu: 440, Fty: 370, Fcy: 360, Ec: 73e3,
 		Bearing: []strength.BearingStrength{{EOverD: 1.5, Fbru: 650, Fbry: 520}, {EOverD: 2, Fbru: 850, Fbry: 620}},
 	}
 	for i := range s.Members {
@@ -228,7 +228,7 @@ func checked(t *rapid.T, s Splice) Splice {
 		}
 	}
 	types := []*Type{
-		{Name: "SM rivet", Source: "invented", ShearStrength: 9000},
+		{Name: "SM rivet", Source: "invented", ShearStrength: 9000, Head: HeadCountersunkReduced},
 		{Name: "SM bolt", Source: "invented", Fsu: 655, Ftu: 1100, Thread: &Thread{Form: "iso", Pitch: 0.8, InShearPlane: true}},
 		{Name: "SM pin", Source: "invented", Mark: strength.Seen, Fsu: 660},
 	}
@@ -275,7 +275,7 @@ func TestSpliceWorkingsFollow(t *testing.T) {
 			rt.Fatalf("the workings do not close")
 		}
 	})
-	for _, method := range []string{methodShear, methodBearing, methodNetSection, methodPlastic} {
+	for _, method := range []string{methodShear, methodBearing, methodNetSection, methodPlastic, methodBuckling} {
 		if followed[method] < 100 {
 			t.Errorf("%s: only %d equations were followed", method, followed[method])
 		}
