@@ -335,3 +335,19 @@ func TestBearingAndBypassStress(t *testing.T) {
 		t.Errorf("%+v", second)
 	}
 }
+
+// Bypass is the load of the less loaded side, bearing the rest of the other.
+func TestBearingAndBypass(t *testing.T) {
+	for _, test := range []struct{ left, right, bearing, bypass float64 }{
+		{1000, 674, 326, 674},
+		{674, 1000, 326, 674},
+		{-1000, -674, -326, -674},
+		{0, 325, 325, 0},
+		{500, -200, 700, -200},
+		{-500, 200, -700, 200},
+	} {
+		if bearing, bypass := bearingBypass(test.left, test.right); bearing != test.bearing || bypass != test.bypass {
+			t.Errorf("%v and %v: bearing %v, bypass %v; want %v, %v", test.left, test.right, bearing, bypass, test.bearing, test.bypass)
+		}
+	}
+}
