@@ -100,9 +100,6 @@ func drawJoint(t *rapid.T) lug.Joint {
 func must(t *rapid.T, j lug.Joint, choices []lug.Choice, f strength.Factors, cases []lug.LoadCase) *lug.Prepared {
 	p, wrong := lug.Prepare(j, choices, f, cases)
 	for _, f := range wrong {
-		if f.Pointer == "/lug/taper_angle" || f.Pointer == "/clevis/taper_angle" {
-			t.SkipNow() // the draw left no material beside the hole
-		}
 		t.Fatalf("%s: %s", f.Pointer, render(f.Message))
 	}
 	return p
@@ -279,10 +276,10 @@ func TestOffsetNeverHelps(t *testing.T) {
 		j.Lug.Offset = (j.Lug.Width - j.Lug.HoleDiameter) * between(t, "offset here", -0.4, 0.4)
 		straight := j.Clone()
 		straight.Lug.Width, straight.Lug.Offset = j.Lug.Width-2*math.Abs(j.Lug.Offset), 0
-		one := must(t, j, everyMethod(), usual(), at(1000, 0))
-		p, wrong := lug.Prepare(straight, everyMethod(), usual(), at(1000, 0))
-		if wrong != nil {
-			return
+		one, wrong := lug.Prepare(j, everyMethod(), usual(), at(1000, 0))
+		p, also := lug.Prepare(straight, everyMethod(), usual(), at(1000, 0))
+		if wrong != nil || also != nil {
+			return // no material is left beside the hole
 		}
 		best := map[strength.Check]float64{}
 		for k, m := range margins(p, 0) {
