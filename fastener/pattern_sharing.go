@@ -83,7 +83,7 @@ func offsets(fasteners []Fastener, k []float64) (x, y []float64, cx, cy, sum flo
 		x[i], y[i] = f.X-fasteners[0].X, f.Y-fasteners[0].Y
 		sum += k[i]
 	}
-	for range 3 {
+	for range 2 {
 		var sx, sy float64
 		for i := range k {
 			sx += float64(k[i] * x[i])

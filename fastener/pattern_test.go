@@ -572,3 +572,62 @@ func BenchmarkPrepareTenThousand(b *testing.B) {
 		prepare(b, p, PatternCase{ID: "LC1", Level: strength.Limit, Force: [3]float64{1, 0, 0}})
 	}
 }
+
+// Which part of a fastener's load a plate bears: all of it, half in an outer
+// plate of a joint in double shear, or what is given.
+func TestLoadShares(t *testing.T) {
+	p := bracket()
+	for i := range p.Fasteners {
+		p.Fasteners[i].ShearPlanes = 2
+	}
+	p.Plates = append(p.Plates, p.Plates[1])
+	p.Plates[2].ID, p.Plates[2].LoadShare = "strap", 0.6
+	load := PatternCase{ID: "LC1", Level: strength.Ultimate, Point: [3]float64{40, 50.0 / 3, 0}, Force: [3]float64{6000, 0, 0}}
+	prepared := prepare(t, p, load)
+	shares := make([]Share, len(p.Fasteners))
+	prepared.Shares(0, shares)
+	margins := make([]strength.Margin, len(prepared.Checks()))
+	prepared.Margins(0, margins)
+	found := 0
+	for k, c := range prepared.Checks() {
+		part, ok := map[string]float64{"bracket": 1, "boom": 0.5, "strap": 0.6}[c.Member]
+		if !ok || c.Fastener != "1" || c.Mode != strength.Bearing || c.Level != strength.Ultimate {
+			continue
+		}
+		found++
+		if want := part * shares[0].Resultant * 1.15; math.Abs(margins[k].Demand/want-1) > 1e-12 {
+			t.Errorf("%s: demand %g, want %g", c.Member, margins[k].Demand, want)
+		}
+	}
+	if found != 3 {
+		t.Errorf("%d plates", found)
+	}
+	said := 0
+	for _, f := range prepared.Findings() {
+		if f.Code == "load-share" && f.Subject == "plate boom" {
+			said++
+		}
+	}
+	if said != 1 {
+		t.Errorf("the default share of the boom is told %d times", said)
+	}
+}
+
+// Fasteners that are pushed together, and limit checks from ultimate loads, are
+// told once for all load cases.
+func TestFindingsOfLoadCases(t *testing.T) {
+	one, two := spaceLoad(strength.Ultimate), spaceLoad(strength.Ultimate)
+	two.ID, two.Force[2] = "pushed", -40000
+	count := map[string]string{}
+	for _, f := range prepare(t, bracket(), one, two).Findings() {
+		if f.Code == "compression" || f.Code == "limit-from-ultimate" {
+			if count[f.Code] != "" {
+				t.Errorf("%s is told twice", f.Code)
+			}
+			count[f.Code] = f.Message.Render(write)
+		}
+	}
+	if !strings.Contains(count["compression"], `in "pushed"`) || !strings.HasPrefix(count["limit-from-ultimate"], "2 of 2") {
+		t.Errorf("%q", count)
+	}
+}
