@@ -13,19 +13,21 @@ type safety struct {
 	applySpecial bool
 }
 
-// place is what the assessments of a pattern have in common.
+// place is what the assessments of a pattern have in common. What a margin
+// reads stands together, what only workings read apart from it.
 type place struct {
-	p       *PreparedPattern
-	c       strength.Check
 	i       int // the fastener
-	demands demands
+	level   strength.Level
 	factor  [strength.Ultimate + 1]float64
+	p       *PreparedPattern
+	c       *strength.Check
+	demands *demands
 }
 
 // place makes the place of a check at fastener i.
 func (p *PreparedPattern) place(i int, c strength.Check, s safety) place {
 	c.Fastener = p.pattern.Fasteners[i].ID
-	at := place{p: p, c: c, i: i}
+	at := place{p: p, c: &c, i: i, level: c.Level, demands: &demands{}}
 	for _, given := range []strength.Level{strength.Limit, strength.Ultimate} {
 		at.demands[given] = p.factors.Demand(c, given, s.kind, s.applySpecial)
 		at.factor[given] = at.demands[given].Factor()
@@ -33,10 +35,10 @@ func (p *PreparedPattern) place(i int, c strength.Check, s safety) place {
 	return at
 }
 
-func (a *place) check() strength.Check { return a.c }
+func (a *place) check() strength.Check { return *a.c }
 
 // shareOf is the fastener's share that the check takes.
-func (a *place) shareOf(c *caseState) *Share { return &c.shares[a.c.Level][a.i] }
+func (a *place) shareOf(c *caseState) *Share { return &c.shares[a.level][a.i] }
 
 // demandSteps write a demand from the load of the given symbol, and the margin
 // against the allowable of the given symbol.
