@@ -54,6 +54,13 @@ func (p *PreparedPattern) allFindings(edges [][]edgeDistance, near []neighbour) 
 			say(strength.Warning, "not-checked", "plate "+plate.ID, "", strength.Say(
 				"it has no outline: sections across its rows, block tearing and buckling between fasteners are not checked"))
 		}
+		if r := p.rows[k]; r != nil {
+			if near := r.staggered(p); near >= 0 {
+				say(strength.Warning, "staggered-rows", "plate "+plate.ID, "", strength.Say(
+					"rows stand closer than two holes along its axis, the first at fastener %q: sections run straight across each row, and a zigzag between rows may be weaker",
+					p.pattern.Fasteners[near].ID))
+			}
+		}
 		halved := 0
 		for i := range p.pattern.Fasteners {
 			if plate.LoadShare == 0 && p.loadShare(i, k) < 1 {

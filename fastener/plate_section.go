@@ -166,6 +166,17 @@ func (p *PreparedPattern) cut(r *rows, from, to int) section {
 	return c
 }
 
+// staggered returns the first fastener of the first row that stands closer to
+// the next than two holes, -1 where none does.
+func (r *rows) staggered(p *PreparedPattern) int {
+	for _, c := range r.sections {
+		if c.next > 0 && c.next < 2*p.pattern.Fasteners[c.first].hole() {
+			return c.first
+		}
+	}
+	return -1
+}
+
 func (r *rows) turn(x, y float64) (s, w float64) {
 	return float64(r.cos*x) + float64(r.sin*y), float64(r.cos*y) - float64(r.sin*x)
 }

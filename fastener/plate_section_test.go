@@ -134,3 +134,15 @@ func TestRowsTurnWithTheLoad(t *testing.T) {
 		}
 	})
 }
+
+func TestStaggeredRowsAreTold(t *testing.T) {
+	pull := PatternCase{ID: "LC1", Level: strength.Ultimate, Point: [3]float64{200, 50, 0}, Force: [3]float64{40e3, 0, 0}}
+	p := strap()
+	if m := found(prepare(t, p, pull))["warning staggered-rows plate strap"]; m != "" {
+		t.Error(m)
+	}
+	p.Fasteners[1].X += 15
+	if m := found(prepare(t, p, pull))["warning staggered-rows plate strap"]; m == "" {
+		t.Error("rows 15 mm apart are not told")
+	}
+}
