@@ -9,13 +9,6 @@ import (
 	"jointledger/service/ledger"
 )
 
-// postgresState derives the state of the record r from the entries about it.
-const postgresState = `CASE
-	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'withdrawal') THEN 'withdrawn'
-	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'sign-off' AND a.role = 'approved') THEN 'approved'
-	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'sign-off' AND a.role = 'checked') THEN 'checked'
-	ELSE 'recorded' END`
-
 // Append implements service.Store. The swap of the head comes first: its row is
 // locked from then on, so that others who append wait here and then find that
 // the head has moved, before they have written anything.
@@ -140,11 +133,11 @@ func queueStanding(batch *pgx.Batch, b service.Batch) {
 	if hasRecords(b) {
 		batch.Queue(`UPDATE standing SET latest = false WHERE latest AND idx IN
 			(SELECT (SELECT max(n.idx) FROM entries n WHERE `+sameSubject+` AND n.idx < $1) FROM entries r WHERE r.type = 'record' AND r.idx >= $1)`, b.Base.Size)
-		batch.Queue(`INSERT INTO standing (idx, state, latest) SELECT r.idx, 'recorded', NOT EXISTS (SELECT 1 FROM entries n WHERE `+sameSubject+` AND n.idx > r.idx)
+		batch.Queue(`INSERT INTO standing (idx, state, latest) SELECT r.idx, `+derivedState+`, NOT EXISTS (SELECT 1 FROM entries n WHERE `+sameSubject+` AND n.idx > r.idx)
 			FROM entries r WHERE r.type = 'record' AND r.idx >= $1`, b.Base.Size)
 	}
 	if hasAbout(b) {
-		batch.Queue(`UPDATE standing SET state = `+postgresState+` FROM entries r WHERE r.idx = standing.idx AND r.id IN
+		batch.Queue(`UPDATE standing SET state = `+derivedState+` FROM entries r WHERE r.idx = standing.idx AND r.id IN
 			(SELECT a.target FROM entries a WHERE a.target <> '' AND a.idx >= $1)`, b.Base.Size)
 	}
 }

@@ -200,7 +200,7 @@ func postgresList(f service.Filter, before int64, limit int) (string, []any) {
 	if f.State != "" {
 		from = `standing s JOIN entries r USING (idx)`
 		add(`s.state = $%d`, string(f.State))
-		add(postgresState+` = $%d`, string(f.State))
+		add(derivedState+` = $%d`, string(f.State))
 	}
 	switch {
 	case f.Latest && f.Part != "":
@@ -217,7 +217,7 @@ func postgresList(f service.Filter, before int64, limit int) (string, []any) {
 		add(`NOT EXISTS (SELECT 1 FROM entries n WHERE ` + sameSubject + ` AND n.idx > r.idx)`)
 	}
 	args = append(args, limit)
-	return `SELECT ` + postgresColumns + `, ` + postgresState + ` FROM ` + from + ` WHERE ` + strings.Join(where, ` AND `) +
+	return `SELECT ` + postgresColumns + `, ` + derivedState + ` FROM ` + from + ` WHERE ` + strings.Join(where, ` AND `) +
 		fmt.Sprintf(` ORDER BY r.idx DESC LIMIT $%d`, len(args)), args
 }
 

@@ -9,17 +9,6 @@ import (
 	"jointledger/service/ledger"
 )
 
-// sqliteState derives the state of the record r from the entries about it.
-const sqliteState = `CASE
-	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'withdrawal') THEN 'withdrawn'
-	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'sign-off' AND a.role = 'approved') THEN 'approved'
-	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'sign-off' AND a.role = 'checked') THEN 'checked'
-	ELSE 'recorded' END`
-
-// sameSubject finds the records n of the part, revision, joint, aspect and kind
-// of the record r.
-const sameSubject = `n.type = 'record' AND n.part = r.part AND n.revision = r.revision AND n.joint = r.joint AND n.aspect = r.aspect AND n.kind = r.kind`
-
 // Append implements service.Store.
 func (s *SQLite) Append(ctx context.Context, b service.Batch) error {
 	if err := check(b); err != nil {
@@ -147,13 +136,13 @@ func sqliteStanding(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 			(SELECT (SELECT max(n.idx) FROM entries n WHERE `+sameSubject+` AND n.idx < ?1) FROM entries r WHERE r.type = 'record' AND r.idx >= ?1)`, b.Base.Size); err != nil {
 			return err
 		}
-		if _, err := tx.ExecContext(ctx, `INSERT INTO standing SELECT r.idx, 'recorded', NOT EXISTS (SELECT 1 FROM entries n WHERE `+sameSubject+` AND n.idx > r.idx)
+		if _, err := tx.ExecContext(ctx, `INSERT INTO standing SELECT r.idx, `+derivedState+`, NOT EXISTS (SELECT 1 FROM entries n WHERE `+sameSubject+` AND n.idx > r.idx)
 			FROM entries r WHERE r.type = 'record' AND r.idx >= ?`, b.Base.Size); err != nil {
 			return err
 		}
 	}
 	if hasAbout(b) {
-		if _, err := tx.ExecContext(ctx, `UPDATE standing SET state = (SELECT `+sqliteState+` FROM entries r WHERE r.idx = standing.idx) WHERE idx IN
+		if _, err := tx.ExecContext(ctx, `UPDATE standing SET state = (SELECT `+derivedState+` FROM entries r WHERE r.idx = standing.idx) WHERE idx IN
 			(SELECT r.idx FROM entries a CROSS JOIN entries r ON r.id = a.target WHERE a.target <> '' AND a.idx >= ?)`, b.Base.Size); err != nil {
 			return err
 		}

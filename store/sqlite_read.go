@@ -252,7 +252,7 @@ func sqliteList(f service.Filter, before int64, limit int) (string, []any) {
 		add(`EXISTS (SELECT 1 FROM terms WHERE kind = ? AND value = ? AND idx = r.idx)`, t.Kind, []byte(t.Value))
 	}
 	if f.State != "" {
-		add(sqliteState+` = ?`, string(f.State))
+		add(derivedState+` = ?`, string(f.State))
 	}
 	switch {
 	case f.Latest && f.Part != "":
@@ -267,7 +267,7 @@ func sqliteList(f service.Filter, before int64, limit int) (string, []any) {
 	case f.Latest:
 		add(`NOT EXISTS (SELECT 1 FROM entries n WHERE ` + sameSubject + ` AND n.idx > r.idx)`)
 	}
-	return `SELECT ` + sqliteColumns + `, ` + sqliteState + ` FROM ` + from + ` WHERE ` + strings.Join(where, ` AND `) +
+	return `SELECT ` + sqliteColumns + `, ` + derivedState + ` FROM ` + from + ` WHERE ` + strings.Join(where, ` AND `) +
 		` ORDER BY ` + order + ` DESC LIMIT ?`, append(args, limit)
 }
 

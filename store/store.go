@@ -126,6 +126,17 @@ func hasAbout(b service.Batch) bool {
 	return false
 }
 
+// derivedState derives the state of the record r from the entries about it.
+const derivedState = `CASE
+	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'withdrawal') THEN 'withdrawn'
+	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'sign-off' AND a.role = 'approved') THEN 'approved'
+	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'sign-off' AND a.role = 'checked') THEN 'checked'
+	ELSE 'recorded' END`
+
+// sameSubject finds the records n of the part, revision, joint, aspect and kind
+// of the record r.
+const sameSubject = `n.type = 'record' AND n.part = r.part AND n.revision = r.revision AND n.joint = r.joint AND n.aspect = r.aspect AND n.kind = r.kind`
+
 // A page is what Entries reads at once: so many entries, and so many bytes
 // before the last of them, so that a slow reader holds no transaction open.
 const (
