@@ -92,6 +92,11 @@ func postgresError(err error) error {
 	var refused *pgconn.PgError
 	if errors.As(err, &refused) {
 		switch refused.Code[:2] {
+		case "LD": // our own, see the migrations
+			if refused.Code == "LD001" {
+				return service.ErrHeadMoved
+			}
+			return err
 		case "22", "23", "42", "P0": // data, constraints (and our triggers), syntax or rights, PL/pgSQL
 			return err
 		}

@@ -9,32 +9,18 @@ import (
 	"jointledger/service/ledger"
 )
 
-// Append implements service.Store. The swap of the head comes first: its row is
-// locked from then on, so that others who append wait here and then find that
-// the head has moved, before they have written anything.
+// Append implements service.Store. The batch goes out in one piece, which makes
+// it one transaction and one round trip. The swap of the head comes first: its
+// row is locked from then on, so that others who append wait here, find that
+// the head has moved, and write nothing.
 func (s *Postgres) Append(ctx context.Context, b service.Batch) error {
 	if err := check(b); err != nil {
 		return err
 	}
 	ctx, cancel := context.WithTimeout(ctx, postgresTimeout)
 	defer cancel()
-	return postgresError(pgx.BeginFunc(ctx, s.pool, func(tx pgx.Tx) error {
-		moved, err := tx.Exec(ctx, `UPDATE head SET size = $1, root = $2, checkpoint = $3 WHERE size = $4 AND root = $5`,
-			b.Head.Size, b.Head.Root[:], b.Head.Checkpoint, b.Base.Size, b.Base.Root[:])
-		if err != nil {
-			return err
-		}
-		if moved.RowsAffected() == 0 {
-			return service.ErrHeadMoved
-		}
-		return tx.SendBatch(ctx, postgresBatch(b)).Close()
-	}))
-}
-
-// postgresBatch is everything that follows the swap of the head, in one round
-// trip: one statement a table.
-func postgresBatch(b service.Batch) *pgx.Batch {
 	batch := &pgx.Batch{}
+	batch.Queue(`SELECT swap_head($1, $2, $3, $4, $5)`, b.Base.Size, b.Base.Root[:], b.Head.Size, b.Head.Root[:], b.Head.Checkpoint)
 	queueEntries(batch, b.Entries)
 	queueTerms(batch, b.Entries)
 	queueHashes(batch, b)
@@ -43,7 +29,7 @@ func postgresBatch(b service.Batch) *pgx.Batch {
 		queueKey(batch, k)
 	}
 	queueStanding(batch, b)
-	return batch
+	return postgresError(s.pool.SendBatch(ctx, batch).Close())
 }
 
 func queueEntries(batch *pgx.Batch, entries []service.Entry) {
@@ -116,28 +102,32 @@ func queueKey(batch *pgx.Batch, k service.KeyChange) {
 		batch.Queue(`INSERT INTO keys (id, caller, role, hash, added, revoked, last_used) VALUES ($1, $2, $3, $4, $5, $6, $7)`,
 			k.Add.ID, k.Add.Caller, k.Add.Role, k.Add.Hash[:], k.Add.Added, k.Add.Revoked, k.Add.LastUsed)
 	}
-	if k.Revoke == "" {
-		return
+	if k.Revoke != "" {
+		batch.Queue(`SELECT revoke_key($1, $2)`, k.Revoke, k.At)
 	}
-	batch.Queue(`UPDATE keys SET revoked = $1 WHERE id = $2 AND revoked = '' RETURNING id`, k.At, k.Revoke).Query(func(rows pgx.Rows) error {
-		found, err := pgx.CollectRows(rows, pgx.RowTo[string])
-		if err == nil && len(found) == 0 {
-			err = errRevoke(k)
-		}
-		return err
-	})
 }
 
 // queueStanding brings the index over the standing of records up to date.
 func queueStanding(batch *pgx.Batch, b service.Batch) {
-	if hasRecords(b) {
-		batch.Queue(`UPDATE standing SET latest = false WHERE latest AND idx IN
-			(SELECT (SELECT max(n.idx) FROM entries n WHERE `+sameSubject+` AND n.idx < $1) FROM entries r WHERE r.type = 'record' AND r.idx >= $1)`, b.Base.Size)
-		batch.Queue(`INSERT INTO standing (idx, state, latest) SELECT r.idx, `+derivedState+`, NOT EXISTS (SELECT 1 FROM entries n WHERE `+sameSubject+` AND n.idx > r.idx)
-			FROM entries r WHERE r.type = 'record' AND r.idx >= $1`, b.Base.Size)
+	var indexes []int64
+	var latest []bool
+	var of [5][]string // of the records that are the latest from now on
+	for _, r := range standings(b) {
+		indexes, latest = append(indexes, r.index), append(latest, r.latest)
+		if r.latest {
+			for i, text := range [5]string{r.Part, r.Revision, r.Joint, r.Aspect, r.kind} {
+				of[i] = append(of[i], text)
+			}
+		}
 	}
-	if hasAbout(b) {
-		batch.Queue(`UPDATE standing SET state = `+derivedState+` FROM entries r WHERE r.idx = standing.idx AND r.id IN
-			(SELECT a.target FROM entries a WHERE a.target <> '' AND a.idx >= $1)`, b.Base.Size)
+	if len(indexes) > 0 {
+		batch.Queue(`UPDATE standing SET latest = false WHERE idx = ANY (ARRAY(
+			SELECT (SELECT max(idx) FROM entries n WHERE `+sameSubject+` AND n.idx < $1)
+			FROM unnest($2::text[], $3::text[], $4::text[], $5::text[], $6::text[]) r (part, revision, joint, aspect, kind)))`,
+			b.Base.Size, of[0], of[1], of[2], of[3], of[4])
+		batch.Queue(`INSERT INTO standing (idx, state, latest) SELECT idx, 'recorded', latest FROM unnest($1::bigint[], $2::boolean[]) r (idx, latest)`, indexes, latest)
+	}
+	if ids := targets(b); len(ids) > 0 {
+		batch.Queue(`UPDATE standing SET state = `+derivedState+` FROM entries r WHERE r.id = ANY ($1) AND standing.idx = r.idx`, ids)
 	}
 }

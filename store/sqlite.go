@@ -56,7 +56,7 @@ func openSQLite(ctx context.Context, file, engine string) (*SQLite, error) {
 		return nil, err
 	}
 	s := &SQLite{known: known}
-	if s.write, err = connectSQLite(file, "_txlock=immediate", "_pragma=journal_mode(WAL)", "_pragma=synchronous(FULL)"); err != nil {
+	if s.write, err = connectSQLite(file, "_txlock=immediate", "_pragma=temp_store(MEMORY)", "_pragma=journal_mode(WAL)", "_pragma=synchronous(FULL)"); err != nil {
 		return nil, err
 	}
 	s.write.SetMaxOpenConns(1)

@@ -3,6 +3,7 @@ package store
 import (
 	"context"
 	"database/sql"
+	"fmt"
 	"iter"
 
 	"jointledger/service"
@@ -38,7 +39,7 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	} else if n == 0 {
 		return service.ErrHeadMoved
 	}
-	if err := sqliteInsert(ctx, tx, `INSERT INTO entries VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)`, func(yield func([]any) bool) {
+	if err := sqliteEach(ctx, tx, `INSERT INTO entries VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)`, func(yield func([]any) bool) {
 		for i := range b.Entries {
 			e := &b.Entries[i]
 			if !yield([]any{
@@ -51,7 +52,7 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	}); err != nil {
 		return err
 	}
-	if err := sqliteInsert(ctx, tx, `INSERT INTO terms VALUES (?, ?, ?, ?)`, func(yield func([]any) bool) {
+	if err := sqliteEach(ctx, tx, `INSERT INTO terms VALUES (?, ?, ?, ?)`, func(yield func([]any) bool) {
 		for _, e := range b.Entries {
 			for place, t := range e.Terms {
 				if !yield([]any{e.Index, place, t.Kind, []byte(t.Value)}) {
@@ -63,7 +64,7 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 		return err
 	}
 	first := ledger.StoredHashCount(b.Base.Size)
-	if err := sqliteInsert(ctx, tx, `INSERT INTO tree_hashes VALUES (?, ?)`, func(yield func([]any) bool) {
+	if err := sqliteEach(ctx, tx, `INSERT INTO tree_hashes VALUES (?, ?)`, func(yield func([]any) bool) {
 		for i := range b.Hashes {
 			if !yield([]any{first + int64(i), b.Hashes[i][:]}) {
 				return
@@ -72,7 +73,7 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	}); err != nil {
 		return err
 	}
-	if err := sqliteInsert(ctx, tx, `INSERT INTO idempotency VALUES (?, ?, ?, ?, ?, ?, ?)`, func(yield func([]any) bool) {
+	if err := sqliteEach(ctx, tx, `INSERT INTO idempotency VALUES (?, ?, ?, ?, ?, ?, ?)`, func(yield func([]any) bool) {
 		for i := range b.Answers {
 			a := &b.Answers[i]
 			if !yield([]any{a.Caller, a.Method, []byte(a.Path), a.Key, a.RequestDigest[:], a.Index, string(a.State)}) {
@@ -90,18 +91,18 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	return sqliteStanding(ctx, tx, b)
 }
 
-// sqliteInsert runs one statement for every row.
-func sqliteInsert(ctx context.Context, tx *sql.Tx, query string, rows iter.Seq[[]any]) error {
-	var insert *sql.Stmt
+// sqliteEach runs one statement with every row of arguments.
+func sqliteEach(ctx context.Context, tx *sql.Tx, query string, rows iter.Seq[[]any]) error {
+	var statement *sql.Stmt
 	for row := range rows {
-		if insert == nil {
+		if statement == nil {
 			var err error
-			if insert, err = tx.PrepareContext(ctx, query); err != nil {
+			if statement, err = tx.PrepareContext(ctx, query); err != nil {
 				return err
 			}
-			defer insert.Close()
+			defer statement.Close()
 		}
-		if _, err := insert.ExecContext(ctx, row...); err != nil {
+		if _, err := statement.ExecContext(ctx, row...); err != nil {
 			return err
 		}
 	}
@@ -124,28 +125,39 @@ func sqliteKey(ctx context.Context, tx *sql.Tx, k service.KeyChange) error {
 	}
 	n, err := done.RowsAffected()
 	if err == nil && n == 0 {
-		err = errRevoke(k)
+		err = defect{fmt.Sprintf("there is no standing key %s to revoke", k.Revoke)}
 	}
 	return err
 }
 
 // sqliteStanding brings the index over the standing of records up to date.
 func sqliteStanding(ctx context.Context, tx *sql.Tx, b service.Batch) error {
-	if hasRecords(b) {
-		if _, err := tx.ExecContext(ctx, `UPDATE standing SET latest = 0 WHERE latest = 1 AND idx IN
-			(SELECT (SELECT max(n.idx) FROM entries n WHERE `+sameSubject+` AND n.idx < ?1) FROM entries r WHERE r.type = 'record' AND r.idx >= ?1)`, b.Base.Size); err != nil {
-			return err
+	records := standings(b)
+	if err := sqliteEach(ctx, tx, `UPDATE standing SET latest = 0 WHERE idx = (SELECT max(idx) FROM entries INDEXED BY entries_subject
+		WHERE type = 'record' AND part = ? AND revision = ? AND joint = ? AND aspect = ? AND kind = ? AND idx < ?)`, func(yield func([]any) bool) {
+		for _, r := range records {
+			if r.latest && !yield([]any{r.Part, r.Revision, r.Joint, r.Aspect, r.kind, b.Base.Size}) {
+				return
+			}
 		}
-		if _, err := tx.ExecContext(ctx, `INSERT INTO standing SELECT r.idx, `+derivedState+`, NOT EXISTS (SELECT 1 FROM entries n WHERE `+sameSubject+` AND n.idx > r.idx)
-			FROM entries r WHERE r.type = 'record' AND r.idx >= ?`, b.Base.Size); err != nil {
-			return err
-		}
+	}); err != nil {
+		return err
 	}
-	if hasAbout(b) {
-		if _, err := tx.ExecContext(ctx, `UPDATE standing SET state = (SELECT `+derivedState+` FROM entries r WHERE r.idx = standing.idx) WHERE idx IN
-			(SELECT r.idx FROM entries a CROSS JOIN entries r ON r.id = a.target WHERE a.target <> '' AND a.idx >= ?)`, b.Base.Size); err != nil {
-			return err
+	if err := sqliteEach(ctx, tx, `INSERT INTO standing VALUES (?, 'recorded', ?)`, func(yield func([]any) bool) {
+		for _, r := range records {
+			if !yield([]any{r.index, r.latest}) {
+				return
+			}
 		}
+	}); err != nil {
+		return err
 	}
-	return nil
+	return sqliteEach(ctx, tx, `UPDATE standing SET state = (SELECT `+derivedState+` FROM entries r WHERE r.idx = standing.idx)
+		WHERE idx = (SELECT idx FROM entries WHERE id = ?)`, func(yield func([]any) bool) {
+		for _, id := range targets(b) {
+			if !yield([]any{id}) {
+				return
+			}
+		}
+	})
 }

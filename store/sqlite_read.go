@@ -202,8 +202,8 @@ func sqliteList(f service.Filter, before int64, limit int) (string, []any) {
 	asked := terms(f)
 	from, order := `entries r NOT INDEXED`, `r.idx`
 	switch {
-	case f.Part != "" && f.Joint != "":
-		from = `entries r INDEXED BY entries_part_joint`
+	case f.Part != "" && f.Revision != "" && f.Joint != "":
+		from = `entries r INDEXED BY entries_subject`
 	case f.Part != "":
 		from = `entries r INDEXED BY entries_part`
 	case f.Joint != "":
@@ -215,11 +215,6 @@ func sqliteList(f service.Filter, before int64, limit int) (string, []any) {
 		add(`t.kind = ? AND t.value = ?`, asked[0].Kind, []byte(asked[0].Value))
 		add(`t.place = (SELECT min(place) FROM terms WHERE idx = t.idx AND kind = t.kind AND value = t.value)`)
 		asked = asked[1:]
-	case f.State != "" && f.State != service.Approved:
-		from, order = standing, `s.idx`
-		add(`s.state = ?`, string(f.State))
-	case f.Revision != "":
-		from = `entries r INDEXED BY entries_revision`
 	case f.State != "":
 		from, order = standing, `s.idx`
 		add(`s.state = ?`, string(f.State))

@@ -11,6 +11,7 @@ package store
 import (
 	"errors"
 	"fmt"
+	"slices"
 	"strings"
 	"unicode/utf8"
 
@@ -95,10 +96,6 @@ type defect struct{ string }
 
 func (d defect) Error() string { return d.string }
 
-func errRevoke(k service.KeyChange) error {
-	return defect{fmt.Sprintf("there is no standing key %q to revoke", k.Revoke)}
-}
-
 // settled reports whether an error says already what it is.
 func settled(err error) bool {
 	var ours defect
@@ -106,24 +103,45 @@ func settled(err error) bool {
 		errors.Is(err, service.ErrHeadMoved) || errors.Is(err, service.ErrNotFound) || errors.Is(err, service.ErrUnavailable)
 }
 
-// hasRecords and hasAbout tell what a batch changes about the standing of
-// records.
-func hasRecords(b service.Batch) bool {
-	for _, e := range b.Entries {
-		if e.Type == "record" {
-			return true
-		}
-	}
-	return false
-}
-
-func hasAbout(b service.Batch) bool {
+// targets are the ids of the records that a batch says something about.
+func targets(b service.Batch) []string {
+	var ids []string
 	for _, e := range b.Entries {
 		if e.Target != "" {
-			return true
+			ids = append(ids, e.Target)
 		}
 	}
-	return false
+	return ids
+}
+
+// subject is what a record stands for among others: the latest of each is what
+// a release rests on.
+type subject struct {
+	service.Subject
+	kind string
+}
+
+// standing is a batch's records as they stand when it is in: Latest is false
+// of one that a later one of the batch replaces.
+type standing struct {
+	index  int64
+	latest bool
+	subject
+}
+
+func standings(b service.Batch) []standing {
+	seen := map[subject]bool{}
+	var all []standing
+	for _, e := range slices.Backward(b.Entries) {
+		if e.Type != "record" {
+			continue
+		}
+		of := subject{e.Subject, e.Kind}
+		all = append(all, standing{e.Index, !seen[of], of})
+		seen[of] = true
+	}
+	slices.Reverse(all)
+	return all
 }
 
 // derivedState derives the state of the record r from the entries about it.

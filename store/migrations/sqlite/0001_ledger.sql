@@ -1,7 +1,8 @@
 -- The ledger. Tables that are only added to refuse UPDATE and DELETE by
 -- trigger. INSERT OR REPLACE goes past DELETE triggers, so that every row is
 -- also refused on insertion where its key exists or, for a numbered table, is
--- not the next.
+-- not the next. There are no foreign keys: what refers to an entry is written
+-- with it, in one batch that was checked.
 
 CREATE TABLE identity (
     one          INTEGER PRIMARY KEY CHECK (one = 1),
@@ -44,9 +45,7 @@ CREATE TABLE entries (
 
 CREATE INDEX entries_subject    ON entries (part, revision, joint, aspect, kind, idx) WHERE type = 'record';
 CREATE INDEX entries_part       ON entries (part, idx) WHERE type = 'record';
-CREATE INDEX entries_part_joint ON entries (part, joint, idx) WHERE type = 'record';
 CREATE INDEX entries_joint      ON entries (joint, idx) WHERE type = 'record';
-CREATE INDEX entries_revision   ON entries (revision, idx) WHERE type = 'record';
 CREATE INDEX entries_author     ON entries (author, idx) WHERE type = 'record';
 CREATE INDEX entries_verdict    ON entries (verdict, idx) WHERE type = 'record';
 CREATE INDEX entries_kind       ON entries (kind, idx) WHERE type = 'record';
@@ -57,7 +56,7 @@ CREATE INDEX entries_target     ON entries (target, idx) WHERE target <> '';
 -- What records rest on, and the names of curve sets. A value is a BLOB: the name of a material may be any
 -- text.
 CREATE TABLE terms (
-    idx   INTEGER NOT NULL REFERENCES entries,
+    idx   INTEGER NOT NULL,
     place INTEGER NOT NULL,
     kind  TEXT NOT NULL,
     value BLOB NOT NULL,
@@ -78,7 +77,7 @@ CREATE TABLE idempotency (
     path           BLOB NOT NULL,
     key            TEXT NOT NULL,
     request_digest BLOB NOT NULL CHECK (length(request_digest) = 32),
-    idx            INTEGER NOT NULL REFERENCES entries,
+    idx            INTEGER NOT NULL,
     state          TEXT NOT NULL,
     PRIMARY KEY (caller, method, path, key)
 ) STRICT, WITHOUT ROWID;
@@ -100,7 +99,7 @@ CREATE TABLE keys (
 -- state and of the latest are quick. It only finds candidates: the state that is
 -- told, and the latest that a release rests on, are derived from the entries.
 CREATE TABLE standing (
-    idx    INTEGER PRIMARY KEY REFERENCES entries,
+    idx    INTEGER PRIMARY KEY,
     state  TEXT NOT NULL,
     latest INTEGER NOT NULL CHECK (latest IN (0, 1))
 ) STRICT;
