@@ -3,6 +3,7 @@ package store_test
 import (
 	"context"
 	"database/sql"
+	"errors"
 	"fmt"
 	"os"
 	"path/filepath"
@@ -112,6 +113,65 @@ func TestSQLiteRefusesChanges(t *testing.T) {
 	}, statements)
 }
 
+// The index over the standing of records can be changed, and never makes a list
+// lie: it is compared with the entries.
+func TestStandingIsOnlyAnIndex(t *testing.T) {
+	check := func(t *testing.T, s service.Store, run func(statement string) error) {
+		filled(t, s)
+		for _, c := range []struct {
+			change string
+			filter service.Filter
+		}{
+			{`UPDATE standing SET state = 'approved' WHERE idx = 0`, service.Filter{State: service.Approved}},
+			{`UPDATE standing SET state = 'recorded'`, service.Filter{State: service.Recorded, Part: "SM-110"}},
+			{`UPDATE standing SET latest = (1 = 1)`, service.Filter{Latest: true}},
+			{`UPDATE standing SET latest = (1 = 1)`, service.Filter{Latest: true, Joint: "J1"}},
+		} {
+			if err := run(c.change); err != nil {
+				t.Fatal(err)
+			}
+			found, err := s.Records(t.Context(), c.filter, 1<<40, 10)
+			if err == nil || !strings.Contains(err.Error(), "otherwise than the entries say") || errors.Is(err, service.ErrUnavailable) {
+				t.Errorf("after %s: %v, %v", c.change, found, err)
+			}
+		}
+		latest, err := s.Latest(t.Context(), "SM-110", "A")
+		if err != nil || len(latest) != 1 || latest[0].Index != 1 {
+			t.Errorf("latest for a release: %+v, %v", latest, err)
+		}
+	}
+	t.Run("SQLite", func(t *testing.T) {
+		file := filepath.Join(t.TempDir(), "ledger.db")
+		s, err := store.OpenSQLite(t.Context(), file)
+		if err != nil {
+			t.Fatal(err)
+		}
+		defer s.Close()
+		db, err := sql.Open("sqlite", file)
+		if err != nil {
+			t.Fatal(err)
+		}
+		defer db.Close()
+		check(t, s, func(statement string) error {
+			_, err := db.ExecContext(t.Context(), statement)
+			return err
+		})
+	})
+	t.Run("Postgres", func(t *testing.T) {
+		url := storetest.Database(t)
+		s, err := store.OpenPostgres(t.Context(), url)
+		if err != nil {
+			t.Fatal(err)
+		}
+		defer s.Close()
+		db := connect(t, url)
+		check(t, s, func(statement string) error {
+			_, err := db.Exec(t.Context(), statement)
+			return err
+		})
+	})
+}
+
 func texts(t *testing.T, db *sql.DB, query string) (found []string) {
 	t.Helper()
 	rows, err := db.QueryContext(t.Context(), query)
@@ -165,7 +225,7 @@ func TestPostgresRefusesChanges(t *testing.T) {
 				statements = append(statements, `DELETE FROM `+table, `TRUNCATE `+table+` CASCADE`)
 			}
 			statements = append(statements,
-				`UPDATE head SET size = 2`, `UPDATE head SET root = root`, `DELETE FROM head`, `TRUNCATE head`, `DELETE FROM keys`, `TRUNCATE keys`)
+				`UPDATE head SET size = 2`, `UPDATE head SET root = root`, `DELETE FROM head`, `TRUNCATE head`, `DELETE FROM keys`, `TRUNCATE keys CASCADE`)
 			refused(t, s, func(statement string) error {
 				_, err := db.Exec(t.Context(), statement)
 				return err

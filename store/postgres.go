@@ -38,6 +38,7 @@ const (
 var postgresDefaults = map[string]string{
 	"application_name":                    "jointledger",
 	"statement_timeout":                   "10s",
+	"jit":                                 "off", // it costs more than these queries take
 	"idle_in_transaction_session_timeout": "30s",
 }
 

@@ -159,7 +159,10 @@ func (s *Postgres) Records(ctx context.Context, f service.Filter, before int64, 
 		return nil, postgresError(err)
 	}
 	found, err := pgx.CollectRows(rows, func(row pgx.CollectableRow) (r service.Summary, err error) {
-		err = scanPostgres(row, &r.Entry, &r.State)
+		var latest bool
+		if err = scanPostgres(row, &r.Entry, &r.State, &latest); err == nil {
+			err = listed(f, &r, latest)
+		}
 		return r, err
 	})
 	return found, postgresError(err)
@@ -200,7 +203,6 @@ func postgresList(f service.Filter, before int64, limit int) (string, []any) {
 	if f.State != "" {
 		from = `standing s JOIN entries r USING (idx)`
 		add(`s.state = $%d`, string(f.State))
-		add(derivedState+` = $%d`, string(f.State))
 	}
 	switch {
 	case f.Latest && f.Part != "":
@@ -214,10 +216,9 @@ func postgresList(f service.Filter, before int64, limit int) (string, []any) {
 	case f.Latest:
 		from = `standing s JOIN entries r USING (idx)`
 		add(`s.latest`)
-		add(`NOT EXISTS (SELECT 1 FROM entries n WHERE ` + sameSubject + ` AND n.idx > r.idx)`)
 	}
 	args = append(args, limit)
-	return `SELECT ` + postgresColumns + `, ` + derivedState + ` FROM ` + from + ` WHERE ` + strings.Join(where, ` AND `) +
+	return `SELECT ` + postgresColumns + `, ` + derivedState + `, ` + isLatest(f) + ` FROM ` + from + ` WHERE ` + strings.Join(where, ` AND `) +
 		fmt.Sprintf(` ORDER BY r.idx DESC LIMIT $%d`, len(args)), args
 }
 

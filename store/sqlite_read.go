@@ -180,11 +180,12 @@ func (s *SQLite) Records(ctx context.Context, f service.Filter, before int64, li
 	var found []service.Summary
 	err = each(rows, func() error {
 		var r service.Summary
-		if err := scanSQLite(rows.Scan, &r.Entry, &r.State); err != nil {
+		var latest bool
+		if err := scanSQLite(rows.Scan, &r.Entry, &r.State, &latest); err != nil {
 			return err
 		}
 		found = append(found, r)
-		return nil
+		return listed(f, &r, latest)
 	})
 	return found, err
 }
@@ -220,7 +221,6 @@ func sqliteList(f service.Filter, before int64, limit int) (string, []any) {
 		add(`s.state = ?`, string(f.State))
 	case f.Latest:
 		from, order = standing, `s.idx`
-		add(`s.latest = 1`)
 	case f.Verdict != "":
 		from = `entries r INDEXED BY entries_verdict`
 	case f.Kind != "":
@@ -246,8 +246,8 @@ func sqliteList(f service.Filter, before int64, limit int) (string, []any) {
 	for _, t := range asked {
 		add(`EXISTS (SELECT 1 FROM terms WHERE kind = ? AND value = ? AND idx = r.idx)`, t.Kind, []byte(t.Value))
 	}
-	if f.State != "" {
-		add(derivedState+` = ?`, string(f.State))
+	if f.State != "" && order != `s.idx` {
+		add(`EXISTS (SELECT 1 FROM standing WHERE state = ? AND idx = r.idx)`, string(f.State))
 	}
 	switch {
 	case f.Latest && f.Part != "":
@@ -259,10 +259,12 @@ func sqliteList(f service.Filter, before int64, limit int) (string, []any) {
 			revision, values = ` AND revision = ?`, append(values, f.Revision)
 		}
 		add(`r.idx IN (SELECT max(idx) FROM entries INDEXED BY entries_subject WHERE type = 'record' AND part = ?`+revision+` GROUP BY part, revision, joint, aspect, kind)`, values...)
+	case f.Latest && order != `s.idx`:
+		add(`EXISTS (SELECT 1 FROM standing WHERE latest = 1 AND idx = r.idx)`)
 	case f.Latest:
-		add(`NOT EXISTS (SELECT 1 FROM entries n WHERE ` + sameSubject + ` AND n.idx > r.idx)`)
+		add(`s.latest = 1`)
 	}
-	return `SELECT ` + sqliteColumns + `, ` + derivedState + ` FROM ` + from + ` WHERE ` + strings.Join(where, ` AND `) +
+	return `SELECT ` + sqliteColumns + `, ` + derivedState + `, ` + isLatest(f) + ` FROM ` + from + ` WHERE ` + strings.Join(where, ` AND `) +
 		` ORDER BY ` + order + ` DESC LIMIT ?`, append(args, limit)
 }
 

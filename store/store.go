@@ -144,16 +144,32 @@ func standings(b service.Batch) []standing {
 	return all
 }
 
-// derivedState derives the state of the record r from the entries about it.
-const derivedState = `CASE
-	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'withdrawal') THEN 'withdrawn'
-	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'sign-off' AND a.role = 'approved') THEN 'approved'
-	WHEN EXISTS (SELECT 1 FROM entries a WHERE a.target = r.id AND a.target <> '' AND a.type = 'sign-off' AND a.role = 'checked') THEN 'checked'
-	ELSE 'recorded' END`
+// derivedState derives the state of the record r from the entries about it: one
+// look into their index.
+const derivedState = `CASE (SELECT max(CASE WHEN a.type = 'withdrawal' THEN 3 WHEN a.type <> 'sign-off' THEN 0 WHEN a.role = 'approved' THEN 2 WHEN a.role = 'checked' THEN 1 END)
+	FROM entries a WHERE a.target = r.id AND a.target <> '') WHEN 3 THEN 'withdrawn' WHEN 2 THEN 'approved' WHEN 1 THEN 'checked' ELSE 'recorded' END`
 
 // sameSubject finds the records n of the part, revision, joint, aspect and kind
 // of the record r.
 const sameSubject = `n.type = 'record' AND n.part = r.part AND n.revision = r.revision AND n.joint = r.joint AND n.aspect = r.aspect AND n.kind = r.kind`
+
+// isLatest is true of the record r that no later one replaces; it is true of all
+// where a list does not ask.
+func isLatest(f service.Filter) string {
+	if !f.Latest {
+		return `1 = 1`
+	}
+	return `r.idx = (SELECT max(n.idx) FROM entries n WHERE ` + sameSubject + `)`
+}
+
+// listed checks a record that an index found against what the entries say: its
+// state, and whether it is the latest.
+func listed(f service.Filter, r *service.Summary, latest bool) error {
+	if f.State != "" && r.State != f.State || f.Latest && !latest {
+		return defect{fmt.Sprintf("the index over the standing of records has entry %d otherwise than the entries say", r.Index)}
+	}
+	return nil
+}
 
 // A page is what Entries reads at once: so many entries, and so many bytes
 // before the last of them, so that a slow reader holds no transaction open.

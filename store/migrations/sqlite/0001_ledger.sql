@@ -96,8 +96,9 @@ CREATE TABLE keys (
 ) STRICT;
 
 -- An index over what the entries say of each record now, kept so that lists by
--- state and of the latest are quick. It only finds candidates: the state that is
--- told, and the latest that a release rests on, are derived from the entries.
+-- state and of the latest are quick. It only finds records: the state that is
+-- told is derived from the entries, a list whose records do not have the state
+-- that they were found by is refused, and a release does not look here.
 CREATE TABLE standing (
     idx    INTEGER PRIMARY KEY,
     state  TEXT NOT NULL,
