@@ -45,7 +45,7 @@ func newPlastic(k *stack, s *Splice) *plasticSharing {
 		i, row := x-node.row, &s.Rows[node.row]
 		q.weight[i] = strengths[node.row]
 		if q.byArea {
-			q.weight[i] = float64(row.Count) * row.Diameter * row.Diameter
+			q.weight[i] = float64(float64(row.Count) * row.Diameter * row.Diameter)
 		}
 		sums[k.pair[i]] += float64(q.weight[i])
 	}

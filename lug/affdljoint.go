@@ -298,7 +298,7 @@ func (p *affdlPin) outerTang(st *jointState) float64 {
 	if !st.weak {
 		return p.tang1.value
 	}
-	return p.tang1.value / (1 + 3/tangPlastic*(1-min(st.b1/p.m.clevis.head.Thickness, 1)))
+	return p.tang1.value / (1 + float64(3/tangPlastic*(1-min(st.b1/p.m.clevis.head.Thickness, 1))))
 }
 
 // traceOuterTang writes P_t of one leg of the clevis.

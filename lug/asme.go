@@ -107,7 +107,7 @@ func (h *asmeHead) clearance(s *sheet) float64 {
 	if h.b.value("clearance").Word == "one" && strength.More(ratio, closePin) {
 		return s.apply(&eqClearOne, 1)
 	}
-	return s.apply(&eqClearFormula, 1-0.275*math.Sqrt(max(0, 1-float64(ratio*ratio))))
+	return s.apply(&eqClearFormula, 1-float64(0.275*math.Sqrt(max(0, 1-float64(ratio*ratio)))))
 }
 
 func (p *part) actualWidth(s *sheet) float64 { return s.apply(&eqActualWidth, p.side(s)-p.hole(s)/2) }

@@ -157,7 +157,7 @@ func (z *sizer) with(x float64) Joint {
 			j.Clevis.HoleDiameter += more
 		}
 		if j.Pin != nil && z.want.Ratio != 0 {
-			j.Pin.Diameter = z.want.Ratio * x
+			j.Pin.Diameter = float64(z.want.Ratio * x)
 		} else if j.Pin != nil {
 			j.Pin.Diameter += more
 		}
