@@ -281,6 +281,9 @@ func inspectValue(d *jsontext.Decoder, t reflect.Type) error {
 		}
 	}
 	if (kind == Object || kind == Array) && d.StackDepth() >= MaxDepth {
+		if _, err := d.ReadToken(); err != nil {
+			return err
+		}
 		return &Error{string(d.StackPointer()), fmt.Sprintf("nested deeper than %d", MaxDepth)}
 	}
 	switch kind {

@@ -57,7 +57,7 @@ func TestDecodeRefuses(t *testing.T) {
 		"object inside":      {`{` + rest + `,"material":{"width":1,"high":2}}`, "/material/high"},
 		"number for either":  {`{` + rest + `,"material":1}`, "/material"},
 		"invalid UTF-8":      {"{" + rest + ",\"free\":\"\xff\"}", "/free"},
-		"deep":               {`{` + rest + `,"free":` + strings.Repeat("[", 32) + strings.Repeat("]", 32) + `}`, "/free" + strings.Repeat("/0", 30)},
+		"deep":               {`{` + rest + `,"free":` + strings.Repeat("[", 32) + strings.Repeat("]", 32) + `}`, "/free" + strings.Repeat("/0", 31)},
 	} {
 		t.Run(name, func(t *testing.T) {
 			var d document
