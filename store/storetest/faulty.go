@@ -14,15 +14,16 @@ import (
 // Fault is how a call fails.
 type Fault int
 
-// The faults. To its caller the two failures look the same.
+// The faults. To its caller NotStored and Stored look the same.
 const (
 	None      Fault = iota
 	NotStored       // the call fails before it reaches the store
 	Stored          // the store has done the call, and the answer is lost
+	Broken          // the call fails as by a defect, with no error of service
 )
 
 // ErrInjected is in every failure that a Faulty makes, under
-// service.ErrUnavailable.
+// service.ErrUnavailable unless it is Broken.
 var ErrInjected = errors.New("failed on purpose")
 
 // Faulty is a store whose calls fail as a plan says.
@@ -99,6 +100,8 @@ func do[T any](f *Faulty, call string, inner func() (T, error)) (T, error) {
 			return nothing, err
 		}
 		return nothing, failed
+	case Broken:
+		return nothing, ErrInjected
 	}
 	return inner()
 }
