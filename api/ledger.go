@@ -3,6 +3,7 @@ package api
 import (
 	"context"
 	"mime"
+	"net/url"
 
 	"jointledger/service"
 )
@@ -97,9 +98,7 @@ func (v *server) releaseCheck(ctx context.Context, r *Request) (*Response, error
 		dryRun = true
 	case "", "false":
 	default:
-		return nil, &service.Problem{Code: service.Malformed, Detail: "The query is not one that is known here.", Errors: []service.FieldError{
-			{Pointer: "/dry_run", Detail: "must be true or false, or left out"},
-		}}
+		return nil, service.MalformedQuery(service.QueryFault("dry_run", "must be true or false, or left out"))
 	}
 	if !dryRun && !r.Caller.Role.May(service.Gate) {
 		return nil, forbidden(r.Caller, service.Gate)
@@ -136,7 +135,7 @@ func (v *server) registerCurveSet(ctx context.Context, r *Request) (*Response, e
 	if err != nil {
 		return nil, err
 	}
-	return created(set, again, "/v1/curve-sets/"+set.CurveSet.ID+"@"+set.CurveSet.Version)
+	return created(set, again, "/v1/curve-sets/"+url.PathEscape(set.CurveSet.ID+"@"+set.CurveSet.Version))
 }
 
 func (v *server) curveSets(ctx context.Context, _ *Request) (*Response, error) {

@@ -9,6 +9,7 @@ import (
 	"net/http"
 	"net/netip"
 	"runtime/debug"
+	"slices"
 	"strconv"
 	"strings"
 	"time"
@@ -28,7 +29,9 @@ func (v *server) observe(next echo.HandlerFunc) echo.HandlerFunc {
 		header.Set(echo.HeaderXContentTypeOptions, "nosniff")
 		v.metrics.inFlight.Inc()
 		defer v.metrics.inFlight.Dec()
+		cut := false
 		if err := next(c); err != nil {
+			cut = c.Response().Committed
 			v.fail(c, err)
 		}
 		took := time.Since(start)
@@ -37,13 +40,25 @@ func (v *server) observe(next echo.HandlerFunc) echo.HandlerFunc {
 		if template == "" {
 			template = "none"
 		}
-		v.metrics.requests.WithLabelValues(c.Request().Method, template, strconv.Itoa(status)).Observe(took.Seconds())
+		// A label must not be what callers choose.
+		method := c.Request().Method
+		if !slices.Contains(methods, method) {
+			method = "other"
+		}
+		v.metrics.requests.WithLabelValues(method, template, strconv.Itoa(status)).Observe(took.Seconds())
 		v.options.Log.LogAttrs(c.Request().Context(), slog.LevelInfo, "request",
 			slog.String("request", id), slog.String("method", c.Request().Method), slog.String("route", template),
 			slog.Int("status", status), slog.Int64("bytes", c.Response().Size), slog.Duration("took", took))
+		if cut {
+			// Without its last chunk nobody takes the answer for a whole one.
+			panic(http.ErrAbortHandler)
+		}
 		return nil
 	}
 }
+
+// methods are those of HTTP that have a use here or are asked for by mistake.
+var methods = []string{http.MethodGet, http.MethodPost, http.MethodHead, http.MethodOptions, http.MethodPut, http.MethodPatch, http.MethodDelete}
 
 // recover turns a panic, a defect, into a problem and a log with its stack.
 func (v *server) recover(next echo.HandlerFunc) echo.HandlerFunc {
@@ -68,8 +83,8 @@ func (v *server) shield(next echo.HandlerFunc) echo.HandlerFunc {
 			return &service.Problem{Code: service.TooLarge, Detail: "The address is longer than 8 KiB."}
 		}
 		open, err := v.service.Open(c.Request().Context())
-		if err != nil || !open {
-			// What needs no caller still answers; all else finds no key.
+		c.SetRequest(c.Request().WithContext(context.WithValue(c.Request().Context(), modeKey{}, mode{open, err})))
+		if !open {
 			return next(c)
 		}
 		// Without keys whoever reaches the port may do everything, so only
@@ -83,13 +98,18 @@ func (v *server) shield(next echo.HandlerFunc) echo.HandlerFunc {
 				return &service.Problem{Code: service.Forbidden, Detail: "This server has no keys and answers no forwarded requests. Make keys to put it behind a proxy: jointledger key add NAME --role ROLE."}
 			}
 		}
-		c.SetRequest(c.Request().WithContext(context.WithValue(c.Request().Context(), openMode{}, true)))
 		return next(c)
 	}
 }
 
-// openMode marks, in its context, a request to a server without keys.
-type openMode struct{}
+// mode is what a request's context keeps under modeKey: whether the server is
+// without keys, or why that cannot be told.
+type mode struct {
+	open bool
+	err  error
+}
+
+type modeKey struct{}
 
 // loopbackName reports whether a Host header names this machine itself.
 func loopbackName(host string) bool {

@@ -82,13 +82,13 @@ func viewOf(query url.Values) (service.View, error) {
 		view.NoWorkings = true
 	case "":
 	default:
-		found = append(found, service.FieldError{Pointer: "/workings", Detail: "must be none, or left out"})
+		found = append(found, service.QueryFault("workings", "must be none, or left out"))
 	}
 	if query.Has("checks") && view.Checks != "all" && view.Checks != "governing" {
-		found = append(found, service.FieldError{Pointer: "/checks", Detail: "must be all or governing, or left out"})
+		found = append(found, service.QueryFault("checks", "must be all or governing, or left out"))
 	}
 	if found != nil {
-		return view, &service.Problem{Code: service.Malformed, Detail: "The query is not one that is known here.", Errors: found}
+		return view, service.MalformedQuery(found...)
 	}
 	return view, nil
 }

@@ -182,14 +182,16 @@ func queryOf(u *url.URL, known []string) (url.Values, error) {
 			if len(known) > 0 {
 				detail = "there is no query parameter of this name; there are " + strings.Join(known, ", ")
 			}
-			found = append(found, service.FieldError{Pointer: "/" + name, Detail: detail})
+			found = append(found, service.QueryFault(name, detail))
+		case given[0] == "":
+			found = append(found, service.QueryFault(name, "is empty; give it a value or leave it out"))
 		case len(given) > 1:
-			found = append(found, service.FieldError{Pointer: "/" + name, Detail: "is given twice"})
+			found = append(found, service.QueryFault(name, "is given twice"))
 		}
 	}
 	if found != nil {
 		slices.SortFunc(found, func(a, b service.FieldError) int { return strings.Compare(a.Pointer, b.Pointer) })
-		return nil, &service.Problem{Code: service.Malformed, Detail: "The query is not one that is known here.", Errors: found}
+		return nil, service.MalformedQuery(found...)
 	}
 	return values, nil
 }

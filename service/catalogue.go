@@ -9,14 +9,6 @@ import (
 	"jointledger/strength"
 )
 
-// queryProblem is a word of the query that is not one of a fixed set.
-func queryProblem(name, detail string) *Problem {
-	return &Problem{
-		Code: Malformed, Detail: "The query is not one that is known here.",
-		Errors: []FieldError{{pointer(name), detail}},
-	}
-}
-
 // unitsOf reads the units that a catalogue is asked in; SI when not said,
 // since a table of published values is not the caller's own number.
 func unitsOf(given string) (Units, error) {
@@ -24,7 +16,7 @@ func unitsOf(given string) (Units, error) {
 	case given == "":
 		return SI, nil
 	case !slices.Contains(Units("").Words(), given):
-		return "", queryProblem("units", "must be SI or US")
+		return "", MalformedQuery(QueryFault("units", "must be SI or US"))
 	}
 	return Units(given), nil
 }
@@ -109,7 +101,7 @@ func Methods(kind string) (*MethodList, error) {
 		}
 	}
 	if !slices.Contains(kinds, kind) {
-		return nil, queryProblem("kind", "must be one of "+strings.Join(kinds, ", "))
+		return nil, MalformedQuery(QueryFault("kind", "must be one of "+strings.Join(kinds, ", ")))
 	}
 	return &MethodList{slices.DeleteFunc(all, func(m MethodItem) bool { return m.Kind != kind })}, nil
 }

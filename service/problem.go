@@ -69,6 +69,17 @@ func malformed(err error, at string) *Problem {
 	}
 }
 
+// QueryFault is what is wrong with a parameter of a query, at the pointer that
+// stands for it: a slash and its name.
+func QueryFault(name, detail string) FieldError {
+	return FieldError{pointer(strings.ToValidUTF8(name, "\uFFFD")), detail}
+}
+
+// MalformedQuery is the problem of a query that cannot be read.
+func MalformedQuery(found ...FieldError) *Problem {
+	return &Problem{Code: Malformed, Detail: "The query is not one that is known here.", Errors: found}
+}
+
 // faults collects what is wrong with the values of a document.
 type faults struct {
 	list []FieldError

@@ -104,14 +104,13 @@ func (s *Service) Replays(ctx context.Context, body []byte) (func(context.Contex
 	if found := f.problem(); found != nil {
 		return nil, found
 	}
+	page, err := s.store.Records(ctx, filter, int64(1)<<62, replayPage)
+	if err != nil {
+		return nil, s.fail(err)
+	}
 	return func(ctx context.Context, w io.Writer) error {
 		var done replayDone
-		before := int64(1) << 62
 		for {
-			page, err := s.store.Records(ctx, filter, before, replayPage)
-			if err != nil {
-				return err
-			}
 			items, err := s.replayAll(ctx, page, request.Substitute)
 			if err != nil {
 				return err
@@ -131,8 +130,10 @@ func (s *Service) Replays(ctx context.Context, body []byte) (func(context.Contex
 			if len(page) < replayPage {
 				return writeLine(w, replayLine{Done: &done})
 			}
-			before = page[len(page)-1].Index
 			if err := writeLine(w, replayLine{Progress: &replayProgress{done.Records}}); err != nil {
+				return err
+			}
+			if page, err = s.store.Records(ctx, filter, page[len(page)-1].Index, replayPage); err != nil {
 				return err
 			}
 		}

@@ -173,9 +173,19 @@ func (f *faults) unique(list string, n int, id func(int) string) {
 	}
 }
 
-// take adds what pure code found wrong, in the caller's units.
+// take adds what pure code found wrong, in the caller's units. What it says of
+// a list whose elements have faults already only follows from those.
 func (f *faults) take(found []strength.Fault, u Units) {
+	above := map[string]bool{}
+	for _, e := range f.list {
+		for at := e.Pointer; at != "" && !above[at]; at = at[:strings.LastIndexByte(at, '/')] {
+			above[at] = true
+		}
+	}
 	for _, fault := range found {
+		if above[fault.Pointer] {
+			continue
+		}
 		f.add(fault.Pointer, "%s", u.say(fault.Message))
 	}
 }
