@@ -118,12 +118,6 @@ func Canonical(v any) ([]byte, error) {
 	return value, nil
 }
 
-// IsCanonical reports whether data is one JSON value in the form of RFC 8785.
-func IsCanonical(data []byte) bool {
-	value := jsontext.Value(bytes.Clone(data))
-	return value.Canonicalize() == nil && bytes.Equal(value, data)
-}
-
 // Either is a plain string or number, or an object in its place. Object is nil
 // for the plain form.
 type Either[A string | float64, B any] struct {
