@@ -27,6 +27,7 @@ const (
 	prometheus = "github.com/prometheus/client_golang"
 	rate       = "golang.org/x/time/rate"
 	kong       = "github.com/alecthomas/kong"
+	netutil    = "golang.org/x/net/netutil"
 )
 
 // mayImport says for each package of this module which others it may import
@@ -46,7 +47,7 @@ var mayImport = map[string][]string{
 	"api/pages":          {"service", "strength"},
 	"api/client":         {"service/strictjson"},
 	".": {
-		"strength", "lug", "fastener", "service", "service/ledger", "service/strictjson", "store", "api", "api/client", kong,
+		"strength", "lug", "fastener", "service", "service/ledger", "service/strictjson", "store", "api", "api/client", kong, netutil,
 	},
 }
 

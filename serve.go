@@ -11,16 +11,19 @@ import (
 	"os"
 	"time"
 
+	"golang.org/x/net/netutil"
+
 	"jointledger/api"
 	"jointledger/service"
 )
 
 // serveCommand answers over HTTP.
 type serveCommand struct {
-	Listen      string   `help:"Address to listen on." default:"127.0.0.1:8080" env:"JOINTLEDGER_LISTEN" placeholder:"HOST:PORT"`
-	RateLimit   float64  `help:"Requests a second that each caller may make; 0 is no limit." default:"0" env:"JOINTLEDGER_RATE_LIMIT" placeholder:"N"`
-	CORSOrigins []string `help:"Web origin whose pages may call, such as https://tools.example; none by default." name:"cors-origin" env:"JOINTLEDGER_CORS_ORIGIN" placeholder:"ORIGIN"`
-	Policies    string   `help:"File of named release policies." env:"JOINTLEDGER_POLICIES" placeholder:"FILE"`
+	Listen      string        `help:"Address to listen on." default:"127.0.0.1:8080" env:"JOINTLEDGER_LISTEN" placeholder:"HOST:PORT"`
+	RateLimit   float64       `help:"Requests a second that each caller may make; 0 is no limit." default:"0" env:"JOINTLEDGER_RATE_LIMIT" placeholder:"N"`
+	CORSOrigins []string      `help:"Web origin whose pages may call, such as https://tools.example; none by default." name:"cors-origin" env:"JOINTLEDGER_CORS_ORIGIN" placeholder:"ORIGIN"`
+	DrainNotice time.Duration `help:"How long /readyz fails after SIGTERM before no more requests are accepted: longer than what sends them here takes to notice." default:"200ms" env:"JOINTLEDGER_DRAIN_NOTICE" placeholder:"TIME"`
+	Policies    string        `help:"File of named release policies." env:"JOINTLEDGER_POLICIES" placeholder:"FILE"`
 	place
 }
 
@@ -40,12 +43,9 @@ func (c serveCommand) policies() (service.Policies, error) {
 	return policies, nil
 }
 
-// drainTime is how long requests that have begun may take after SIGTERM, and
-// noticeTime how long /readyz fails before no more are accepted.
-const (
-	drainTime  = 25 * time.Second
-	noticeTime = 200 * time.Millisecond
-)
+// drainTime is how long requests that have begun may take after SIGTERM and
+// the notice.
+const drainTime = 25 * time.Second
 
 // Run serves until the context ends, then drains.
 func (c serveCommand) Run(ctx context.Context, std *streams) error {
@@ -75,8 +75,9 @@ func (c serveCommand) Run(ctx context.Context, std *streams) error {
 	server := api.Serve(api.New(s, api.Options{
 		Log: log, Metrics: metrics, RateLimit: c.RateLimit, CORSOrigins: c.CORSOrigins, OpenAPI: openapi,
 	}), log)
+	server.ConnState = metrics.Connection
 	ended := make(chan error, 1)
-	go func() { ended <- server.Serve(listener) }()
+	go func() { ended <- server.Serve(netutil.LimitListener(listener, api.MostConnections)) }()
 	log.Info("serving", "address", "http://"+listener.Addr().String(), "open", open)
 	select {
 	case err := <-ended:
@@ -85,7 +86,7 @@ func (c serveCommand) Run(ctx context.Context, std *streams) error {
 	}
 	log.Info("draining")
 	s.Drain()
-	time.Sleep(noticeTime)
+	time.Sleep(c.DrainNotice)
 	late, cancel := context.WithTimeout(context.Background(), drainTime)
 	defer cancel()
 	if err := server.Shutdown(late); err != nil && !errors.Is(err, http.ErrServerClosed) {

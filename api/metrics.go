@@ -2,11 +2,16 @@ package api
 
 import (
 	"log/slog"
+	"net"
 	"net/http"
+	"runtime"
+	"time"
 
 	"github.com/prometheus/client_golang/prometheus"
 	"github.com/prometheus/client_golang/prometheus/collectors"
 	"github.com/prometheus/client_golang/prometheus/promhttp"
+
+	"jointledger/service"
 )
 
 // Metrics are what an operator watches. They implement service.Watch.
@@ -18,12 +23,15 @@ type Metrics struct {
 	panics   prometheus.Counter
 
 	calculations *prometheus.CounterVec
+	appends      *prometheus.HistogramVec
 	groups       prometheus.Histogram
 	appended     prometheus.Counter
 	appendedAt   prometheus.Gauge
 	decisions    *prometheus.CounterVec
 	reasons      *prometheus.CounterVec
+	replays      *prometheus.CounterVec
 	altered      prometheus.Counter
+	connections  prometheus.Gauge
 	log          *slog.Logger
 }
 
@@ -50,6 +58,10 @@ func NewMetrics(log *slog.Logger) *Metrics {
 	m.calculations = prometheus.NewCounterVec(prometheus.CounterOpts{
 		Name: "jointledger_calculations_total", Help: "Answers by method and verdict.",
 	}, []string{"method", "verdict"})
+	m.appends = prometheus.NewHistogramVec(prometheus.HistogramOpts{
+		Name: "jointledger_append_duration_seconds", Help: "Time that the store took for a transaction of entries, by what became of it: stored, moved (another replica was first) or failed.",
+		Buckets: []float64{.0005, .001, .0025, .005, .01, .025, .05, .1, .25, .5, 1, 2.5, 10},
+	}, []string{"outcome"})
 	m.groups = prometheus.NewHistogram(prometheus.HistogramOpts{
 		Name: "jointledger_append_group_entries", Help: "Entries appended in one transaction.",
 		Buckets: []float64{1, 2, 4, 8, 16, 32, 64, 128, 256},
@@ -69,8 +81,25 @@ func NewMetrics(log *slog.Logger) *Metrics {
 	m.altered = prometheus.NewCounter(prometheus.CounterOpts{
 		Name: "jointledger_altered_rows_total", Help: "Times that stored rows were not those that were signed. Anything but 0 is an emergency.",
 	})
-	m.registry.MustRegister(m.requests, m.bodies, m.inFlight, m.panics,
-		m.calculations, m.groups, m.appended, m.appendedAt, m.decisions, m.reasons, m.altered,
+	m.replays = prometheus.NewCounterVec(prometheus.CounterOpts{
+		Name: "jointledger_replays_total", Help: "Records that were computed again as they were recorded, by outcome: reproduced or different. A difference says that this program does not compute what the recorded one did.",
+	}, []string{"outcome"})
+	m.connections = prometheus.NewGauge(prometheus.GaugeOpts{
+		Name: "jointledger_connections", Help: "Connections that are open, idle ones too.",
+	})
+	build := prometheus.NewGauge(prometheus.GaugeOpts{
+		Name: "jointledger_build_info", Help: "Always 1; the labels say which program this is.",
+		ConstLabels: prometheus.Labels{"version": service.Engine, "go": runtime.Version()},
+	})
+	build.Set(1)
+	// An alert on a rate needs the zero that it rises from.
+	for _, outcome := range []service.Outcome{service.Stored, service.Moved, service.Failed} {
+		m.appends.WithLabelValues(string(outcome))
+	}
+	m.replays.WithLabelValues(reproduced)
+	m.replays.WithLabelValues(different)
+	m.registry.MustRegister(m.requests, m.bodies, m.inFlight, m.panics, m.connections, build,
+		m.calculations, m.appends, m.groups, m.appended, m.appendedAt, m.decisions, m.reasons, m.replays, m.altered,
 		collectors.NewGoCollector(), collectors.NewProcessCollector(collectors.ProcessCollectorOpts{}))
 	return m
 }
@@ -80,8 +109,12 @@ func (m *Metrics) Calculated(method, verdict string) {
 	m.calculations.WithLabelValues(method, verdict).Inc()
 }
 
-// Grouped implements service.Watch.
-func (m *Metrics) Grouped(entries int) {
+// Appended implements service.Watch.
+func (m *Metrics) Appended(outcome service.Outcome, entries int, took time.Duration) {
+	m.appends.WithLabelValues(string(outcome)).Observe(took.Seconds())
+	if outcome != service.Stored {
+		return
+	}
 	m.groups.Observe(float64(entries))
 	m.appended.Add(float64(entries))
 	m.appendedAt.SetToCurrentTime()
@@ -92,6 +125,32 @@ func (m *Metrics) Decided(decision string, codes []string) {
 	m.decisions.WithLabelValues(decision).Inc()
 	for _, code := range codes {
 		m.reasons.WithLabelValues(code).Inc()
+	}
+}
+
+// Outcomes of replays.
+const (
+	reproduced = "reproduced"
+	different  = "different"
+)
+
+// Replayed implements service.Watch.
+func (m *Metrics) Replayed(same bool) {
+	outcome := different
+	if same {
+		outcome = reproduced
+	}
+	m.replays.WithLabelValues(outcome).Inc()
+}
+
+// Connection follows a connection from its first to its last state, as
+// http.Server tells of them.
+func (m *Metrics) Connection(_ net.Conn, state http.ConnState) {
+	switch state {
+	case http.StateNew:
+		m.connections.Inc()
+	case http.StateHijacked, http.StateClosed:
+		m.connections.Dec()
 	}
 }
 

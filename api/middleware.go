@@ -46,9 +46,9 @@ func (v *server) observe(next echo.HandlerFunc) echo.HandlerFunc {
 			method = "other"
 		}
 		v.metrics.requests.WithLabelValues(method, template, strconv.Itoa(status)).Observe(took.Seconds())
-		v.options.Log.LogAttrs(c.Request().Context(), slog.LevelInfo, "request",
-			slog.String("request", id), slog.String("method", c.Request().Method), slog.String("route", template),
-			slog.Int("status", status), slog.Int64("bytes", c.Response().Size), slog.Duration("took", took))
+		v.options.Log.LogAttrs(c.Request().Context(), slog.LevelInfo, "request", append(traceOf(c.Request().Header).attributes(id),
+			slog.String("method", c.Request().Method), slog.String("route", template),
+			slog.Int("status", status), slog.Int64("bytes", c.Response().Size), slog.Duration("took", took))...)
 		if cut {
 			// Without its last chunk nobody takes the answer for a whole one.
 			panic(http.ErrAbortHandler)

@@ -94,7 +94,8 @@ func (v *server) fail(c echo.Context, err error) {
 	id := header.Get(requestIDHeader)
 	// A stream that has begun can only be cut; the log says why.
 	if kind.status >= 500 || c.Response().Committed {
-		v.options.Log.LogAttrs(c.Request().Context(), slog.LevelError, "request failed", slog.String("request", id), slog.String("error", err.Error()))
+		v.options.Log.LogAttrs(c.Request().Context(), slog.LevelError, "request failed",
+			append(traceOf(c.Request().Header).attributes(id), slog.String("error", err.Error()))...)
 	}
 	if c.Response().Committed {
 		return

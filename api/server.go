@@ -27,6 +27,12 @@ const (
 	MostBody   = 16 << 20
 	mostHeader = 64 << 10
 	mostURL    = 8 << 10
+	// largeBody is where a body becomes large, and mostLarge how many of those
+	// are in memory at once.
+	largeBody = 1 << 20
+	mostLarge = 8
+	// MostConnections are open at once, idle ones too; more wait to be accepted.
+	MostConnections = 4096
 )
 
 // Options are what the server is told at start.
@@ -78,11 +84,12 @@ type server struct {
 	options Options
 	metrics *Metrics
 	limiter *limiter
+	large   chan struct{} // one for each large body in memory
 }
 
 // New returns the handler of all routes.
 func New(s *service.Service, options Options) http.Handler {
-	v := &server{service: s, options: options, metrics: options.Metrics, limiter: newLimiter(options.RateLimit)}
+	v := &server{service: s, options: options, metrics: options.Metrics, limiter: newLimiter(options.RateLimit), large: make(chan struct{}, mostLarge)}
 	e := echo.New()
 	e.HideBanner, e.HidePort = true, true
 	e.IPExtractor = echo.ExtractIPDirect()
@@ -142,9 +149,11 @@ func (v *server) adapt(r route) echo.HandlerFunc {
 			return err
 		}
 		if r.media != "" {
-			if request.Body, err = v.body(c, r.media); err != nil {
+			var done func()
+			if request.Body, done, err = v.body(c, r.media); err != nil {
 				return err
 			}
+			defer done()
 		}
 		response, err := r.handle(ctx, request)
 		if err != nil {
@@ -196,16 +205,30 @@ func queryOf(u *url.URL, known []string) (url.Values, error) {
 	return values, nil
 }
 
-// body reads a body of one media type, up to the limit.
-func (v *server) body(c echo.Context, media string) ([]byte, error) {
+// body reads a body of one media type, up to the limit, and returns what is to
+// be called when it is not needed any more.
+func (v *server) body(c echo.Context, media string) (data []byte, done func(), err error) {
 	request := c.Request()
 	given, _, err := mime.ParseMediaType(request.Header.Get(echo.HeaderContentType))
 	if err != nil || given != media {
-		return nil, &service.Problem{Code: service.UnsupportedMediaType, Detail: "The body must come as Content-Type: " + media + "."}
+		return nil, nil, &service.Problem{Code: service.UnsupportedMediaType, Detail: "The body must come as Content-Type: " + media + "."}
 	}
-	data, err := io.ReadAll(io.LimitReader(request.Body, MostBody+1))
+	done = func() {}
+	defer func() {
+		if err != nil {
+			done()
+		}
+	}()
+	if data, err = io.ReadAll(io.LimitReader(request.Body, largeBody)); err == nil && len(data) == largeBody {
+		if done, err = v.takeLarge(request.Context()); err != nil {
+			return nil, done, err
+		}
+		var rest []byte
+		rest, err = io.ReadAll(io.LimitReader(request.Body, MostBody+1-largeBody))
+		data = append(data, rest...)
+	}
 	if err != nil {
-		return nil, &service.Problem{Code: service.Malformed, Detail: "The body could not be read to its end."}
+		return nil, done, &service.Problem{Code: service.Malformed, Detail: "The body could not be read to its end."}
 	}
 	if len(data) > MostBody {
 		// Many clients send all before they read: without this they would
@@ -213,10 +236,23 @@ func (v *server) body(c echo.Context, media string) ([]byte, error) {
 		if _, err := io.CopyN(io.Discard, request.Body, MostBody); err != nil && !errors.Is(err, io.EOF) {
 			v.options.Log.LogAttrs(request.Context(), slog.LevelDebug, "caller has gone", slog.String("error", err.Error()))
 		}
-		return nil, &service.Problem{Code: service.TooLarge, Detail: "The body is larger than 16 MiB."}
+		return nil, done, &service.Problem{Code: service.TooLarge, Detail: "The body is larger than 16 MiB."}
 	}
 	v.metrics.bodies.Observe(float64(len(data)))
-	return data, nil
+	return data, done, nil
+}
+
+// takeLarge waits for a large body's turn, and returns what ends it.
+func (v *server) takeLarge(ctx context.Context) (done func(), _ error) {
+	wait := time.NewTimer(largeWait)
+	defer wait.Stop()
+	select {
+	case v.large <- struct{}{}:
+		return func() { <-v.large }, nil
+	case <-ctx.Done():
+	case <-wait.C:
+	}
+	return func() {}, &service.Problem{Code: service.Unavailable, Detail: "The server is busy with other large bodies; try again after Retry-After."}
 }
 
 // write sends a response.
@@ -250,7 +286,12 @@ type progress struct {
 	control *http.ResponseController
 }
 
-const streamIdle = 30 * time.Second
+// Deadlines that a test shortens: of a stream whose reader takes nothing, and of
+// a large body that waits for its turn.
+var (
+	streamIdle = 30 * time.Second
+	largeWait  = 10 * time.Second
+)
 
 func (p *progress) Write(data []byte) (int, error) {
 	if err := p.control.SetWriteDeadline(time.Now().Add(streamIdle)); err != nil {

@@ -58,6 +58,7 @@ func (s *Service) replay(ctx context.Context, canonical []byte, substitute *subs
 	if err != nil {
 		return nil, s.fail(err)
 	}
+	s.watch.Replayed(difference.reproduced())
 	r := &Replay{Recorded: ReplayRecorded{difference.reproduced(), difference.largest()}}
 	input, err := withLatestMethods(body.Input)
 	if err != nil {

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"sync"
+	"time"
 
 	"jointledger/service/ledger"
 )
@@ -168,12 +169,14 @@ func (s *sequencer) tryWrite(batch []*pending) ([]*pending, error) {
 		s.head = nil
 		return batch, err
 	}
-	if err := s.store.Append(ctx, out); err != nil {
+	begun := time.Now()
+	err = s.store.Append(ctx, out)
+	s.watch.Appended(outcomeOf(err), len(batch), time.Since(begun))
+	if err != nil {
 		s.head = nil // unknown: it may have been stored
 		return batch, err
 	}
 	s.head = &out.Head
-	s.watch.Grouped(len(batch))
 	for i, p := range batch {
 		p.done <- appended{index: p.entry.Index, state: states[i]}
 	}

@@ -55,12 +55,38 @@ type Service struct {
 type Watch interface {
 	// Calculated tells of an answer by a method.
 	Calculated(method, verdict string)
-	// Grouped tells of a batch that was appended.
-	Grouped(entries int)
+	// Appended tells of a batch of entries that was to be appended, what became
+	// of it and how long the store took.
+	Appended(outcome Outcome, entries int, took time.Duration)
+	// Replayed tells of a record that was computed again as it was recorded.
+	Replayed(reproduced bool)
 	// Decided tells of a decision of the gate and of the codes of its findings.
 	Decided(decision string, codes []string)
 	// Altered tells that stored rows are not those that were signed.
 	Altered(err error)
+}
+
+// Outcome is what became of a batch.
+type Outcome string
+
+// The outcomes.
+const (
+	Stored Outcome = "stored"
+	// Moved: another replica appended first, and the batch is made anew.
+	Moved Outcome = "moved"
+	// Failed: the store could not be reached, or refused.
+	Failed Outcome = "failed"
+)
+
+// outcomeOf names what a store answered to an append.
+func outcomeOf(err error) Outcome {
+	switch {
+	case err == nil:
+		return Stored
+	case errors.Is(err, ErrHeadMoved):
+		return Moved
+	}
+	return Failed
 }
 
 // Unwatched is a Watch that nobody looks at.
@@ -69,8 +95,11 @@ type Unwatched struct{}
 // Calculated implements Watch.
 func (Unwatched) Calculated(string, string) {}
 
-// Grouped implements Watch.
-func (Unwatched) Grouped(int) {}
+// Appended implements Watch.
+func (Unwatched) Appended(Outcome, int, time.Duration) {}
+
+// Replayed implements Watch.
+func (Unwatched) Replayed(bool) {}
 
 // Decided implements Watch.
 func (Unwatched) Decided(string, []string) {}
