@@ -34,6 +34,10 @@ build: ## Build the program, static, as ./jointledger
 bench: ## Measure the pure code
 	go test -run '^$$' -bench . -benchmem ./lug ./fastener ./service/... ./store
 
+.PHONY: soak
+soak: tools ## Kill the server fifty times under load, and fail every write and fsync of an append
+	JOINTLEDGER_SOAK_KILLS=50 go run ./store/throwaway -- go test -timeout 60m -run 'Killed|FailingDisk' -v .
+
 .PHONY: tools
 tools: # what the tests need beside Go: a C compiler for the race detector, and Postgres
 	@deploy/test-tools.sh

@@ -5,6 +5,7 @@ import (
 	"bytes"
 	"context"
 	"encoding/json"
+	"errors"
 	"fmt"
 	"io"
 	"net/http"
@@ -59,7 +60,8 @@ type server struct {
 // start starts a server on a free port and waits until it serves.
 func start(t testing.TB, args ...string) *server {
 	t.Helper()
-	s := &server{cmd: asProcess(append([]string{"serve", "--listen", "127.0.0.1:0"}, args...)...), log: &bytes.Buffer{}, end: make(chan error, 1)}
+	cmd := asProcess(append([]string{"serve", "--listen", "127.0.0.1:0"}, args...)...)
+	s := &server{cmd: cmd, log: &bytes.Buffer{}, end: make(chan error, 1)}
 	pipe, err := s.cmd.StderrPipe()
 	if err != nil {
 		t.Fatal(err)
@@ -94,7 +96,7 @@ func start(t testing.TB, args ...string) *server {
 // stop signals the server and returns how it ended.
 func (s *server) stop(t testing.TB, signal syscall.Signal) error {
 	t.Helper()
-	if err := s.cmd.Process.Signal(signal); err != nil {
+	if err := s.cmd.Process.Signal(signal); err != nil && !errors.Is(err, os.ErrProcessDone) {
 		t.Fatal(err)
 	}
 	select {

@@ -4,6 +4,7 @@ set -eu
 
 missing=""
 command -v gcc >/dev/null 2>&1 || missing="$missing gcc libc6-dev"
+command -v strace >/dev/null 2>&1 || missing="$missing strace"
 if ! command -v postgres >/dev/null 2>&1 && ! ls /usr/lib/postgresql/*/bin/postgres >/dev/null 2>&1; then
 	missing="$missing postgresql"
 fi
