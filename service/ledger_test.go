@@ -422,13 +422,33 @@ func TestReplicasShareOneLog(t *testing.T) {
 	})
 }
 
-// Of many who sign at once, one does.
+// plugged is a store whose appends wait until it is unplugged, so that what
+// comes meanwhile stands in one batch.
+type plugged struct {
+	service.Store
+	plug atomic.Pointer[chan struct{}]
+}
+
+func (p *plugged) Append(ctx context.Context, b service.Batch) error {
+	if plug := p.plug.Load(); plug != nil {
+		<-*plug
+	}
+	return p.Store.Append(ctx, b)
+}
+
+// Of many who sign at once, one does, also where all stand in one batch.
 func TestOneSignatureARole(t *testing.T) {
-	storetest.Each(t, func(t *testing.T, store service.Store) {
+	storetest.Each(t, func(t *testing.T, inner service.Store) {
+		store := &plugged{Store: inner}
 		s := open(t, store, newSigner(t))
 		id := record(t, s, ada, "hinge-upper", "").ID
 		var signed atomic.Int64
 		var work sync.WaitGroup
+		plug := make(chan struct{})
+		store.plug.Store(&plug)
+		work.Go(func() { record(t, s, ada, "in the way", "") })
+		time.AfterFunc(200*time.Millisecond, func() { close(plug) })
+		time.Sleep(50 * time.Millisecond)
 		for i := range 8 {
 			work.Go(func() {
 				_, err := sign(t, s, service.Caller{Name: fmt.Sprint("checker-", i), Role: service.Checker}, id, "checked")
