@@ -39,6 +39,7 @@ type program struct {
 	Check   checkCommand     `cmd:"" help:"Calculate documents without a server: one answer a line."`
 	Gate    gateCommand      `cmd:"" help:"Ask a server whether a part may be released: 0 release, 1 hold, 2 could not ask."`
 	Verify  verifyCommand    `cmd:"" help:"Check exports of a ledger offline: every entry, proof and recomputation."`
+	Migrate migrateCommand   `cmd:"" help:"Bring a database's schema up to date; servers do it too where they may."`
 	Key     keyCommands      `cmd:"" help:"Make, list and revoke API keys."`
 	Version kong.VersionFlag `help:"Print the version and leave."`
 }

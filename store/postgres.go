@@ -118,7 +118,12 @@ func (s *Postgres) migrate(ctx context.Context) error {
 		if todo, err := s.todo(ctx, s.pool); err == nil && len(todo) == 0 {
 			return nil
 		}
-		if err := s.step(ctx); err != nil {
+		err := s.step(ctx)
+		var refused *pgconn.PgError
+		switch {
+		case errors.As(err, &refused) && refused.Code == "42501":
+			return fmt.Errorf("the schema is not up to date and this role may not change it: run jointledger migrate as the owner of the tables, with --server-role for the servers' role: %w", err)
+		case err != nil:
 			return err
 		}
 	}

@@ -1,15 +1,9 @@
 -- The ledger. Tables that are only added to refuse UPDATE, DELETE and TRUNCATE
 -- by triggers that also fire for replicas.
 --
--- Whoever owns the tables can take the triggers off. A server is therefore best
--- run as a role that owns nothing; the owner migrates (it starts the program of
--- a new version once), and grants:
---
---   GRANT USAGE ON SCHEMA public TO jointledger_server;
---   GRANT SELECT ON schema_migrations TO jointledger_server;
---   GRANT SELECT, INSERT ON identity, entries, terms, tree_hashes, idempotency TO jointledger_server;
---   GRANT SELECT, INSERT, UPDATE ON keys, standing TO jointledger_server;
---   GRANT SELECT, UPDATE ON head TO jointledger_server;
+-- Whoever owns the tables can take the triggers off: a server is best run as a
+-- role that owns nothing, with the rights that the program's migrate command
+-- grants.
 --
 -- All text compares by bytes, whatever the locale of the database. There are no
 -- foreign keys: each would cost a look-up a row, and what refers to an entry is

@@ -1,7 +1,4 @@
--- Browsers that signed in. Operational, outside the proof. A server that owns
--- nothing also needs:
---
---   GRANT SELECT, INSERT, DELETE ON sessions TO jointledger_server;
+-- Browsers that signed in. Operational, outside the proof.
 
 CREATE TABLE sessions (
     hash   bytea PRIMARY KEY CHECK (length(hash) = 32),
