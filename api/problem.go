@@ -86,6 +86,15 @@ func problemOf(err error) *service.Problem {
 	return &service.Problem{Code: service.Internal, Detail: "The server failed; its log has the cause under the request id."}
 }
 
+// EncodeProblem writes an error as the body of a problem.
+func EncodeProblem(err error, requestID string) []byte {
+	body, encodeErr := strictjson.Encode(document(problemOf(err), requestID))
+	if encodeErr != nil {
+		return []byte("{}")
+	}
+	return body
+}
+
 // fail answers an error, once.
 func (v *server) fail(c echo.Context, err error) {
 	p := problemOf(err)
@@ -106,12 +115,8 @@ func (v *server) fail(c echo.Context, err error) {
 	case http.StatusUnauthorized:
 		header.Set(echo.HeaderWWWAuthenticate, "Bearer")
 	}
-	body, encodeErr := strictjson.Encode(document(p, id))
-	if encodeErr != nil {
-		body = []byte("{}")
-	}
 	header.Set(echo.HeaderCacheControl, "no-store")
-	if sendErr := c.Blob(kind.status, "application/problem+json", body); sendErr != nil {
+	if sendErr := c.Blob(kind.status, "application/problem+json", EncodeProblem(err, id)); sendErr != nil {
 		v.options.Log.LogAttrs(c.Request().Context(), slog.LevelDebug, "caller has gone", slog.String("request", id))
 	}
 }

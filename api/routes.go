@@ -2,6 +2,7 @@ package api
 
 import (
 	"context"
+	"io"
 	"net/http"
 	"net/url"
 	"strconv"
@@ -20,6 +21,8 @@ func (v *server) routes() []route {
 		{http.MethodPost, "/v1/fastener-groups", service.Reader, view, jsonMedia, v.calculate(service.FastenerGroup)},
 		{http.MethodPost, "/v1/splices", service.Reader, view, jsonMedia, v.calculate(service.Splice)},
 		{http.MethodPost, "/v1/splices/steps", service.Reader, view, jsonMedia, v.steps},
+
+		{http.MethodPost, service.BatchPath, service.Reader, view, ndjsonMedia, v.batches},
 
 		{http.MethodPost, "/v1/records", service.Analyst, nil, jsonMedia, v.record},
 		{http.MethodGet, "/v1/records", service.Reader, []string{
@@ -109,6 +112,23 @@ func (v *server) steps(_ context.Context, r *Request) (*Response, error) {
 		return nil, err
 	}
 	return encoded(service.Steps(r.Body, view))
+}
+
+// batches answers documents while they come.
+func (v *server) batches(_ context.Context, r *Request) (*Response, error) {
+	view, err := viewOf(r.Query)
+	if err != nil {
+		return nil, err
+	}
+	say := func(err error) []byte {
+		if kindOf(problemOf(err).Code).status >= 500 {
+			v.options.Log.Error("line of a batch failed", "request", r.ID, "error", err.Error())
+		}
+		return EncodeProblem(err, r.ID)
+	}
+	return &Response{ContentType: ndjsonMedia, Duplex: true, Stream: func(ctx context.Context, w io.Writer) error {
+		return v.service.Batch(ctx, r.Caller, view, r.Stream, w, say)
+	}}, nil
 }
 
 // idempotency reads the Idempotency-Key of a request that appends.

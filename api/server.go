@@ -43,6 +43,8 @@ type Options struct {
 	RateLimit float64
 	// CORSOrigins are the web origins whose pages may call; none by default.
 	CORSOrigins []string
+	// StreamIdle is how long a stream may stand still, 30 s when 0.
+	StreamIdle time.Duration
 	// OpenAPI is the document that describes all of this.
 	OpenAPI []byte
 }
@@ -54,6 +56,7 @@ type Request struct {
 	Param  func(name string) string
 	Query  url.Values
 	Body   []byte
+	Stream io.ReadCloser // in the place of Body, where the route reads a stream
 	Header http.Header
 	Path   string
 }
@@ -66,6 +69,7 @@ type Response struct {
 	Body        []byte
 	Header      map[string]string
 	Stream      func(ctx context.Context, w io.Writer) error
+	Duplex      bool // Stream reads the request's Stream meanwhile
 	Handler     http.Handler
 }
 
@@ -148,7 +152,13 @@ func (v *server) adapt(r route) echo.HandlerFunc {
 		if request.Query, err = queryOf(c.Request().URL, r.query); err != nil {
 			return err
 		}
-		if r.media != "" {
+		switch r.media {
+		case "":
+		case ndjsonMedia:
+			if request.Stream, err = v.incoming(c); err != nil {
+				return err
+			}
+		default:
 			var done func()
 			if request.Body, done, err = v.body(c, r.media); err != nil {
 				return err
@@ -209,9 +219,8 @@ func queryOf(u *url.URL, known []string) (url.Values, error) {
 // be called when it is not needed any more.
 func (v *server) body(c echo.Context, media string) (data []byte, done func(), err error) {
 	request := c.Request()
-	given, _, err := mime.ParseMediaType(request.Header.Get(echo.HeaderContentType))
-	if err != nil || given != media {
-		return nil, nil, &service.Problem{Code: service.UnsupportedMediaType, Detail: "The body must come as Content-Type: " + media + "."}
+	if err := hasMedia(request, media); err != nil {
+		return nil, nil, err
 	}
 	done = func() {}
 	defer func() {
@@ -255,6 +264,43 @@ func (v *server) takeLarge(ctx context.Context) (done func(), _ error) {
 	return func() {}, &service.Problem{Code: service.Unavailable, Detail: "The server is busy with other large bodies; try again after Retry-After."}
 }
 
+func hasMedia(request *http.Request, media string) error {
+	given, _, err := mime.ParseMediaType(request.Header.Get(echo.HeaderContentType))
+	if err != nil || given != media {
+		return &service.Problem{Code: service.UnsupportedMediaType, Detail: "The body must come as Content-Type: " + media + "."}
+	}
+	return nil
+}
+
+// incoming is a body that is read while the answer is written. It ends when
+// nothing has moved on either side for a while.
+type incoming struct {
+	body    io.Reader
+	control *http.ResponseController
+	idle    time.Duration
+}
+
+func (v *server) incoming(c echo.Context) (*incoming, error) {
+	if err := hasMedia(c.Request(), ndjsonMedia); err != nil {
+		return nil, err
+	}
+	control := http.NewResponseController(c.Response())
+	if err := control.EnableFullDuplex(); err != nil {
+		return nil, err
+	}
+	return &incoming{c.Request().Body, control, v.idle()}, nil
+}
+
+func (i *incoming) Read(data []byte) (int, error) {
+	if err := i.control.SetReadDeadline(time.Now().Add(i.idle)); err != nil {
+		return 0, err
+	}
+	return i.body.Read(data)
+}
+
+// Close makes a Read that waits return.
+func (i *incoming) Close() error { return i.control.SetReadDeadline(time.Unix(1, 0)) }
+
 // write sends a response.
 func (v *server) write(c echo.Context, r *Response) error {
 	if r.Handler != nil {
@@ -277,13 +323,15 @@ func (v *server) write(c echo.Context, r *Response) error {
 	}
 	header.Set(echo.HeaderContentType, r.ContentType)
 	c.Response().WriteHeader(r.Status)
-	return r.Stream(c.Request().Context(), &progress{c.Response(), http.NewResponseController(c.Response())})
+	return r.Stream(c.Request().Context(), &progress{c.Response(), http.NewResponseController(c.Response()), v.idle(), r.Duplex})
 }
 
-// progress moves the deadline of a stream on with every write that succeeds.
+// progress moves the deadlines of a stream on with every write.
 type progress struct {
 	w       io.Writer
 	control *http.ResponseController
+	idle    time.Duration
+	duplex  bool // the caller may still be sending
 }
 
 // Deadlines that a test shortens: of a stream whose reader takes nothing, and of
@@ -293,11 +341,28 @@ var (
 	largeWait  = 10 * time.Second
 )
 
+// idle is how long a stream may stand still.
+func (v *server) idle() time.Duration {
+	if v.options.StreamIdle > 0 {
+		return v.options.StreamIdle
+	}
+	return streamIdle
+}
+
 func (p *progress) Write(data []byte) (int, error) {
-	if err := p.control.SetWriteDeadline(time.Now().Add(streamIdle)); err != nil {
+	end := time.Now().Add(p.idle)
+	if err := p.control.SetWriteDeadline(end); err != nil {
 		return 0, err
+	}
+	if p.duplex {
+		if err := p.control.SetReadDeadline(end); err != nil {
+			return 0, err
+		}
 	}
 	return p.w.Write(data)
 }
+
+// Flush sends what was written.
+func (p *progress) Flush() error { return p.control.Flush() }
 
 const requestIDHeader = "X-Request-Id"

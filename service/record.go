@@ -139,24 +139,48 @@ func (s *Service) Record(ctx context.Context, caller Caller, body []byte, idempo
 	var f faults
 	f.check(&request)
 	c, err := calculate(request.Kind, request.Input, View{}, s.registry(ctx))
-	var inner *Problem
-	if errors.As(err, &inner) && inner.Code == Malformed {
-		return nil, false, inner.Under("/input")
-	}
-	if inner != nil && inner.Code == Invalid {
-		for _, e := range inner.Errors {
-			f.add("/input"+e.Pointer, "%s", e.Detail)
-		}
-	} else if err != nil {
+	if err := f.under("/input", err); err != nil {
 		return nil, false, s.fail(err)
 	}
-	if found := f.problem(); found != nil {
-		return nil, false, found
-	}
 	s.count(&c.result)
-	result, err := strictjson.Canonical(&c.result)
+	p, err := s.pendingRecord(ctx, caller, &request, c, idempotency)
 	if err != nil {
 		return nil, false, err
+	}
+	s.log.submit(p)
+	entry, again, err := s.recorded(ctx, p, idempotency)
+	if err != nil {
+		return nil, false, err
+	}
+	document, err := recordDocument(entry, nil)
+	return document, again, err
+}
+
+// under joins what is wrong with an inner document, below a member, to the
+// faults of the outer one.
+func (f *faults) under(member string, err error) error {
+	var inner *Problem
+	switch {
+	case errors.As(err, &inner) && inner.Code == Malformed:
+		return inner.Under(member)
+	case inner != nil && inner.Code == Invalid && len(inner.Errors) > 0:
+		for _, e := range inner.Errors {
+			f.add(member+e.Pointer, "%s", e.Detail)
+		}
+	case err != nil:
+		return err
+	}
+	if found := f.problem(); found != nil {
+		return found
+	}
+	return nil
+}
+
+// pendingRecord seals the record of a calculation.
+func (s *Service) pendingRecord(ctx context.Context, caller Caller, request *RecordRequest, c *calculation, idempotency Idempotency) (*pending, error) {
+	result, err := strictjson.Canonical(&c.result)
+	if err != nil {
+		return nil, err
 	}
 	entry, err := s.seal(entryRecord, caller, recordBody{
 		Subject:        subject(request.Subject),
@@ -164,24 +188,28 @@ func (s *Service) Record(ctx context.Context, caller Caller, body []byte, idempo
 		Input: c.input, InputDigest: c.inputDigest, Result: result, MadeBy: thisProgram(),
 	})
 	if err != nil {
-		return nil, false, err
+		return nil, err
 	}
-	done := s.log.append(&pending{ctx: ctx, entry: entry, answer: idempotency.answer(caller)})
+	return &pending{ctx: ctx, entry: entry, answer: idempotency.answer(caller)}, nil
+}
+
+// recorded waits for what becomes of a submitted record, and returns its entry
+// or that of the same request before.
+func (s *Service) recorded(ctx context.Context, p *pending, idempotency Idempotency) (_ Entry, again bool, _ error) {
+	done := <-p.done
 	switch {
 	case done.err != nil:
-		return nil, false, s.fail(done.err)
+		return Entry{}, false, s.fail(done.err)
 	case done.earlier != nil:
 		if err := idempotency.replay(done.earlier); err != nil {
-			return nil, false, err
+			return Entry{}, false, err
 		}
-		if entry, err = s.store.Entry(ctx, done.earlier.Index); err != nil {
-			return nil, false, s.fail(err)
-		}
-	default:
-		entry.Index = done.index
+		entry, err := s.store.Entry(ctx, done.earlier.Index)
+		return entry, true, s.fail(err)
 	}
-	document, err := recordDocument(entry, nil)
-	return document, done.earlier != nil, err
+	entry := p.entry
+	entry.Index = done.index
+	return entry, false, nil
 }
 
 // seal makes an entry of a body, stamped now.

@@ -71,14 +71,20 @@ func (s *sequencer) close() {
 
 // append waits until p is in the log or cannot be.
 func (s *sequencer) append(p *pending) appended {
+	s.submit(p)
+	return <-p.done
+}
+
+// submit gives p its place among those that wait; what becomes of it is sent
+// to p.done. Of two that one goroutine submits the first stands first.
+func (s *sequencer) submit(p *pending) {
 	p.done = make(chan appended, 1)
 	select {
 	case s.queue <- p:
-		return <-p.done
 	case <-p.ctx.Done():
-		return appended{err: fmt.Errorf("%w: %w", ErrUnavailable, p.ctx.Err())}
+		p.done <- appended{err: fmt.Errorf("%w: %w", ErrUnavailable, p.ctx.Err())}
 	case <-s.stop:
-		return appended{err: fmt.Errorf("%w: the server is shutting down", ErrUnavailable)}
+		p.done <- appended{err: fmt.Errorf("%w: the server is shutting down", ErrUnavailable)}
 	}
 }
 

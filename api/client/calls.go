@@ -74,18 +74,18 @@ func (c *Client) Export(ctx context.Context, from int64, w io.Writer) error {
 	if from > 0 {
 		query.Set("from", strconv.FormatInt(from, 10))
 	}
-	return c.stream(ctx, call{method: http.MethodGet, path: "/v1/export", query: query}, func(body io.Reader) error {
+	request, err := c.request(ctx, call{method: http.MethodGet, path: "/v1/export", query: query}, nil)
+	if err != nil {
+		return err
+	}
+	return c.send(request, func(body io.Reader) error {
 		_, err := io.Copy(w, body)
 		return err
 	})
 }
 
-// stream sends a request once and hands the answer on as it comes.
-func (c *Client) stream(ctx context.Context, r call, read func(io.Reader) error) error {
-	request, err := c.request(ctx, r, nil)
-	if err != nil {
-		return err
-	}
+// send sends a request once and hands the answer on as it comes.
+func (c *Client) send(request *http.Request, read func(io.Reader) error) error {
 	response, err := c.options.HTTP.Do(request)
 	if err != nil {
 		return err

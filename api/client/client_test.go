@@ -43,6 +43,11 @@ type world struct {
 
 func newWorld(t *testing.T) *world {
 	t.Helper()
+	return newWorldWith(t, api.Options{})
+}
+
+func newWorldWith(t *testing.T, options api.Options) *world {
+	t.Helper()
 	text, err := ledger.GenerateKey(rand.Reader, "test.example/saltmarsh")
 	if err != nil {
 		t.Fatal(err)
@@ -70,7 +75,8 @@ func newWorld(t *testing.T) *world {
 			t.Fatal(err)
 		}
 	}
-	handler := api.New(s, api.Options{Log: log, Metrics: metrics})
+	options.Log, options.Metrics = log, metrics
+	handler := api.New(s, options)
 	server := httptest.NewServer(http.HandlerFunc(func(w http.ResponseWriter, r *http.Request) {
 		if gateway := v.gateway.Load(); gateway != nil {
 			(*gateway)(handler, w, r)
