@@ -253,3 +253,22 @@ func TestCurveSetsKeepTheirContent(t *testing.T) {
 		t.Errorf("%s: %d: %s", made.header.Get("Location"), a.status, a.body)
 	}
 }
+
+// A batch that records is held against the document too, and so is a decision
+// in plain lines.
+func TestBatchesAndDecisionsOtherwise(t *testing.T) {
+	callers := crew(t, storetest.SQLite(t))
+	lines := example(t, "answerBatch", "twoLugs")
+	record := `, "record": {"subject": {"part": "SM-1", "revision": "A", "joint": "hinge"}, "geometry_digest": "g", "idempotency_key": "k"}}` + "\n"
+	body := append(bytes.TrimSuffix(bytes.SplitAfter(lines, []byte("\n"))[0], []byte("}\n")), record...)
+	for _, replayed := range []string{`"replayed":false`, `"replayed":true`} {
+		a := callers[service.Analyst].do(t, call{method: http.MethodPost, target: "/v1/batches?workings=none", body: body}.with("Content-Type", "application/x-ndjson"))
+		if a.want(t, http.StatusOK); !bytes.Contains(a.body, []byte(replayed)) {
+			t.Errorf("%.500s\nhas no %s", a.body, replayed)
+		}
+	}
+	a := callers[service.Gate].do(t, post("/v1/release-checks", example(t, "checkRelease", "checkIn")).with("Accept", "text/plain"))
+	if a.want(t, http.StatusOK); !bytes.HasPrefix(a.body, []byte("hold\nboom hinge lower: no-record: ")) {
+		t.Errorf("%s", a.body)
+	}
+}
