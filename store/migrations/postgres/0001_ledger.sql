@@ -55,7 +55,7 @@ EXCEPTION WHEN feature_not_supported THEN
 END $$;
 
 CREATE INDEX entries_subject    ON entries (part, revision, joint, aspect, kind, idx) WHERE type = 'record';
-CREATE INDEX entries_part       ON entries (part, idx) WHERE type = 'record';
+CREATE INDEX entries_part       ON entries (part, idx, revision, joint, kind, verdict) WHERE type = 'record'; -- the rest for looking without the row
 CREATE INDEX entries_joint      ON entries (joint, idx) WHERE type = 'record';
 CREATE INDEX entries_author     ON entries (author, idx) WHERE type = 'record';
 CREATE INDEX entries_verdict    ON entries (verdict, idx) WHERE type = 'record';
