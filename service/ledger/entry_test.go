@@ -167,6 +167,7 @@ func FuzzParse(f *testing.F) {
 		f.Fatal(err)
 	}
 	f.Add(canonical)
+	f.Add(bytes.Replace(canonical, []byte("m.reed"), []byte(`m.\u0072eed`), 1))
 	f.Add([]byte(`{"at":"2026-01-31T12:00:00.000Z","author":"\`))
 	f.Add([]byte(`{"at":"2026-01-31T12:00:00.000Z","author":"a","body":{},"id":"`))
 	f.Fuzz(func(t *testing.T, b []byte) { mustBeExact(t, b) })

@@ -116,6 +116,7 @@ func TestVerifyNamesWhatFails(t *testing.T) {
 		{"a space put in", replaced(3, `"body":{`, `"body": {`), "", 3, id3, "body: is not an object in canonical form"},
 		{"an unknown type", replaced(3, `"record"`, `"memo"`), "", 3, id3, "type: "},
 		{"a member put in", replaced(3, `{"at"`, `{"as":1,"at"`), "", 3, "", "not an entry"},
+		{"a needless escape", replaced(3, "m.reed", `m.\u0072eed`), "", 3, "", "not an entry"},
 		{"a broken line", replaced(3, `}`, ``), "", 3, id3, "body: is not an object in canonical form"},
 		{"an empty line", edited(func(l [][]byte) [][]byte { return slices.Insert(l, 3, []byte("\n")) }), "", 3, "", "not an entry"},
 		{"an entry taken out", edited(func(l [][]byte) [][]byte { return slices.Delete(l, 5, 6) }), kept, -1, "", "of 10 entries and there are only 9: from entry 4 on"},
