@@ -14,6 +14,7 @@ test: tools ## Run everything: format, vet, staticcheck, tests with the race det
 .PHONY: checks
 checks: lint # what runs while the throwaway Postgres is up
 	go test -race -timeout 15m ./...
+	cd deploy/check && go test ./...
 	go test -run '^$$' -fuzz '^FuzzRequests$$' -fuzztime 5s ./api
 
 .PHONY: lint
@@ -29,6 +30,16 @@ format: ## Format the code
 .PHONY: build
 build: ## Build the program, static, as ./jointledger
 	CGO_ENABLED=0 go build -trimpath -o jointledger .
+
+.PHONY: image
+image: ## Build a static container image from scratch, jointledger:local (needs buildah)
+	@set -e; context=$$(mktemp -d); trap 'rm -rf "$$context"' EXIT; mkdir "$$context/data"; \
+	CGO_ENABLED=0 go build -trimpath -o "$$context/jointledger" .; \
+	buildah build --isolation chroot --file deploy/Containerfile --tag jointledger:local "$$context"
+
+.PHONY: vuln
+vuln: ## Look for known vulnerabilities in what the program calls (needs a vulnerability database)
+	@deploy/vuln.sh
 
 .PHONY: bench
 bench: ## Measure the pure code

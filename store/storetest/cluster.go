@@ -193,6 +193,12 @@ func (c *Cluster) Stop() error {
 // Remove stops the cluster and deletes it.
 func (c *Cluster) Remove() error { return errors.Join(c.Stop(), os.RemoveAll(c.dir)) }
 
+// Dir is where the cluster's socket is, as PGHOST takes it.
+func (c *Cluster) Dir() string { return c.dir }
+
+// Bin is where the engine's own programs are.
+func (c *Cluster) Bin() string { return c.bin }
+
 // URL is that of the cluster's first database, as its superuser.
 func (c *Cluster) URL() string {
 	u := url.URL{Scheme: "postgres", User: url.User("postgres"), Path: "/postgres", RawQuery: url.Values{"host": {c.dir}}.Encode()}
