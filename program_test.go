@@ -9,7 +9,6 @@ import (
 	"fmt"
 	"io"
 	"net/http"
-	"net/url"
 	"os"
 	"os/exec"
 	"path/filepath"
@@ -188,22 +187,12 @@ func TestKilledServerLosesNothing(t *testing.T) {
 			work.Go(func() {
 				for i := 0; ctx.Err() == nil; i++ {
 					joint := fmt.Sprintf("joint-%d-%d", c, i)
-					for { // a caller retries with its key until it is answered
-						response, body, err := post(address()+"/v1/records", recordOf(joint), joint)
-						if err == nil && response.StatusCode == http.StatusCreated {
-							var made struct{ ID string }
-							if err := json.Unmarshal(body, &made); err != nil {
-								t.Error(err)
-							}
-							acknowledged.Store(joint, made.ID)
-							break
-						}
-						if err == nil && response.StatusCode != http.StatusServiceUnavailable {
-							t.Errorf("%s: %d %s", joint, response.StatusCode, body)
-							return
-						}
-						time.Sleep(10 * time.Millisecond)
+					id, err := recordUntilAnswered(address, joint)
+					if err != nil {
+						t.Error(err)
+						return
 					}
+					acknowledged.Store(joint, id)
 				}
 			})
 		}
@@ -219,42 +208,9 @@ func TestKilledServerLosesNothing(t *testing.T) {
 		cancel()
 		work.Wait()
 
-		found := map[string]string{}
-		next := s.url + "/v1/records?limit=500"
-		for next != "" {
-			status, body := get(t, next)
-			var list struct {
-				Items []struct {
-					ID      string
-					Subject struct{ Joint string }
-				}
-				NextCursor *string `json:"next_cursor"`
-			}
-			if err := json.Unmarshal(body, &list); err != nil || status != http.StatusOK {
-				t.Fatalf("%d %v", status, err)
-			}
-			for _, item := range list.Items {
-				if other, twice := found[item.Subject.Joint]; twice {
-					t.Errorf("%s is there as %s and as %s", item.Subject.Joint, item.ID, other)
-				}
-				found[item.Subject.Joint] = item.ID
-			}
-			if next = ""; list.NextCursor != nil {
-				next = s.url + "/v1/records?limit=500&cursor=" + url.QueryEscape(*list.NextCursor)
-			}
-		}
-		count := 0
-		acknowledged.Range(func(joint, id any) bool {
-			if count++; found[joint.(string)] != id {
-				t.Errorf("%s was acknowledged as %s and is there as %q", joint, id, found[joint.(string)])
-			}
-			return true
-		})
+		count := compareWithListed(t, s.url, &acknowledged)
 		if count < kills {
 			t.Errorf("only %d records were acknowledged", count)
-		}
-		if len(found) != count {
-			t.Errorf("%d records were acknowledged and %d are there", count, len(found))
 		}
 		t.Logf("%d records over %d kills", count, kills)
 		verifyExport(t, s.url, 0)
