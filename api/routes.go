@@ -19,6 +19,7 @@ func (v *server) routes() []route {
 	return []route{
 		{http.MethodPost, "/v1/lugs", service.Reader, view, jsonMedia, v.calculate(service.Lug)},
 		{http.MethodPost, "/v1/fastener-groups", service.Reader, view, jsonMedia, v.calculate(service.FastenerGroup)},
+		{http.MethodPost, "/v1/fastener-groups/sizing", service.Reader, view, jsonMedia, v.sizeGroup},
 		{http.MethodPost, "/v1/splices", service.Reader, view, jsonMedia, v.calculate(service.Splice)},
 		{http.MethodPost, "/v1/splices/steps", service.Reader, view, jsonMedia, v.steps},
 
@@ -54,8 +55,9 @@ func (v *server) routes() []route {
 		{http.MethodGet, "/v1/curve-sets/:name", service.Reader, nil, "", v.curveSet},
 
 		{http.MethodGet, "/v1/materials", service.Reader, []string{"units"}, "", v.materials},
+		{http.MethodGet, "/v1/fastener-types", service.Reader, []string{"units"}, "", v.fastenerTypes},
 		{http.MethodGet, "/v1/methods", service.Reader, []string{"kind"}, "", v.methods},
-		{http.MethodGet, "/v1/rules", service.Reader, nil, "", v.rules},
+		{http.MethodGet, "/v1/rules", service.Reader, []string{"units"}, "", v.rules},
 
 		{http.MethodGet, "/problems/:type", "", nil, "", func(_ context.Context, r *Request) (*Response, error) {
 			return explainProblem(r.Param("type"))
@@ -104,6 +106,14 @@ func (v *server) calculate(kind service.Kind) func(context.Context, *Request) (*
 		}
 		return encoded(v.service.Calculate(ctx, kind, r.Body, view))
 	}
+}
+
+func (v *server) sizeGroup(_ context.Context, r *Request) (*Response, error) {
+	view, err := viewOf(r.Query)
+	if err != nil {
+		return nil, err
+	}
+	return encoded(service.SizeGroup(r.Body, view))
 }
 
 func (v *server) steps(_ context.Context, r *Request) (*Response, error) {
@@ -232,8 +242,12 @@ func (v *server) methods(_ context.Context, r *Request) (*Response, error) {
 	return encoded(service.Methods(r.Query.Get("kind")))
 }
 
-func (v *server) rules(context.Context, *Request) (*Response, error) {
-	return encoded(service.Rules(), nil)
+func (v *server) rules(_ context.Context, r *Request) (*Response, error) {
+	return encoded(service.Rules(r.Query.Get("units")))
+}
+
+func (v *server) fastenerTypes(_ context.Context, r *Request) (*Response, error) {
+	return encoded(service.FastenerTypes(r.Query.Get("units")))
 }
 
 func (v *server) openapi(context.Context, *Request) (*Response, error) {

@@ -2,6 +2,7 @@ package fastener
 
 import (
 	"slices"
+	"strings"
 
 	"jointledger/strength"
 )
@@ -184,6 +185,16 @@ const (
 
 // StrengthMethods returns the words of a pattern's methods of strength.
 func StrengthMethods() []string { return []string{wordElementary, wordAISC, wordEN} }
+
+// FindStrength finds a word of StrengthMethods by "word", its latest revision,
+// or by "word@revision". Pinned is the latter, as records carry it: "elementary"
+// stands for those of Methods that are its checks, which have the same revision.
+func FindStrength(name string) (word, pinned string, ok bool) {
+	const revision = "1" // each has had one only
+	word, given, isPinned := strings.Cut(name, "@")
+	ok = slices.Contains(StrengthMethods(), word) && (!isPinned || given == revision)
+	return word, word + "@" + revision, ok
+}
 
 // addAssessments lists the checks in the order of answers: the pattern as a
 // whole, then each fastener and the plates at it, by the methods in the order

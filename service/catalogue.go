@@ -130,17 +130,23 @@ func fastenerMethods() []MethodItem {
 		item := MethodItem{
 			ID: m.ID, Revision: m.Revision, Method: m.Name(), Kind: m.Kind, Title: m.Title,
 			Source: m.Source, Range: m.Range, Mark: m.Mark.String(),
-		}
-		for _, e := range m.Equations {
-			item.Equations = append(item.Equations, EquationItem{e.Number, e.Text, e.Source, e.Mark.String()})
+			Options: groupOptions[m.ID], Equations: equationItems(m.Equations),
 		}
 		items = append(items, item)
 	}
 	for _, c := range fastener.ComplianceFormulas() {
 		items = append(items, MethodItem{
 			ID: c.ID, Revision: c.Revision, Method: c.Name(), Kind: "compliance", Title: c.Title,
-			Source: c.Source, Range: c.Range, Mark: c.Mark.String(),
+			Source: c.Source, Range: c.Range, Mark: c.Mark.String(), Equations: equationItems(c.Equations),
 		})
+	}
+	return items
+}
+
+func equationItems(equations []fastener.Equation) []EquationItem {
+	var items []EquationItem
+	for _, e := range equations {
+		items = append(items, EquationItem{e.Number, e.Text, e.Source, e.Mark.String()})
 	}
 	return items
 }
@@ -178,42 +184,4 @@ func words(modes []strength.Mode) []string {
 		out[i] = m.String()
 	}
 	return out
-}
-
-// RuleSetItem is a built-in set of layout rules.
-type RuleSetItem struct {
-	ID       string     `json:"id"`
-	Revision int        `json:"revision"`
-	Name     string     `json:"name"` // id@revision
-	Title    string     `json:"title"`
-	Source   string     `json:"source"`
-	Mark     string     `json:"mark"`
-	Rules    []RuleItem `json:"rules"`
-}
-
-// RuleItem is one rule: the least, or most, that a measure may be.
-type RuleItem struct {
-	Measure  string `json:"measure"`
-	Asks     string `json:"asks"`
-	Severity string `json:"severity"`
-}
-
-// RuleSetList lists sets of layout rules.
-type RuleSetList struct {
-	Items []RuleSetItem `json:"items"`
-}
-
-// Rules lists the built-in sets of layout rules.
-func Rules() *RuleSetList {
-	list := &RuleSetList{}
-	for _, r := range fastener.RuleSets() {
-		item := RuleSetItem{
-			ID: r.ID, Revision: r.Revision, Name: r.Name(), Title: r.Title, Source: r.Source, Mark: r.Mark.String(),
-		}
-		for _, rule := range r.Rules {
-			item.Rules = append(item.Rules, RuleItem{string(rule.Measure), rule.Asks(), rule.Severity.String()})
-		}
-		list.Items = append(list.Items, item)
-	}
-	return list
 }

@@ -14,7 +14,9 @@ import (
 // published calls do with the kind and the input of every published case.
 func published(t *testing.T, do func(t *testing.T, kind service.Kind, input json.RawMessage)) {
 	t.Helper()
-	kinds := map[string]service.Kind{"lug": service.Lug, "fastener": service.FastenerGroup, "splice": service.Splice}
+	kinds := map[string]service.Kind{
+		"lug": service.Lug, "fastener": service.FastenerGroup, "splice": service.Splice, "compliance": service.Splice,
+	}
 	files, err := filepath.Glob("../testdata/published/*.json")
 	if err != nil || len(files) == 0 {
 		t.Fatal("no published cases: ", err)
@@ -23,7 +25,7 @@ func published(t *testing.T, do func(t *testing.T, kind service.Kind, input json
 		prefix, _, _ := strings.Cut(filepath.Base(path), "-")
 		kind, ok := kinds[prefix]
 		if !ok {
-			continue // inputs of single formulas rather than of joints
+			t.Fatalf("%s is of no kind of joint", path)
 		}
 		text, err := os.ReadFile(path)
 		if err != nil {

@@ -388,18 +388,11 @@ func Steps(body []byte, view View) (*StepsAnswer, error) {
 		return nil, malformed(err, "")
 	}
 	var d SpliceDocument
-	if err := strictjson.Decode(request.Input, &d); err != nil {
-		return nil, malformed(err, "/input")
+	var f faults
+	if err := f.input(request.Input, &d); err != nil {
+		return nil, err
 	}
-	var f, inner faults
 	f.check(&request)
-	d.resolve(noRegistry{}, &inner)
-	inner.check(&d)
-	if found := inner.problem(); found != nil {
-		for _, e := range found.Under("/input").Errors {
-			f.add(e.Pointer, "%s", e.Detail)
-		}
-	}
 	mm := d.Units.scale(strength.Length)
 	var bounds []fastener.StepBound
 	for _, b := range request.Bounds {

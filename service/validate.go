@@ -11,6 +11,7 @@ import (
 
 	"github.com/go-playground/validator/v10"
 
+	"jointledger/service/strictjson"
 	"jointledger/strength"
 )
 
@@ -188,4 +189,30 @@ func (f *faults) take(found []strength.Fault, u Units) {
 		}
 		f.add(fault.Pointer, "%s", u.say(fault.Message))
 	}
+}
+
+// takeUnder is take for what was found in a member of the document.
+func (f *faults) takeUnder(member string, found []strength.Fault, u Units) {
+	moved := make([]strength.Fault, len(found))
+	for i, fault := range found {
+		moved[i] = strength.Fault{Pointer: member + fault.Pointer, Message: fault.Message}
+	}
+	f.take(moved, u)
+}
+
+// input decodes and resolves the document of a joint that is the member input
+// of another. Bytes that are no such document are an error.
+func (f *faults) input(raw strictjson.Raw, d document) error {
+	if err := strictjson.Decode(raw, d); err != nil {
+		return malformed(err, "/input")
+	}
+	var inner faults
+	d.resolve(noRegistry{}, &inner)
+	inner.check(d)
+	if found := inner.problem(); found != nil {
+		for _, e := range found.Under("/input").Errors {
+			f.add(e.Pointer, "%s", e.Detail)
+		}
+	}
+	return nil
 }
