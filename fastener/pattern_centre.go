@@ -36,8 +36,14 @@ type atUltimate struct {
 	u, v, turn float64
 }
 
-// mostPasses bounds the iteration; each pass about halves the error.
-const mostPasses = 200
+// mostPasses bounds the iteration; each pass about halves the error. It is at
+// its end when the motion stands still to within stillMotion of the farthest
+// fastener's, or, once it nearly does, no longer comes nearer to that.
+const (
+	mostPasses   = 200
+	stillMotion  = 1e-15
+	nearlyMotion = 1e-9
+)
 
 // find returns the ultimate value of the in-plane part of a load.
 func (c *instantaneous) find(e *elastic, load centred) (a atUltimate, ok bool) {
@@ -45,7 +51,8 @@ func (c *instantaneous) find(e *elastic, load centred) (a atUltimate, ok bool) {
 		return a, false
 	}
 	copy(c.weight, c.strength)
-	previous := 0.0
+	var previous atUltimate
+	moved := math.Inf(1)
 	for range mostPasses {
 		u, v, turn := c.solve(e, load)
 		most := 0.0
@@ -62,10 +69,13 @@ func (c *instantaneous) find(e *elastic, load centred) (a atUltimate, ok bool) {
 			d := a.move(e, i)
 			c.weight[i] = c.strength[i] * curve(d) / max(d, 1e-12)
 		}
-		if math.Abs(a.factor-previous) <= 1e-15*a.factor {
+		// The factor alone may stand still while the motion does not.
+		was := moved
+		moved = math.Hypot(a.u-previous.u, a.v-previous.v) + float64(math.Abs(a.turn-previous.turn)*e.reach)
+		if moved <= stillMotion || was <= nearlyMotion && moved >= was {
 			break
 		}
-		previous = a.factor
+		previous = a
 	}
 	return a, true
 }

@@ -56,7 +56,11 @@ type contact struct {
 	tangent    []float64
 	factor     blas64.TriangularBand
 	step, from []float64
-	result     Contact
+	// How far each node has moved from the first of its member by stretching,
+	// where each member's first node stands, and whether that is known yet.
+	stretched, offset []float64
+	placed            []bool
+	result            Contact
 }
 
 // newContact makes room, or returns nil where no row has a clearance.
@@ -66,6 +70,7 @@ func newContact(k *stack, s *Splice) *contact {
 		clearance: make([]float64, n), softness: make([]float64, n), multiplier: make([]float64, n),
 		side: make([]int8, n), tangent: make([]float64, n),
 		step: make([]float64, k.unknowns), from: make([]float64, k.unknowns),
+		stretched: make([]float64, len(k.nodes)), offset: make([]float64, len(s.Members)), placed: make([]bool, len(s.Members)),
 	}
 	some := false
 	for x, node := range k.nodes {
@@ -104,7 +109,10 @@ func (v *solver) settle(c *preparedCase) {
 		}
 		copy(k.multiplier, v.taken)
 		if stray <= contactNone*max(largest, c.through) {
-			k.result.Ended = ContactSettled
+			// Once more, so that what is cut off below is none but for rounding.
+			if v.newton(c) {
+				k.result.Ended = ContactSettled
+			}
 			break
 		}
 	}
@@ -115,6 +123,7 @@ func (v *solver) settle(c *preparedCase) {
 		}
 	}
 	v.carryOn(c)
+	v.placeOpen(c)
 }
 
 // carryOn finds the members' loads from left to right by equilibrium with the
@@ -132,6 +141,63 @@ func (v *solver) carryOn(c *preparedCase) {
 			v.load[node.rightSpan] = load
 		}
 	}
+}
+
+// placeOpen finds what open interfaces take up by compatibility with those that
+// bear: the multipliers are soft springs, through which the rounding of a load
+// that is none shows as slip.
+func (v *solver) placeOpen(c *preparedCase) {
+	k := v.contact
+	clear(k.offset)
+	clear(k.placed)
+	// k.offset runs along the members first, to find how each stretches.
+	for x, node := range v.stack.nodes {
+		if !node.first {
+			k.offset[node.member] += v.elongation(node.leftSpan, c)
+		}
+		k.stretched[x] = k.offset[node.member]
+	}
+	clear(k.offset)
+	k.placed[v.stack.nodes[0].member] = true
+	for v.placeNext(true) || v.placeNext(false) {
+	}
+	for x, node := range v.stack.nodes {
+		if i := x - node.row; v.stack.inner(x) && k.side[i] == 0 {
+			v.taken[i] = max(-k.clearance[i], min(k.clearance[i], v.apart(x)))
+		}
+	}
+}
+
+// apart is the slip of the interface below node x by the places of its members.
+func (v *solver) apart(x int) float64 {
+	k, nodes := v.contact, v.stack.nodes
+	return k.offset[nodes[x+1].member] + k.stretched[x+1] - (k.offset[nodes[x].member] + k.stretched[x])
+}
+
+// placeNext places members against those placed before, by interfaces that bear
+// or by the first open one. It reports whether it placed any.
+func (v *solver) placeNext(bearing bool) (placed bool) {
+	k := v.contact
+	for x, node := range v.stack.nodes {
+		i := x - node.row
+		if !v.stack.inner(x) || (k.side[i] != 0) != bearing {
+			continue
+		}
+		below := v.stack.nodes[x+1].member
+		gap := float64(v.compliance[i]*v.transfer[i]) + v.taken[i] - v.apart(x)
+		switch {
+		case k.placed[node.member] && !k.placed[below]:
+			k.offset[below], k.placed[below] = k.offset[below]+gap, true
+		case k.placed[below] && !k.placed[node.member]:
+			k.offset[node.member], k.placed[node.member] = k.offset[node.member]-gap, true
+		default:
+			continue
+		}
+		if placed = true; !bearing {
+			return true
+		}
+	}
+	return placed
 }
 
 // takeUp finds the clearance taken up under the present loads, and whether any

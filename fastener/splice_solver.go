@@ -220,12 +220,17 @@ func (v *solver) gradient(out []float64, c *preparedCase) {
 		}
 	}
 	for i, span := range k.spans {
-		elongation := float64(v.flexibility[i] * v.load[i])
-		if c.change != nil {
-			elongation += float64(v.stretch[i] * c.change[span.member])
-		}
-		add(span.below, span.above, elongation)
+		add(span.below, span.above, v.elongation(i, c))
 	}
+}
+
+// elongation of a span under the present loads, mm.
+func (v *solver) elongation(i int, c *preparedCase) float64 {
+	elongation := float64(v.flexibility[i] * v.load[i])
+	if c.change != nil {
+		elongation += float64(v.stretch[i] * c.change[v.stack.spans[i].member])
+	}
+	return elongation
 }
 
 // findResidual finds the largest error of equilibrium at a member and row, or of
