@@ -268,7 +268,7 @@ func TestInstantaneousCentreBalances(t *testing.T) {
 		for i, s := range shares {
 			most = max(most, factor*s.Resultant/p.Fasteners[i].Type.ShearStrength)
 		}
-		if math.Abs(most/bound-1) > 1e-6 {
+		if math.Abs(most/bound-1) > 1e-9 {
 			t.Fatalf("the most used fastener stands at %g of the curve's %g", most, bound)
 		}
 	})
