@@ -101,6 +101,40 @@ func TestOperationsPage(t *testing.T) {
 	if n := strings.Count(out.String(), "holds: 3 entries of jointledger, each exactly as signed; 1 records"); n != 3 {
 		t.Errorf("%d of 3 backups were proven", n)
 	}
+	checkSecrets(t, dir)
+}
+
+// checkSecrets looks where secrets must not be: in modes that others can read,
+// and in logs.
+func checkSecrets(t *testing.T, dir string) {
+	t.Helper()
+	var secrets []string
+	for _, name := range []string{"data/signing.key", "backup/signing.key", "signing.key", "ada.key", "ben.key", "eva.key", "server_password"} {
+		path := filepath.Join(dir, name)
+		text, err := os.ReadFile(path)
+		if err != nil {
+			t.Fatal(err)
+		}
+		secrets = append(secrets, strings.TrimSpace(string(text)))
+		if info, err := os.Stat(path); strings.HasSuffix(name, "signing.key") && (err != nil || info.Mode().Perm() != 0o600) {
+			t.Errorf("%s: %v, %v", name, info.Mode(), err)
+		}
+	}
+	logs, err := filepath.Glob(filepath.Join(dir, "serve*.log"))
+	if err != nil || len(logs) != 4 {
+		t.Fatalf("the logs are %q: %v", logs, err)
+	}
+	for _, path := range logs {
+		text, err := os.ReadFile(path)
+		if err != nil || len(text) == 0 {
+			t.Errorf("%s: %d bytes, %v", path, len(text), err)
+		}
+		for _, secret := range secrets {
+			if strings.Contains(string(text), secret) {
+				t.Errorf("%s has a secret", path)
+			}
+		}
+	}
 }
 
 // freePort is a port of the loopback that was free a moment ago.

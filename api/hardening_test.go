@@ -454,3 +454,53 @@ func TestTraceReachesTheLog(t *testing.T) {
 		t.Errorf("%d lines with the trace and %d without\n%s", with, without, a.log)
 	}
 }
+
+// TestSecretsStayOut: neither keys nor bodies reach the log or the metrics, also
+// where they are refused.
+func TestSecretsStayOut(t *testing.T) {
+	a := attacked(t, nil)
+	key, err := a.service.AddKey(t.Context(), "ada", service.Analyst)
+	if err != nil {
+		t.Fatal(err)
+	}
+	const unknown, inside = "jlk_a-key-that-is-not-known", "a-title-that-is-nobody's-business"
+	for _, presented := range []string{key, unknown, key + "x"} {
+		for _, body := range []string{`{"title":"` + inside, `{"units":"SI","title":"` + inside + `"}`} {
+			request, err := http.NewRequest(http.MethodPost, "http://"+a.address+"/v1/lugs", strings.NewReader(body))
+			if err != nil {
+				t.Fatal(err)
+			}
+			request.Header.Set("Content-Type", "application/json")
+			request.Header.Set("Authorization", "Bearer "+presented)
+			response, err := http.DefaultClient.Do(request)
+			if err != nil {
+				t.Fatal(err)
+			}
+			answer, err := io.ReadAll(response.Body)
+			if err != nil {
+				t.Fatal(err)
+			}
+			response.Body.Close()
+			if strings.Contains(string(answer), presented) {
+				t.Errorf("an answer repeats the key: %s", answer)
+			}
+		}
+	}
+	response, err := http.Get("http://" + a.address + "/metrics")
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer response.Body.Close()
+	metrics, err := io.ReadAll(response.Body)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, secret := range []string{key, unknown, inside} {
+		if strings.Contains(a.log.String(), secret) || strings.Contains(string(metrics), secret) {
+			t.Errorf("%s is in the log or in the metrics", secret)
+		}
+	}
+	if !strings.Contains(a.log.String(), `"status":401`) || !strings.Contains(a.log.String(), `"status":400`) {
+		t.Error("the requests are not in the log")
+	}
+}
