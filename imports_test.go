@@ -46,8 +46,9 @@ var mayImport = map[string][]string{
 	"api":                {"service", "service/strictjson", "api/pages", echo, prometheus, rate},
 	"api/pages":          {"service", "strength"},
 	"api/client":         {"service/strictjson"},
+	"notice":             {"service", "service/strictjson"},
 	".": {
-		"strength", "lug", "fastener", "service", "service/ledger", "service/strictjson", "store", "api", "api/client", kong, netutil,
+		"strength", "lug", "fastener", "service", "service/ledger", "service/strictjson", "store", "api", "api/client", "notice", kong, netutil,
 	},
 }
 

@@ -23,7 +23,7 @@ type keyAddCommand struct {
 
 // Run prints the key alone on standard output.
 func (c keyAddCommand) Run(ctx context.Context, std *streams) error {
-	s, closeAll, err := c.openService(ctx, nil, service.Unwatched{})
+	s, closeAll, err := c.openService(ctx, service.Setup{Watch: service.Unwatched{}})
 	if err != nil {
 		return err
 	}
@@ -40,7 +40,7 @@ type keyListCommand struct{ place }
 
 // Run prints a table.
 func (c keyListCommand) Run(ctx context.Context, std *streams) error {
-	s, closeAll, err := c.openService(ctx, nil, service.Unwatched{})
+	s, closeAll, err := c.openService(ctx, service.Setup{Watch: service.Unwatched{}})
 	if err != nil {
 		return err
 	}
@@ -71,7 +71,7 @@ type keyRevokeCommand struct {
 
 // Run says how many keys were revoked.
 func (c keyRevokeCommand) Run(ctx context.Context, std *streams) error {
-	s, closeAll, err := c.openService(ctx, nil, service.Unwatched{})
+	s, closeAll, err := c.openService(ctx, service.Setup{Watch: service.Unwatched{}})
 	if err != nil {
 		return err
 	}

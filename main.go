@@ -177,7 +177,7 @@ func (p place) open(ctx context.Context) (service.Store, error) {
 }
 
 // openService opens the service on its store, and returns what closes both.
-func (p place) openService(ctx context.Context, policies service.Policies, watch service.Watch) (_ *service.Service, closeAll func(), _ error) {
+func (p place) openService(ctx context.Context, setup service.Setup) (_ *service.Service, closeAll func(), _ error) {
 	signer, err := p.signer()
 	if err != nil {
 		return nil, nil, err
@@ -186,9 +186,8 @@ func (p place) openService(ctx context.Context, policies service.Policies, watch
 	if err != nil {
 		return nil, nil, err
 	}
-	s, err := service.New(ctx, service.Setup{
-		Store: opened, Clock: service.SystemClock{}, Signer: signer, Policies: policies, Watch: watch,
-	})
+	setup.Store, setup.Clock, setup.Signer = opened, service.SystemClock{}, signer
+	s, err := service.New(ctx, setup)
 	if err != nil {
 		return nil, nil, errors.Join(err, opened.Close())
 	}

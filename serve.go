@@ -9,11 +9,13 @@ import (
 	"net/http"
 	"net/netip"
 	"os"
+	"sync"
 	"time"
 
 	"golang.org/x/net/netutil"
 
 	"jointledger/api"
+	"jointledger/notice"
 	"jointledger/service"
 )
 
@@ -24,6 +26,7 @@ type serveCommand struct {
 	CORSOrigins []string      `help:"Web origin whose pages may call, such as https://tools.example; none by default." name:"cors-origin" env:"JOINTLEDGER_CORS_ORIGIN" placeholder:"ORIGIN"`
 	DrainNotice time.Duration `help:"How long /readyz fails after SIGTERM before no more requests are accepted: longer than what sends them here takes to notice." default:"200ms" env:"JOINTLEDGER_DRAIN_NOTICE" placeholder:"TIME"`
 	Policies    string        `help:"File of named release policies." env:"JOINTLEDGER_POLICIES" placeholder:"FILE"`
+	Notify      string        `help:"File of systems that are told when a release does not hold any more." env:"JOINTLEDGER_NOTIFY" placeholder:"FILE"`
 	place
 }
 
@@ -43,6 +46,22 @@ func (c serveCommand) policies() (service.Policies, error) {
 	return policies, nil
 }
 
+// targets reads the file of systems to notify; an error in it stops the start.
+func (c serveCommand) targets() (notice.Targets, error) {
+	if c.Notify == "" {
+		return nil, nil
+	}
+	text, err := os.ReadFile(c.Notify)
+	if err != nil {
+		return nil, fmt.Errorf("cannot read the systems to notify: %w", err)
+	}
+	targets, err := notice.NewTargets(text)
+	if err != nil {
+		return nil, fmt.Errorf("the systems to notify in %s cannot be used:\n%w", c.Notify, err)
+	}
+	return targets, nil
+}
+
 // drainTime is how long requests that have begun may take after SIGTERM and
 // the notice.
 const drainTime = 25 * time.Second
@@ -55,7 +74,11 @@ func (c serveCommand) Run(ctx context.Context, std *streams) error {
 	if err != nil {
 		return err
 	}
-	s, closeAll, err := c.openService(ctx, policies, metrics)
+	targets, err := c.targets()
+	if err != nil {
+		return err
+	}
+	s, closeAll, err := c.openService(ctx, service.Setup{Policies: policies, Watch: metrics, Notify: targets.Names()})
 	if err != nil {
 		return err
 	}
@@ -76,6 +99,13 @@ func (c serveCommand) Run(ctx context.Context, std *streams) error {
 		Log: log, Metrics: metrics, RateLimit: c.RateLimit, CORSOrigins: c.CORSOrigins, OpenAPI: openapi,
 	}), log)
 	server.ConnState = metrics.Connection
+	delivering, stopDelivery := context.WithCancel(context.Background())
+	var delivery sync.WaitGroup
+	if len(targets) > 0 {
+		delivery.Go(func() { s.Deliver(delivering, targets) })
+	}
+	defer delivery.Wait()
+	defer stopDelivery()
 	ended := make(chan error, 1)
 	go func() { ended <- server.Serve(netutil.LimitListener(listener, api.MostConnections)) }()
 	log.Info("serving", "address", "http://"+listener.Addr().String(), "open", open)

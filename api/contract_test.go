@@ -313,6 +313,10 @@ func TestNotFound(t *testing.T) {
 				t.Errorf("the part %s: %d: %s", part, a.status, a.body)
 			}
 		}
+		for _, id := range []string{"0198f3a4-7a2c-7000-8000-000000000000", "x", "ÿ"} {
+			body := []byte(`{"withdrawn":{"record":"` + id + `"}}`)
+			w.callers[service.Reader].do(t, post("/v1/impact", body)).want(t, http.StatusNotFound)
+		}
 		for _, filter := range []string{"part=%00", "part=%ff", "material=%00", "author=%ff", "method=%00", "curve_set=%ff"} {
 			var list struct{ Items []any }
 			if w.callers[service.Reader].do(t, get("/v1/records?"+filter)).decode(t, 200, &list); len(list.Items) != 0 {

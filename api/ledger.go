@@ -126,6 +126,10 @@ func (v *server) releaseCheck(ctx context.Context, r *Request) (*Response, error
 	return response, nil
 }
 
+func (v *server) impact(ctx context.Context, r *Request) (*Response, error) {
+	return encoded(v.service.Impact(ctx, r.Body))
+}
+
 func (v *server) registerCurveSet(ctx context.Context, r *Request) (*Response, error) {
 	key, err := idempotency(r)
 	if err != nil {

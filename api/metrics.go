@@ -31,6 +31,8 @@ type Metrics struct {
 	reasons      *prometheus.CounterVec
 	replays      *prometheus.CounterVec
 	altered      prometheus.Counter
+	notices      *prometheus.CounterVec
+	waiting      prometheus.Gauge
 	connections  prometheus.Gauge
 	log          *slog.Logger
 }
@@ -98,8 +100,14 @@ func NewMetrics(log *slog.Logger) *Metrics {
 	}
 	m.replays.WithLabelValues(reproduced)
 	m.replays.WithLabelValues(different)
+	m.notices = prometheus.NewCounterVec(prometheus.CounterOpts{
+		Name: "jointledger_notice_attempts_total", Help: "Attempts to deliver a notice to another system, by outcome.",
+	}, []string{"target", "outcome"})
+	m.waiting = prometheus.NewGauge(prometheus.GaugeOpts{
+		Name: "jointledger_notices_waiting", Help: "Notices that were not delivered yet.",
+	})
 	m.registry.MustRegister(m.requests, m.bodies, m.inFlight, m.panics, m.connections, build,
-		m.calculations, m.appends, m.groups, m.appended, m.appendedAt, m.decisions, m.reasons, m.replays, m.altered,
+		m.calculations, m.appends, m.groups, m.appended, m.appendedAt, m.decisions, m.reasons, m.replays, m.altered, m.notices, m.waiting,
 		collectors.NewGoCollector(), collectors.NewProcessCollector(collectors.ProcessCollectorOpts{}))
 	return m
 }
@@ -159,6 +167,19 @@ func (m *Metrics) Altered(err error) {
 	m.altered.Inc()
 	m.log.Error("stored rows are not those that were signed", "error", err.Error())
 }
+
+// NoticeSent implements service.Watch.
+func (m *Metrics) NoticeSent(n service.Notice, err error) {
+	outcome := "sent"
+	if err != nil {
+		outcome = "failed"
+		m.log.Warn("a notice was not taken", "notice", n.ID, "target", n.Target, "attempt", n.Attempts, "error", err.Error())
+	}
+	m.notices.WithLabelValues(n.Target, outcome).Inc()
+}
+
+// NoticesWait implements service.Watch.
+func (m *Metrics) NoticesWait(n int64) { m.waiting.Set(float64(n)) }
 
 func (m *Metrics) handler() http.Handler {
 	return promhttp.HandlerFor(m.registry, promhttp.HandlerOpts{Registry: m.registry})

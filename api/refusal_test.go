@@ -314,6 +314,9 @@ func TestInvalid(t *testing.T) {
 		{"a record of nothing", "/v1/records", record, changes{"/subject/part": "", "/geometry_digest": "", "/input/lug/thickness": 0}, at{"/geometry_digest", "/input/lug/thickness", "/subject/part"}},
 		{"a long note", "/v1/records", record, changes{"/note": strings.Repeat("x", 2001)}, at{"/note"}},
 
+		{"the impact of nothing", "/v1/impact", example(t, "findImpact", "method"), changes{"/withdrawn": map[string]any{}}, at{"/withdrawn"}},
+		{"the impact of two things", "/v1/impact", example(t, "findImpact", "method"), changes{"/withdrawn/material": "SM plate"}, at{"/withdrawn"}},
+		{"the impact from a cursor of another kind", "/v1/impact", example(t, "findImpact", "method"), changes{"/cursor": "x"}, at{"/cursor"}},
 		{"a release of no joints", "/v1/release-checks", example(t, "checkRelease", "checkIn"), changes{"/joints": []any{}}, at{"/joints"}},
 		{"a release of a joint twice", "/v1/release-checks", example(t, "checkRelease", "checkIn"), changes{"/joints/1/joint": "boom hinge lower"}, at{"/joints/1/joint"}},
 		{"an unknown policy", "/v1/release-checks", example(t, "checkRelease", "checkIn"), changes{"/policy": "lenient"}, at{"/policy"}},

@@ -43,6 +43,7 @@ func (v *server) routes() []route {
 
 		{http.MethodPost, "/v1/replays", service.Reader, nil, jsonMedia, v.replays},
 
+		{http.MethodPost, "/v1/impact", service.Reader, nil, jsonMedia, v.impact},
 		{http.MethodPost, "/v1/release-checks", service.Reader, []string{"dry_run"}, jsonMedia, v.releaseCheck},
 
 		{http.MethodGet, "/v1/export", service.Reader, []string{"from"}, "", v.export},

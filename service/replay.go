@@ -43,7 +43,16 @@ func (s *Service) Replay(ctx context.Context, id string) (*Replay, error) {
 	if err != nil {
 		return nil, err
 	}
-	return s.replay(ctx, entry.Bytes, nil)
+	return s.replayEntry(ctx, entry, nil)
+}
+
+// replayEntry replays a record, and tells of one that does not hold any more.
+func (s *Service) replayEntry(ctx context.Context, entry Entry, substitute *substitution) (*Replay, error) {
+	r, err := s.replay(ctx, entry.Bytes, substitute)
+	if err != nil || substitute != nil {
+		return r, err
+	}
+	return r, s.fail(s.tellReplay(ctx, entry, r))
 }
 
 // replay computes an entry again; the current result with a material in the

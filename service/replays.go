@@ -174,7 +174,7 @@ func (s *Service) replayItem(ctx context.Context, summary *Summary, substitute *
 		Record: summary.ID, Index: summary.Index, Subject: subject(summary.Subject), Kind: summary.Kind, State: summary.State,
 		WasVerdict: summary.Verdict, WasMargin: summary.Margin,
 	}
-	r, err := s.replay(ctx, entry.Bytes, substitute)
+	r, err := s.replayEntry(ctx, entry, substitute)
 	if p := (*Problem)(nil); errors.As(err, &p) && p.Code != Unavailable {
 		item.Problem = text(p.Error())
 		item.Current.Verdict = strength.Undetermined.String()

@@ -26,6 +26,8 @@ type pending struct {
 	// admit checks, while nobody else can append, that the entry may be
 	// appended, and returns the state that it leaves its record in.
 	admit func(ctx context.Context) (State, error)
+	// notices go into the transaction; admit may make them.
+	notices []Notice
 	// judges tells that the entry is a judgement of what the log says: nothing
 	// but other judgements may stand before it in its batch.
 	judges bool
@@ -166,6 +168,7 @@ func (s *sequencer) tryWrite(batch []*pending) ([]*pending, error) {
 		leaves[i] = p.entry.Leaf
 		out.Entries = append(out.Entries, p.entry)
 		out.Keys = append(out.Keys, p.keys...)
+		out.Notices = append(out.Notices, p.notices...)
 		if p.answer != nil {
 			p.answer.Index, p.answer.State = p.entry.Index, states[i]
 			out.Answers = append(out.Answers, *p.answer)
@@ -231,7 +234,8 @@ func (s *sequencer) answerEarlier(ctx context.Context, batch []*pending) ([]*pen
 }
 
 // admit answers the entries that may not be appended. Two entries about one
-// record never stand in one batch, so that each is judged on what the log says.
+// record never stand in one batch, nor does one after a decision that rests on
+// that record, so that each is judged on what the log says.
 func (s *sequencer) admit(ctx context.Context, batch []*pending) (left []*pending, states []State, err error) {
 	about, changes := map[string]bool{}, false
 	for i, p := range batch {
@@ -252,6 +256,11 @@ func (s *sequencer) admit(ctx context.Context, batch []*pending) (left []*pendin
 		}
 		left, states = append(left, p), append(states, state)
 		changes = changes || !p.judges
+		for _, t := range p.entry.Terms {
+			if t.Kind == termRecord {
+				about[t.Value] = true
+			}
+		}
 	}
 	return left, states, nil
 }

@@ -48,6 +48,7 @@ type Service struct {
 	callers  callers
 	policies Policies
 	watch    Watch
+	notify   []string
 	draining atomic.Bool
 }
 
@@ -64,6 +65,10 @@ type Watch interface {
 	Decided(decision string, codes []string)
 	// Altered tells that stored rows are not those that were signed.
 	Altered(err error)
+	// NoticeSent tells of an attempt to deliver a notice, nil for success.
+	NoticeSent(n Notice, err error)
+	// NoticesWait tells how many notices wait to be delivered.
+	NoticesWait(n int64)
 }
 
 // Outcome is what became of a batch.
@@ -107,6 +112,12 @@ func (Unwatched) Decided(string, []string) {}
 // Altered implements Watch.
 func (Unwatched) Altered(error) {}
 
+// NoticeSent implements Watch.
+func (Unwatched) NoticeSent(Notice, error) {}
+
+// NoticesWait implements Watch.
+func (Unwatched) NoticesWait(int64) {}
+
 // Setup is what a service is made of.
 type Setup struct {
 	Store    Store
@@ -114,6 +125,9 @@ type Setup struct {
 	Signer   Signer
 	Policies Policies
 	Watch    Watch
+	// Notify names the systems that are told when a release does not hold any
+	// more.
+	Notify []string
 }
 
 // New opens a service on a store. It refuses a log that belongs to another
@@ -132,7 +146,7 @@ func New(ctx context.Context, setup Setup) (*Service, error) {
 		return nil, fmt.Errorf("this ledger is signed by the key %s and the server was given another: start it with the ledger's own --signing-key", stands.VerifierKey)
 	}
 	return &Service{
-		store: store, clock: setup.Clock, signer: signer, policies: setup.Policies, watch: setup.Watch,
+		store: store, clock: setup.Clock, signer: signer, policies: setup.Policies, watch: setup.Watch, notify: setup.Notify,
 		log:     newSequencer(store, signer, setup.Watch),
 		callers: callers{known: map[[32]byte]knownKey{}, touched: map[string]time.Time{}},
 	}, nil

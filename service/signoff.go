@@ -117,7 +117,8 @@ func (s *Service) appendAbout(ctx context.Context, caller Caller, record Entry, 
 	if err != nil {
 		return nil, false, err
 	}
-	done := s.log.append(&pending{ctx: ctx, entry: entry, answer: idempotency.answer(caller), admit: func(ctx context.Context) (State, error) {
+	p := &pending{ctx: ctx, entry: entry, answer: idempotency.answer(caller)}
+	p.admit = func(ctx context.Context) (State, error) {
 		found, err := s.store.About(ctx, []string{record.ID})
 		if err != nil {
 			return "", err
@@ -126,8 +127,14 @@ func (s *Service) appendAbout(ctx context.Context, caller Caller, record Entry, 
 		if err := may(about); err != nil {
 			return "", err
 		}
+		if w, ok := body.(withdrawalBody); ok {
+			if p.notices, err = s.notices(ctx, noticeWithdrawn, entry.ID, entry.At, w.Reason, record); err != nil {
+				return "", err
+			}
+		}
 		return stateOf(append(about, entry)), nil
-	}})
+	}
+	done := s.log.append(p)
 	switch {
 	case done.err != nil:
 		return nil, false, s.fail(done.err)

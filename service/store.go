@@ -53,6 +53,10 @@ type Store interface {
 	// exactly this part and revision.
 	Latest(ctx context.Context, part, revision string) ([]Entry, error)
 
+	// Decisions returns the release decisions that rest on each of the records,
+	// in the order of the log.
+	Decisions(ctx context.Context, records []string) ([]Resting, error)
+
 	// CurveSet returns the entry of the curve set with this id@version, or of
 	// the latest with this id. ErrNotFound. CurveSets returns all, in order.
 	CurveSet(ctx context.Context, name string) (Entry, error)
@@ -72,6 +76,18 @@ type Store interface {
 	SessionKey(ctx context.Context, hash [32]byte, now string) (Key, error)
 	// EndSession forgets a session, if there is one.
 	EndSession(ctx context.Context, hash [32]byte) error
+
+	// Notify keeps notices to be delivered, but for those whose id is known for
+	// their target.
+	Notify(ctx context.Context, notices []Notice) error
+	// TakeNotices gives out at most limit notices that are due by now, counts
+	// an attempt for each, and gives them to nobody else until a time.
+	TakeNotices(ctx context.Context, now, until string, limit int) ([]Notice, error)
+	// SettleNotice writes that a notice was sent, or, sent being empty, when
+	// it is due again.
+	SettleNotice(ctx context.Context, id, target, sent, due string) error
+	// NoticesWaiting counts those that were not sent yet.
+	NoticesWaiting(ctx context.Context) (int64, error)
 
 	// Close lets go of the engine.
 	Close() error
@@ -100,6 +116,7 @@ type Batch struct {
 	Hashes  []ledger.Hash
 	Answers []Answer
 	Keys    []KeyChange
+	Notices []Notice
 }
 
 // Entry is an entry of the log as stored: its exact bytes, and columns for
@@ -174,6 +191,21 @@ type Filter struct {
 type Summary struct {
 	Entry // without Bytes and Terms
 	State State
+}
+
+// Resting is a release decision that rests on a record.
+type Resting struct {
+	Record   string
+	Decision Entry // without Bytes and Terms
+}
+
+// Notice is something to be told to another system.
+type Notice struct {
+	ID       string // the same of every attempt
+	Target   string // the name of the system
+	Body     []byte
+	Due      string // not before this time
+	Attempts int    // begun so far
 }
 
 // IdempotencyKey is a caller's name for one request.

@@ -29,6 +29,7 @@ func (s *Postgres) Append(ctx context.Context, b service.Batch) error {
 		queueKey(batch, k)
 	}
 	queueStanding(batch, b)
+	queueNotices(batch, b.Notices)
 	return postgresError(s.pool.SendBatch(ctx, batch).Close())
 }
 

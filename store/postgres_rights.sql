@@ -4,6 +4,6 @@
 GRANT USAGE ON SCHEMA public TO SERVER;
 GRANT SELECT ON schema_migrations TO SERVER;
 GRANT SELECT, INSERT ON identity, entries, terms, tree_hashes, idempotency TO SERVER;
-GRANT SELECT, INSERT, UPDATE ON keys, standing TO SERVER;
+GRANT SELECT, INSERT, UPDATE ON keys, standing, notices TO SERVER;
 GRANT SELECT, UPDATE ON head TO SERVER;
 GRANT SELECT, INSERT, DELETE ON sessions TO SERVER;

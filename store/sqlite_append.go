@@ -83,6 +83,9 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	}); err != nil {
 		return err
 	}
+	if err := sqliteNotices(ctx, tx, b.Notices); err != nil {
+		return err
+	}
 	for _, k := range b.Keys {
 		if err := sqliteKey(ctx, tx, k); err != nil {
 			return err

@@ -9,6 +9,7 @@
 package store
 
 import (
+	"cmp"
 	"errors"
 	"fmt"
 	"slices"
@@ -83,12 +84,31 @@ func check(b service.Batch) error {
 			return fmt.Errorf("the answer of entry %d: a text has a zero character or is not UTF-8", a.Index)
 		}
 	}
+	if err := checkNotices(b.Notices); err != nil {
+		return err
+	}
 	for _, k := range b.Keys {
 		if k.Add != nil && !storable(k.Add.ID, k.Add.Caller, k.Add.Role, k.Add.Added, k.Add.Revoked, k.Add.LastUsed) || !storable(k.Revoke, k.At) {
 			return errors.New("a key: a text has a zero character or is not UTF-8")
 		}
 	}
 	return nil
+}
+
+func checkNotices(notices []service.Notice) error {
+	for _, n := range notices {
+		if !storable(n.ID, n.Target, n.Due) {
+			return errors.New("a notice: a text has a zero character or is not UTF-8")
+		}
+	}
+	return nil
+}
+
+// sortResting puts decisions in the order of the log.
+func sortResting(found []service.Resting) {
+	slices.SortStableFunc(found, func(a, b service.Resting) int {
+		return cmp.Or(cmp.Compare(a.Decision.Index, b.Decision.Index), cmp.Compare(a.Record, b.Record))
+	})
 }
 
 // defect is an error of a caller, not of the engine.

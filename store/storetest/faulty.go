@@ -215,5 +215,32 @@ func (f *Faulty) EndSession(ctx context.Context, hash [32]byte) error {
 	return err
 }
 
+// Decisions implements service.Store.
+func (f *Faulty) Decisions(ctx context.Context, records []string) ([]service.Resting, error) {
+	return do(f, "Decisions", func() ([]service.Resting, error) { return f.inner.Decisions(ctx, records) })
+}
+
+// Notify implements service.Store.
+func (f *Faulty) Notify(ctx context.Context, notices []service.Notice) error {
+	_, err := do(f, "Notify", func() (struct{}, error) { return nothing(f.inner.Notify(ctx, notices)) })
+	return err
+}
+
+// TakeNotices implements service.Store.
+func (f *Faulty) TakeNotices(ctx context.Context, now, until string, limit int) ([]service.Notice, error) {
+	return do(f, "TakeNotices", func() ([]service.Notice, error) { return f.inner.TakeNotices(ctx, now, until, limit) })
+}
+
+// SettleNotice implements service.Store.
+func (f *Faulty) SettleNotice(ctx context.Context, id, target, sent, due string) error {
+	_, err := do(f, "SettleNotice", func() (struct{}, error) { return nothing(f.inner.SettleNotice(ctx, id, target, sent, due)) })
+	return err
+}
+
+// NoticesWaiting implements service.Store.
+func (f *Faulty) NoticesWaiting(ctx context.Context) (int64, error) {
+	return do(f, "NoticesWaiting", func() (int64, error) { return f.inner.NoticesWaiting(ctx) })
+}
+
 // Close implements service.Store; it never fails on purpose.
 func (f *Faulty) Close() error { return f.inner.Close() }
