@@ -10,6 +10,7 @@ import (
 	"io"
 	"net/http"
 	"net/http/httptest"
+	"os"
 	"strconv"
 	"strings"
 	"testing"
@@ -170,5 +171,19 @@ func TestFilesOfTargetsAreRefused(t *testing.T) {
 		if err != nil && strings.Contains(err.Error(), key) {
 			t.Errorf("the error tells the key: %v", err)
 		}
+	}
+}
+
+// The example of the operator's page can be used as it stands.
+func TestTheOperatorsExample(t *testing.T) {
+	page, err := os.ReadFile("../OPERATIONS.md")
+	if err != nil {
+		t.Fatal(err)
+	}
+	_, after, _ := strings.Cut(string(page), "```json\n{\"notify\"")
+	text, _, found := strings.Cut(after, "```")
+	to, err := NewTargets([]byte("{\"notify\"" + text))
+	if err != nil || !found || len(to) != 2 {
+		t.Errorf("%d systems, %v", len(to), err)
 	}
 }
