@@ -60,8 +60,11 @@ func (b *builder) bodyBendingCheck(p *part) {
 	b.check(p.member, strength.BodyBending, strength.Ultimate, strength.Force, strength.ByRegulation, &eqBodyBending, p.bodyBending)
 }
 
-// bends reports whether an offset hole bends the body.
-func (p *part) bends() bool { return p.head.Offset != 0 && !p.head.BodyRestrained }
+// bends reports whether an offset hole bends the body, or may within its
+// tolerance.
+func (p *part) bends() bool {
+	return (p.head.Offset != 0 || p.varies.has(p.first+fieldOffset)) && !p.head.BodyRestrained
+}
 
 // tang is the tension that the body bears with the bending of an offset hole,
 // in N on the head.

@@ -92,7 +92,8 @@ func (m *eurocode) plate(p *part) {
 		return 0.6 * m.pressed(p, s) / m.gamma(s, "6")
 	})
 	// Contact stress rises with the play of the pin and is none without it.
-	if p.pin == nil || p.bushing != nil || !strength.Less(p.pin.Diameter, p.head.HoleDiameter) {
+	plays := p.varies.has(fieldPin) || p.varies.has(p.first+fieldHole)
+	if p.pin == nil || p.bushing != nil || !plays && !strength.Less(p.pin.Diameter, p.head.HoleDiameter) {
 		return
 	}
 	m.axial(p, strength.Bearing, strength.Limit, strength.ByMethod, anyWay, &eqENContact, func(s *sheet) float64 {

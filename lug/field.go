@@ -1,5 +1,7 @@
 package lug
 
+import "strings"
+
 // field is one member of a request that a calculation may read.
 type field uint8
 
@@ -43,6 +45,16 @@ var fieldPaths = [fieldsInAll]string{
 	"clevis.gap", "clevis.leg_share", "clevis.moment_share",
 	"pin.diameter", "pin.inner_diameter",
 	"load_cases.force", "load_cases.angle", "factors.ultimate",
+}
+
+// fieldAt is the set of the one field at a pointer, empty where there is none.
+func fieldAt(pointer string) (set fieldSet) {
+	for f := range fieldsInAll {
+		if fieldPaths[f] == strings.ReplaceAll(strings.TrimPrefix(pointer, "/"), "/", ".") {
+			set.add(f)
+		}
+	}
+	return set
 }
 
 // path is where the field stands in a request.

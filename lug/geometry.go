@@ -16,6 +16,7 @@ type part struct {
 	pin                   *Pin
 	share                 float64 // of the joint's load in this head
 	doubleLeg             bool
+	varies                fieldSet // of the joint
 }
 
 // Geometry is measured as x from the hole centre toward the free end, y across.

@@ -86,6 +86,10 @@ type Joint struct {
 	Bushing     *Bushing
 	Pin         *Pin
 	Clevis      *Clevis
+
+	// varies are the fields with tolerances: a check that one of their limits
+	// brings about stands at all of them.
+	varies fieldSet
 }
 
 // LoadCase is one load on the joint.

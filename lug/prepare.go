@@ -110,14 +110,14 @@ func Prepare(j Joint, choices []Choice, f strength.Factors, cases []LoadCase) (*
 // place puts the heads of the joint in their places.
 func (p *Prepared) place() {
 	j := &p.joint
-	p.lug = &part{member: memberLug, bushingMember: memberBushing, head: &j.Lug, bushing: j.Bushing, pin: j.Pin, share: 1}
+	p.lug = &part{member: memberLug, bushingMember: memberBushing, head: &j.Lug, bushing: j.Bushing, pin: j.Pin, share: 1, varies: j.varies}
 	c := j.Clevis
 	if c == nil {
 		return
 	}
 	p.clevis = &part{
 		member: memberClevis, bushingMember: memberClevisBushing, first: fieldsOfHead,
-		head: &c.Head, bushing: c.Bushing, pin: j.Pin, share: 1,
+		head: &c.Head, bushing: c.Bushing, pin: j.Pin, share: 1, varies: j.varies,
 	}
 	if !j.SingleShear {
 		p.clevis.doubleLeg, p.clevis.share = true, cmp.Or(c.LegShare, 0.5)

@@ -28,7 +28,7 @@ var pressEquations = []*Equation{&eqRingInner, &eqRingFace, &eqRingOuter, &eqRad
 // pressFit adds the stresses of an interference at limit. They are never added
 // to ultimate checks: yielding relieves them.
 func (m *affdl) pressFit(h *affdlHead) {
-	if h.bushing == nil || h.bushing.Interference == 0 {
+	if h.bushing == nil || h.bushing.Interference == 0 && !h.varies.has(h.first+fieldInterference) {
 		return
 	}
 	add := func(member string, e *Equation, stresses func(*sheet) (demand, allowable float64)) {

@@ -62,8 +62,13 @@ func PrepareToleranced(j Joint, lengths []Tolerance, choices []Choice, f strengt
 		}
 	}
 	t := &Toleranced{tolerances: lengths, cases: cases}
+	var varies fieldSet
+	for _, l := range lengths {
+		varies |= fieldAt(l.Pointer)
+	}
 	at := func(upper uint) (*Prepared, []strength.Fault) {
 		own := j.Clone()
+		own.varies = varies
 		for k, l := range lengths {
 			l.Set(&own, l.at(upper, k))
 		}

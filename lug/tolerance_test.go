@@ -125,3 +125,41 @@ func TestCornersAreTheWorst(t *testing.T) {
 		}
 	})
 }
+
+// A check that only a limit of a length brings about is not lost with the
+// nominal length: the bending by an offset of 2 mm, 450 x 80 x 12 / (1 + 12/80)
+// = 375,652 N; the press fit of an interference; the play of a pin in its hole.
+func TestLimitsBringChecksAbout(t *testing.T) {
+	play := bare()
+	play.Pin = &lug.Pin{Diameter: 25, Material: steel()}
+	replaceable := []lug.Choice{{Method: "en-1993-1-8", Options: lug.Options{"replaceable": {Flag: true}}}}
+	for _, c := range []struct {
+		name    string
+		joint   lug.Joint
+		choices []lug.Choice
+		length  lug.Tolerance
+		mode    strength.Mode
+		want    float64 // the allowable by hand; 0: any
+	}{
+		{"elementary", bare(), methods("elementary"), tolerance(t, "/lug/offset", 0, 2, 2), strength.Tang, 432000 / 1.15},
+		{"affdl", bare(), methods(affdl), tolerance(t, "/lug/offset", 0, 2, 2), strength.Tang, 432000 / 1.15},
+		{"aisc", play, methods("aisc-360-d5"), tolerance(t, "/lug/offset", 0, 2, 2), strength.Tang, 380 * 80 * 12 / 1.67 / 1.15},
+		{"press fit", hinge(), methods(affdl), tolerance(t, "/bushing/interference", 0, 0, 0.04), strength.Yielding, 0},
+		{"contact", play, replaceable, tolerance(t, "/lug/hole_diameter", 25, 0, 0.5), strength.Bearing, math.Pow(2.5*380/0.591, 2) * 625 * 12 / (71000 * 0.5)},
+	} {
+		p, wrong := lug.PrepareToleranced(c.joint, []lug.Tolerance{c.length}, c.choices, usual(), at(1000, 0))
+		if wrong != nil {
+			t.Fatal(c.name, wrong)
+		}
+		out := make([]strength.Margin, len(p.Checks()))
+		p.Margins(0, out)
+		found := false
+		for k, check := range p.Checks() {
+			found = found || check.Mode == c.mode && out[k].Status != strength.NotExercised &&
+				(c.want == 0 || math.Abs(out[k].Allowable/c.want-1) < 1e-9)
+		}
+		if !found {
+			t.Errorf("%s: no %s of %g", c.name, c.mode, c.want)
+		}
+	}
+}
