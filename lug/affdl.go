@@ -61,6 +61,7 @@ const (
 
 var (
 	eqEndRatio    = Equation{Symbol: "a", Text: "e - D/2", Unit: strength.Length, Source: geometrySource + ": hole to end", Mark: strength.Derived}
+	eqEndTapered  = Equation{Symbol: "a", Text: "e_s - D/2", Unit: strength.Length, Source: geometrySource + ": hole to the end of the round head that stands for a tapered one", Mark: strength.Derived}
 	eqHoleRatio   = Equation{Symbol: "D/t", Text: "D / t", Unit: strength.None, Source: geometrySource, Mark: strength.Derived}
 	eqSideRatio   = Equation{Symbol: "D/W", Text: "D / (2 c1)", Unit: strength.None, Source: geometrySource + ": of the least side", Mark: strength.Derived}
 	eqYieldRatio  = Equation{Symbol: "y", Text: "1.304", Unit: strength.None, Source: affdlSource + ", equation 9-3: 1.5 / 1.15", Mark: strength.FromMemory(97)}
@@ -93,7 +94,7 @@ var (
 )
 
 var affdlEquations = gather(geometryEquations, []*Equation{
-	&eqEndRatio, &eqHoleRatio, &eqSideRatio, &eqYieldRatio, &eqYieldLower, &eqRatioFull, &eqRatioFrom, &eqHandbookLine,
+	&eqEndRatio, &eqEndTapered, &eqHoleRatio, &eqSideRatio, &eqYieldRatio, &eqYieldLower, &eqRatioFull, &eqRatioFrom, &eqHandbookLine,
 	&eqBearShort, &eqBearLong, &eqBearYShort, &eqBearYLong, &eqBearStress, &eqBearYStress, &eqBearStrong, &eqBearYield, &eqBearPush, &eqBearYPush,
 	&eqNetFactor, &eqNetStrain, &eqNetU, &eqNetY, &eqNetStrong, &eqNetYieldL, &eqLugStrong, &eqBushU, &eqBushY,
 	&eqCrossRatio, &eqDepthRatio, &eqTransverse,
@@ -275,7 +276,7 @@ func (h *affdlHead) bearingStress(s *sheet, way int) (ultimate, yield float64) {
 	ftu, fty := h.property(s, strength.FtuCross), h.property(s, strength.FtyCross)
 	ratio, capAt, end := fullEdge, &eqRatioFull, 1.0
 	if way == 0 {
-		ratio = h.edgeRatio(s)
+		ratio = h.shearRatio(s)
 	}
 	long := strength.AtLeast(ratio, fullEdge)
 	if long {
@@ -283,7 +284,11 @@ func (h *affdlHead) bearingStress(s *sheet, way int) (ultimate, yield float64) {
 	} else {
 		capAt = &eqRatioFrom
 		hole := h.hole(s)
-		end = s.apply(&eqEndRatio, h.edge(s)-hole/2) / hole
+		e := &eqEndRatio
+		if h.head.Shape == Tapered {
+			e = &eqEndTapered
+		}
+		end = s.apply(e, h.shearEdge(s)-hole/2) / hole
 	}
 	k := h.bearingFactor(s, ratio)
 	equation, equationY := &eqBearShort, &eqBearYShort

@@ -28,13 +28,14 @@ var (
 	eqAISCExtra   = Equation{Symbol: "b_0", Text: "", Unit: strength.Length, Source: aiscSource + ".1: 16 mm, 0.63 in", Mark: strength.Seen}
 	eqAISCRupture = Equation{Number: "D5-1", Symbol: "P_n", Text: "F_tu 2 t b_e,eff", Unit: strength.Force, Source: aiscSource, Mark: strength.Seen}
 	eqAISCShear   = Equation{Number: "D5-2", Symbol: "P_n", Text: "0.6 F_tu 2 t (e - D/2 + Db/2)", Unit: strength.Force, Source: aiscSource, Mark: strength.Seen}
+	eqAISCTapered = Equation{Number: "D5-2", Symbol: "P_n", Text: "0.6 F_tu 2 t (min(e, (W/2 - |o| - Db/2) / tan(β)) - D/2 + Db/2)", Unit: strength.Force, Source: aiscSource + "; the planes end at the converging sides: derived", Mark: strength.Derived}
 	eqAISCBearing = Equation{Number: "J7-1", Symbol: "P_n", Text: "1.8 F_ty t_b Db", Unit: strength.Force, Source: "AISC 360-16 section J7", Mark: strength.Seen}
 	eqAISCGross   = Equation{Number: "D2-1", Symbol: "P_n", Text: "F_ty wT t", Unit: strength.Force, Source: "AISC 360-16 section D2", Mark: strength.Seen}
 	eqAISCOffset  = Equation{Symbol: "P_n", Text: "F_ty", Unit: strength.Force, Source: "AISC 360-16 section D2, gross section, with the bending of an offset hole by statics", Mark: strength.Derived}
 )
 
 var aiscEquations = gather(geometryEquations, []*Equation{
-	&eqActualWidth, &eqAISCWidth, &eqAISCRupture, &eqAISCShear, &eqAISCBearing, &eqAISCGross, &eqAISCOffset,
+	&eqActualWidth, &eqAISCWidth, &eqAISCRupture, &eqAISCShear, &eqAISCTapered, &eqAISCBearing, &eqAISCGross, &eqAISCOffset,
 }, bodyEquations)
 
 // aisc is the method with its basis.
@@ -54,9 +55,17 @@ func prepareAISC(b *builder) {
 		m.nominal(p, strength.NetSection, pull|transverse, &eqAISCRupture, 0.75, 2.00, func(s *sheet) float64 {
 			return p.property(s, strength.Ftu) * 2 * p.thickness(s) * m.effective(p, s)
 		})
-		m.nominal(p, strength.ShearOut, pull|transverse, &eqAISCShear, 0.75, 2.00, func(s *sheet) float64 {
+		shear := &eqAISCShear
+		if p.head.Shape == Tapered {
+			shear = &eqAISCTapered
+		}
+		m.nominal(p, strength.ShearOut, pull|transverse, shear, 0.75, 2.00, func(s *sheet) float64 {
 			p.pinDiameter(s)
-			return 0.6 * p.property(s, strength.Ftu) * 2 * p.thickness(s) * (p.edge(s) - p.hole(s)/2 + p.bearingDiameter(s)/2)
+			pin, end := p.bearingDiameter(s), p.edge(s)
+			if p.head.Shape == Tapered {
+				end = p.taperedEnd(s, pin/2)
+			}
+			return 0.6 * p.property(s, strength.Ftu) * 2 * p.thickness(s) * (end - p.hole(s)/2 + pin/2)
 		})
 		m.nominal(p, strength.Bearing, anyWay, &eqAISCBearing, 0.75, 2.00, func(s *sheet) float64 {
 			p.pinDiameter(s)

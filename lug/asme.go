@@ -48,7 +48,8 @@ var (
 	eqASMEFracture = Equation{Symbol: "P_b", Text: "C_r F_tu / (1.20 N_d) (1.13 (e - D/2) + 0.92 b_e / (1 + b_e / D)) t", Unit: strength.Force, Source: asmeSource + ", single-plane fracture", Mark: strength.FromMemory(95)}
 	eqPlaneAngle   = Equation{Symbol: "φ", Text: "55 Db / D", Unit: strength.Degrees, Source: asmeSource + ", double-plane shear", Mark: strength.FromMemory(95)}
 	eqCurvedLoss   = Equation{Symbol: "Z'", Text: "r - sqrt(r^2 - ((Db/2) sin(φ))^2)", Unit: strength.Length, Source: asmeSource + ", what a curved end takes from the shear plane", Mark: strength.FromMemory(85)}
-	eqShearArea    = Equation{Symbol: "A_v", Text: "2 (e - D/2 + (Db/2) (1 - cos(φ)) - Z') t", Unit: strength.Area, Source: asmeSource + ", double-plane shear, curved end", Mark: strength.FromMemory(85)}
+	eqTaperLoss    = Equation{Symbol: "Z'", Text: "max(0, e - (W/2 - |o| - (Db/2) sin(φ)) / tan(β))", Unit: strength.Length, Source: geometrySource + ": what a converging side takes from the shear plane", Mark: strength.Derived}
+	eqShearArea    = Equation{Symbol: "A_v", Text: "max(0, 2 (e - D/2 + (Db/2) (1 - cos(φ)) - Z') t)", Unit: strength.Area, Source: asmeSource + ", double-plane shear, curved or tapered end", Mark: strength.FromMemory(85)}
 	eqShearAreaF   = Equation{Symbol: "A_v", Text: "2 (e - D/2 + (Db/2) (1 - cos(φ))) t", Unit: strength.Area, Source: asmeSource + ", double-plane shear", Mark: strength.Seen}
 	eqASMEShear    = Equation{Symbol: "P_v", Text: "0.70 F_tu / (1.20 N_d) A_v", Unit: strength.Force, Source: asmeSource + ", double-plane shear", Mark: strength.Seen}
 	eqASMEBearing  = Equation{Symbol: "P_p", Text: "1.25 F_ty / N_d Db t_b", Unit: strength.Force, Source: "ASME BTH-1-2008 section 3-3.3.4, bearing", Mark: strength.FromMemory(92)}
@@ -58,7 +59,7 @@ var (
 
 var asmeEquations = gather(geometryEquations, []*Equation{
 	&eqActualWidth, &eqClearOne, &eqClearFormula, &eqEffective, &eqEffectiveS, &eqASMETension, &eqASMEFracture,
-	&eqPlaneAngle, &eqCurvedLoss, &eqShearArea, &eqShearAreaF, &eqASMEShear, &eqASMEBearing, &eqASMETurning, &eqASMEBody,
+	&eqPlaneAngle, &eqCurvedLoss, &eqTaperLoss, &eqShearArea, &eqShearAreaF, &eqASMEShear, &eqASMEBearing, &eqASMETurning, &eqASMEBody,
 }, bodyEquations)
 
 func prepareASME(b *builder) {
@@ -135,12 +136,17 @@ func (h *asmeHead) shear(s *sheet) float64 {
 	angle := s.apply(&eqPlaneAngle, 55*pin/hole) * math.Pi / 180
 	length := h.edge(s) - hole/2 + float64(pin/2*(1-math.Cos(angle)))
 	e := &eqShearAreaF
-	if h.head.Shape == Round {
-		r, y := h.endRadius(s), pin/2*math.Sin(angle)
+	y := pin / 2 * math.Sin(angle)
+	switch h.head.Shape {
+	case Round:
+		r := h.endRadius(s)
 		e = &eqShearArea
 		length -= s.apply(&eqCurvedLoss, r-math.Sqrt(float64(r*r)-float64(y*y)))
+	case Tapered:
+		e = &eqShearArea
+		length -= s.apply(&eqTaperLoss, h.edge(s)-h.taperedEnd(s, y))
 	}
-	area := s.apply(e, 2*length*t)
+	area := s.apply(e, max(0, 2*length*t))
 	return 0.70 * h.property(s, strength.Ftu) / (fractureExtra * h.factor(s)) * area
 }
 

@@ -122,6 +122,12 @@ func (h *Head) checkShape(at string, f *faults) {
 	case Tapered:
 		if h.TaperAngle <= 0 || h.TaperAngle > 45 {
 			f.add(at+"/taper_angle", "the taper is %v a side and must be above 0 and at most 45 degrees", degrees(h.TaperAngle))
+			break
+		}
+		side, slope := h.Width/2-math.Abs(h.Offset), math.Tan(h.TaperAngle*math.Pi/180)
+		if side > 0 && strength.More(h.EdgeDistance*slope, side) {
+			f.add(at+"/edge_distance", "the converging side reaches the axis %v from the hole centre, so that there is no end at %v",
+				mm(side/slope), mm(h.EdgeDistance))
 		}
 	}
 	if h.Shape != Round && h.EndRadius != 0 {

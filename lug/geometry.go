@@ -42,6 +42,8 @@ var (
 	eqPlaneRound    = Equation{Symbol: "L", Text: "min(e, sqrt(r^2 - y0^2)) - x0", Unit: strength.Length, Source: geometrySource + ": from the hole to the arc", Mark: strength.Derived}
 	eqPlaneSquare   = Equation{Symbol: "L", Text: "e - x0", Unit: strength.Length, Source: geometrySource + ": from the hole to the flat end", Mark: strength.Derived}
 	eqPlaneTapered  = Equation{Symbol: "L", Text: "min(e, (W/2 - |o| - y0)/tan(β)) - x0", Unit: strength.Length, Source: geometrySource + ": from the hole to the nearer converging side or the end", Mark: strength.Derived}
+	eqShearEdge     = Equation{Symbol: "e_s", Text: "min(e, sqrt((L + x0)^2 + y0^2))", Unit: strength.Length, Source: geometrySource + ": edge distance of the round end with shear-out planes as long as those of the tapered one, on which bearing factors along e/D are taken", Mark: strength.Derived}
+	eqShearRatio    = Equation{Symbol: "e/D", Text: "e_s / D", Unit: strength.None, Source: geometrySource, Mark: strength.Derived}
 	eqEdgeRatio     = Equation{Symbol: "e/D", Text: "e / D", Unit: strength.None, Source: geometrySource, Mark: strength.Derived}
 	eqBearingHole   = Equation{Symbol: "Db", Text: "D", Unit: strength.Length, Source: "bearing diameter: the bushing's outside, or the hole where there is no pin", Mark: strength.Derived}
 	eqBearingPin    = Equation{Symbol: "Db", Text: "Dp", Unit: strength.Length, Source: "bearing diameter: the pin's", Mark: strength.Derived}
@@ -52,7 +54,7 @@ var (
 
 var geometryEquations = []*Equation{
 	&eqSide, &eqSideTapered, &eqNetArea, &eqPlaneHeight, &eqPlaneStart, &eqPlaneRound, &eqPlaneSquare, &eqPlaneTapered,
-	&eqEdgeRatio, &eqBearingHole, &eqBearingPin, &eqBearingLength, &eqWholeBearing, &eqThinness,
+	&eqEdgeRatio, &eqShearEdge, &eqShearRatio, &eqBearingHole, &eqBearingPin, &eqBearingLength, &eqWholeBearing, &eqThinness,
 }
 
 func (p *part) width(s *sheet) float64 {
@@ -121,8 +123,7 @@ func (p *part) shearOutLength(s *sheet) float64 {
 	}
 	y0 := s.apply(&eqPlaneHeight, d/2*sin40)
 	if p.head.Shape == Tapered {
-		side := p.width(s)/2 - p.offset(s)
-		return s.apply(&eqPlaneTapered, min(e, (side-y0)/math.Tan(p.taper(s)*math.Pi/180))-x0)
+		return s.apply(&eqPlaneTapered, p.taperedEnd(s, y0)-x0)
 	}
 	r := p.endRadius(s)
 	return s.apply(&eqPlaneRound, min(e, math.Sqrt(float64(r*r)-float64(y0*y0)))-x0)
@@ -139,6 +140,34 @@ func (p *part) endRadius(s *sheet) float64 {
 func (p *part) edgeRatio(s *sheet) float64 {
 	e, d := p.edge(s), p.hole(s)
 	return s.apply(&eqEdgeRatio, e/d)
+}
+
+// shearEdge is the edge distance in mm at which factors along e/D are read that
+// stand for shear-out too. They were found on round and square ends; converging
+// sides cut the shear-out planes short, so a tapered end counts as the round one
+// with planes as long.
+func (p *part) shearEdge(s *sheet) float64 {
+	e := p.edge(s)
+	if p.head.Shape != Tapered {
+		return e
+	}
+	along, across := p.shearOutLength(s)+float64(p.hole(s)/2*cos40), p.hole(s)/2*sin40
+	return s.apply(&eqShearEdge, min(e, math.Hypot(along, across)))
+}
+
+// shearRatio is e/D of shearEdge.
+func (p *part) shearRatio(s *sheet) float64 {
+	if p.head.Shape != Tapered {
+		return p.edgeRatio(s)
+	}
+	return s.apply(&eqShearRatio, p.shearEdge(s)/p.hole(s))
+}
+
+// taperedEnd is where a line along the axis, y from it, leaves a tapered end:
+// at the nearer converging side or at the end, in mm from the hole centre.
+func (p *part) taperedEnd(s *sheet, y float64) float64 {
+	side := p.width(s)/2 - p.offset(s)
+	return min(p.edge(s), (side-y)/math.Tan(p.taper(s)*math.Pi/180))
 }
 
 // bearingDiameter is what bears on the head's hole, in mm.

@@ -230,7 +230,7 @@ func (h *melconHead) read(s *sheet, chart, symbol string, a spot) float64 {
 func (h *melconHead) edgeSpot(s *sheet) spot {
 	thickness := s.apply(&eqHoleRatio, h.hole(s)/h.thickness(s))
 	return spot{
-		x: h.edgeRatio(s), along: "e/D", belowFirst: true,
+		x: h.shearRatio(s), along: "e/D", belowFirst: true,
 		between: func(string) (float64, string) { return thickness, "D/t" },
 	}
 }

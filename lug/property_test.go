@@ -69,6 +69,9 @@ func drawHead(t *rapid.T, name string, hole float64) lug.Head {
 	if rapid.Bool().Draw(t, name+" offset?") {
 		h.Offset = (h.Width - hole) * between(t, name+" offset", -0.2, 0.2)
 	}
+	if h.Shape == lug.Tapered {
+		h.EdgeDistance = min(h.EdgeDistance, (h.Width/2-math.Abs(h.Offset))/math.Tan(h.TaperAngle*math.Pi/180))
+	}
 	if rapid.Bool().Draw(t, name+" supported?") {
 		h.BodyLength = h.Width * between(t, name+" body", 1, 3)
 	}
