@@ -266,17 +266,17 @@ func (a *aiscBearingCheck) caseSteps(c *caseState, i int) []strength.Working {
 	return append(steps, a.demandSteps(c, "P_b", share.Resultant*a.share, "R_a", a.margin(c))...)
 }
 
-// addAISCFastener adds the checks of fastener i by AISC 360 J3.
+// addAISCFastener adds the checks of fastener i by AISC 360 J3. The check of the
+// whole pattern at its instantaneous centre has no φ, so that the fastener's own
+// shear stands beside it.
 func (p *PreparedPattern) addAISCFastener(i int) {
 	f := &p.pattern.Fasteners[i]
 	o := p.pattern.AISC
 	shear := func() allowable { return p.aiscShear(f) }
 	tension := func() allowable { return p.aiscTension(f) }
 	check := strength.Check{Member: memberFastener, Level: o.level(), Unit: strength.Force, Method: methodAISC}
-	if p.pattern.InPlane != inPlaneCentre || o.asd() {
-		check.Mode, check.Source = strength.Shear, sourceAISCShear
-		p.addFixed(i, check, byShear, 0, o.safety(), shear)
-	}
+	check.Mode, check.Source = strength.Shear, sourceAISCShear
+	p.addFixed(i, check, byShear, 0, o.safety(), shear)
 	check.Mode, check.Source = strength.Tension, sourceAISCTension
 	p.addFixed(i, check, byTension, 0, o.safety(), tension)
 	p.addInteraction(i, aiscTogether, methodAISC, o.level(), o.safety(), func() (allowable, allowable) { return shear(), tension() })

@@ -189,11 +189,8 @@ func (p *PreparedPattern) enSpacings(i, k int) (along, across spacing) {
 // enResistance returns the bearing resistance in N for a load along a way with
 // spacing s1 along and s2 across it, into a; symbols end in suffix.
 func (a *allowable) enResistance(s1, s2 spacing, suffix string, d, d0, t, fu, fub, gamma float64) float64 {
-	alpha, k1 := 1.0, 2.5
-	alphaTerms, k1Terms := "1", "2.5"
-	if fub > 0 {
-		alpha, alphaTerms = min(alpha, fub/fu), "f_ub/f_u, 1"
-	}
+	alpha, k1 := min(1, fub/fu), 2.5
+	alphaTerms, k1Terms := "f_ub/f_u, 1", "2.5"
 	if !math.IsInf(s1.edge, 0) {
 		a.add("e_1"+suffix, s1.edge, strength.Length, "", "the least distance to the outline along the load's component", strength.Derived)
 		alpha, alphaTerms = min(alpha, s1.edge/(3*d0)), alphaTerms+", e_1"+suffix+"/(3 D_h)"
@@ -220,8 +217,8 @@ func (a *allowable) enResistance(s1, s2 spacing, suffix string, d, d0, t, fu, fu
 
 // enBearing returns the bearing resistances in N of plate k at fastener i along
 // and across the plate's axis. A countersunk plate bears on its thickness less
-// half the depth of the countersink; a single row in single lap is held to
-// 1.5 f_u d t / γ_M2.
+// half the depth of the countersink; a single row across the load in single lap
+// is held to 1.5 f_u d t / γ_M2.
 //
 // Range: the least spacings of table 3.3; outside them there is none.
 // Source: EN 1993-1-8 table 3.4 (seen).
@@ -237,10 +234,11 @@ func (p *PreparedPattern) enBearing(i, k int) (a allowable, along, across float6
 	}
 	gamma := p.pattern.EN.gammaM2()
 	d, d0, fu := f.Diameter, f.hole(), plate.Material.Ftu
-	fub := 0.0
-	if f.Type != nil {
-		fub = f.Type.Ftu
+	if f.Type == nil || f.Type.Ftu == 0 {
+		a.why = strength.Say("fastener %q has no type with ftu, which en-1993-1-8 needs as f_ub", f.ID)
+		return a, 0, 0
 	}
+	fub := f.Type.Ftu
 	s1, s2 := p.enSpacings(i, k)
 	for _, s := range []struct {
 		name         string
@@ -261,24 +259,51 @@ func (p *PreparedPattern) enBearing(i, k int) (a allowable, along, across float6
 	a.add("h_cs", plate.CountersinkDepth, strength.Length, "", "input: plates.countersink_depth", strength.Given)
 	a.add("t_b", t, strength.Length, "t - h_cs / 2", "EN 1993-1-8 table 3.4: less half the countersink", strength.Seen)
 	a.add("f_u", fu, strength.Stress, "", materialSource(plate.Material), plate.Material.MarkOf(strength.Ftu))
-	if fub > 0 {
-		a.add("f_ub", fub, strength.Stress, "", f.Type.source(), f.Type.Mark)
-	}
+	a.add("f_ub", fub, strength.Stress, "", f.Type.source(), f.Type.Mark)
 	a.add("γ_M2", gamma, strength.None, "", "method_options: gamma_m2", strength.Given)
 	cos, sin := plate.axis()
 	a.add("c", cos, strength.None, "", "cosine of plates.axis_angle, the plate's axis from x", strength.Given)
 	a.add("s", sin, strength.None, "", "sine of the same", strength.Given)
 	along = a.enResistance(s1, s2, "a", d, d0, t, fu, fub, gamma)
 	across = a.enResistance(s2, s1, "b", d, d0, t, fu, fub, gamma)
-	if len(p.pattern.Fasteners) == 1 && f.planes() == 1 {
+	single := p.enSingleRow(i, k)
+	if single != [2]bool{} {
 		most := 1.5 * fu * d * t / gamma
 		a.add("F_b1", most, strength.Force, "1.5 f_u D t_b / γ_M2", "EN 1993-1-8 section 3.6.1(10): one bolt row in single lap", strength.Seen)
-		along, across = min(along, most), min(across, most)
-		a.add("F_bα", along, strength.Force, "min(F_ba, F_b1)", "", strength.Seen)
-		a.add("F_bβ", across, strength.Force, "min(F_bb, F_b1)", "", strength.Seen)
-		a.steps[len(a.steps)-1].Source, a.steps[len(a.steps)-2].Source = sourceENBearing, sourceENBearing
+		if single[0] {
+			along = min(along, most)
+			a.add("F_bα", along, strength.Force, "min(F_ba, F_b1)", sourceENBearing, strength.Seen)
+		}
+		if single[1] {
+			across = min(across, most)
+			a.add("F_bβ", across, strength.Force, "min(F_bb, F_b1)", sourceENBearing, strength.Seen)
+		}
 	}
 	return a, along, across
+}
+
+// enSingleRow tells, for a load along the axis of plate k and for one across it,
+// whether fastener i stands in a single lap with all bolts in one row: none of
+// them a hole's diameter ahead of another.
+func (p *PreparedPattern) enSingleRow(i, k int) (single [2]bool) {
+	if p.pattern.Fasteners[i].planes() != 1 {
+		return single
+	}
+	cos, sin := p.pattern.Plates[k].axis()
+	origin := p.pattern.Fasteners[0]
+	var least, most [2]float64
+	widest := 0.0
+	for _, f := range p.pattern.Fasteners {
+		x, y := f.X-origin.X, f.Y-origin.Y
+		for way, d := range [2]float64{float64(x*cos) + float64(y*sin), float64(y*cos) - float64(x*sin)} {
+			least[way], most[way] = min(least[way], d), max(most[way], d)
+		}
+		widest = max(widest, f.hole())
+	}
+	for way := range single {
+		single[way] = strength.Less(most[way]-least[way], widest)
+	}
+	return single
 }
 
 // enBearingCheck is a plate in bearing whose load's components along and across
@@ -324,8 +349,12 @@ func (a *enBearingCheck) caseSteps(c *caseState, i int) []strength.Working {
 	}
 	var s allowable
 	one, two := "F_ba", "F_bb"
-	if len(a.p.pattern.Fasteners) == 1 && a.p.pattern.Fasteners[a.i].planes() == 1 {
-		one, two = "F_bα", "F_bβ"
+	single := a.p.enSingleRow(a.i, a.plate)
+	if single[0] {
+		one = "F_bα"
+	}
+	if single[1] {
+		two = "F_bβ"
 	}
 	cos, sin := a.p.pattern.Plates[a.plate].axis()
 	s.add("V_a", float64(cos*share.Shear[0])+float64(sin*share.Shear[1]), strength.Force, "c V_x + s V_y", "along the axis", strength.Derived)
@@ -350,16 +379,16 @@ func (p *Plate) axis() (cos, sin float64) {
 	return cos, sin
 }
 
-// addENFastener adds the checks of fastener i by EN 1993-1-8.
+// addENFastener adds the checks of fastener i by EN 1993-1-8. The check of the
+// whole pattern at its instantaneous centre has no γ_M2, so that the fastener's
+// own shear stands beside it.
 func (p *PreparedPattern) addENFastener(i int) {
 	f := &p.pattern.Fasteners[i]
 	shear := func() allowable { return p.enShear(f) }
 	tension := func() allowable { return p.enTension(f) }
 	check := strength.Check{Member: memberFastener, Level: strength.Ultimate, Unit: strength.Force, Method: methodEN}
-	if p.pattern.InPlane != inPlaneCentre {
-		check.Mode, check.Source = strength.Shear, sourceENShear
-		p.addFixed(i, check, byShear, 0, p.enSafety(), shear)
-	}
+	check.Mode, check.Source = strength.Shear, sourceENShear
+	p.addFixed(i, check, byShear, 0, p.enSafety(), shear)
 	check.Mode, check.Source = strength.Tension, sourceENTension
 	p.addFixed(i, check, byTension, 0, p.enSafety(), tension)
 	p.addInteraction(i, interactions["en-1993-1-8"], methodEN, strength.Ultimate, p.enSafety(),

@@ -179,3 +179,71 @@ func TestShearOutByHand(t *testing.T) {
 	assertCheck(t, prepared, "plate-shear-out@1", "attached", strength.ShearOut, 57.5e3, 2*250*10*(100-start))
 	assertCheck(t, prepared, "plate-shear-out@1", "support", strength.ShearOut, 57.5e3, 2*250*12*(60-start))
 }
+
+// Two bolts side by side across the load are one row in single lap, and along
+// their line they are two: EN 1993-1-8 section 3.6.1(10).
+//
+//	across: 1.5 x 430 x 20 x 10 / 1.25 = 103,200 N (2.5 x 60/66 would be 156,364)
+//	along:  α_b = 80/66 - 1/4 = 0.96212, k_1 = 2.5: 165,485 N
+func TestENOneRowAcrossTheLoad(t *testing.T) {
+	p := single()
+	p.Methods = []string{"en-1993-1-8"}
+	p.Plates = p.Plates[:1]
+	p.Plates[0].Outline = [][2]float64{{-60, -120}, {60, -120}, {60, 120}, {-60, 120}}
+	second := p.Fasteners[0]
+	p.Fasteners[0].Y, second.ID, second.Y = -40, "2", 40
+	p.Fasteners = append(p.Fasteners, second)
+	load := PatternCase{ID: "LC1", Level: strength.Ultimate, Force: [3]float64{50e3, 0, 0}}
+	assertCheck(t, prepare(t, p, load), "en-1993-1-8@1", "attached", strength.Bearing, 25e3, 1.5*430*20*10/1.25)
+	load.Force = [3]float64{0, 50e3, 0}
+	assertCheck(t, prepare(t, p, load), "en-1993-1-8@1", "attached", strength.Bearing, 25e3, 2.5*(80.0/66-0.25)*430*20*10/1.25)
+}
+
+// f_ub is part of the bearing: without it nothing says that f_ub/f_u is not less
+// than the rest of α_b.
+func TestENBearingNeedsTheBolt(t *testing.T) {
+	for name, bolt := range map[string]*Type{"none": nil, "rated": {Name: "rated", ShearStrength: 1e5, TensionStrength: 1e5}} {
+		p := single()
+		p.Methods, p.Fasteners[0].Type = []string{"en-1993-1-8"}, bolt
+		prepared := prepare(t, p, pulled(strength.Ultimate))
+		margins := make([]strength.Margin, len(prepared.Checks()))
+		prepared.Margins(0, margins)
+		for k, c := range prepared.Checks() {
+			if m := margins[k]; c.Mode == strength.Bearing && (m.Status != strength.Undetermined || !strings.Contains(m.Why.Render(write), "f_ub")) {
+				t.Errorf("%s: %+v", name, m)
+			}
+		}
+	}
+}
+
+// The instantaneous centre knows neither φ nor γ_M2: the shears of single bolts
+// by these methods stay beside it. Two bolts 80 apart, 50 kN at an arm of 100:
+// equilibrium asks 62.5 kN across of each and 25 kN along, 67.3 kN if shared
+// evenly.
+func TestOwnFactorsStandBesideTheInstantaneousCentre(t *testing.T) {
+	for _, method := range []string{"aisc-360-j3", "en-1993-1-8"} {
+		p := single()
+		p.Methods, p.InPlane = []string{method}, inPlaneCentre
+		p.Fasteners[0].Type.Fsu = 480
+		second := p.Fasteners[0]
+		p.Fasteners[0].Y, second.ID, second.Y = -40, "2", 40
+		p.Fasteners = append(p.Fasteners, second)
+		p.Plates = nil
+		load := PatternCase{ID: "LC1", Level: strength.Ultimate, Point: [3]float64{100, 0, 0}, Force: [3]float64{0, 50e3, 0}}
+		prepared := prepare(t, p, load)
+		margins := make([]strength.Margin, len(prepared.Checks()))
+		prepared.Margins(0, margins)
+		found := 0
+		for k, c := range prepared.Checks() {
+			if c.Method == method+"@1" && c.Mode == strength.Shear {
+				found++
+				if m := margins[k]; m.Demand < 62.5e3 || m.Demand > 75e3 {
+					t.Errorf("%s: %+v", method, m)
+				}
+			}
+		}
+		if found != 2 {
+			t.Errorf("%s: %d shears of single bolts", method, found)
+		}
+	}
+}
