@@ -41,6 +41,16 @@ type load struct {
 // axial reports whether the load acts along the axis alone.
 func (l *load) axial() bool { return l.sides&transverse == 0 }
 
+// newLoads works out load cases, and finds what is wrong with them.
+func newLoads(cases []LoadCase) (loads []load, wrong faults) {
+	checkCases(cases, &wrong)
+	loads = make([]load, len(cases))
+	for i := range cases {
+		loads[i] = newLoad(&cases[i])
+	}
+	return loads, wrong
+}
+
 func newLoad(c *LoadCase) load {
 	l := load{LoadCase: c, level: levelIndex(c.Level)}
 	l.angle = math.Mod(c.Angle, 360)

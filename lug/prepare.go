@@ -18,7 +18,7 @@ type Prepared struct {
 	factors  strength.Factors
 	loads    []load
 	checks   []strength.Check
-	laws     []prepared
+	laws     []settled
 	findings []strength.Finding
 	cautions []string
 	several  bool // more than one method
@@ -26,8 +26,8 @@ type Prepared struct {
 
 var _ strength.Calculation = (*Prepared)(nil)
 
-// prepared is a check's law with what was settled about it.
-type prepared struct {
+// settled is a check's law with what was settled about it.
+type settled struct {
 	law
 	why     *strength.Message // without which there is no margin
 	factor  [2]float64        // between the load and the demand, by the level of the load
@@ -56,9 +56,15 @@ type builder struct {
 // The faults are all there are, with pointers into a lug request; with any
 // there is no calculation.
 func Prepare(j Joint, choices []Choice, f strength.Factors, cases []LoadCase) (*Prepared, []strength.Fault) {
-	var wrong faults
+	loads, wrong := newLoads(cases)
+	return prepare(j, choices, f, loads, wrong)
+}
+
+// prepare settles a joint for load cases that are worked out, so that variants
+// of a joint share them. wrong is what was found of the load cases.
+func prepare(j Joint, choices []Choice, f strength.Factors, loads []load, wrong faults) (*Prepared, []strength.Fault) {
+	wrong = slices.Clone(wrong)
 	j.check(&wrong)
-	checkCases(cases, &wrong)
 	methods := make([]Method, len(choices))
 	asked, compared := 0, 0
 	for i, c := range choices {
@@ -84,13 +90,10 @@ func Prepare(j Joint, choices []Choice, f strength.Factors, cases []LoadCase) (*
 		return nil, wrong
 	}
 
-	p := &Prepared{joint: j, factors: f, loads: make([]load, len(cases)), several: len(choices) > 1}
-	for i := range cases {
-		p.loads[i] = newLoad(&cases[i])
-	}
+	p := &Prepared{joint: j, factors: f, loads: loads, several: len(choices) > 1}
 	p.place()
 	p.checks = make([]strength.Check, 0, 12*len(p.heads())*len(choices))
-	p.laws = make([]prepared, 0, cap(p.checks))
+	p.laws = make([]settled, 0, cap(p.checks))
 	found := &findings{}
 	var read fieldSet
 	for i := range choices {
@@ -144,7 +147,7 @@ func (b *builder) check(member string, mode strength.Mode, level strength.Level,
 	}
 	s := b.sheet()
 	s.mark = source.Mark
-	k := prepared{write: write, place: b.place, safety: safety, special: b.special}
+	k := settled{write: write, place: b.place, safety: safety, special: b.special}
 	k.law = write(s)
 	k.why = s.why
 	c.Mark = s.mark

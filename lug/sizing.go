@@ -36,6 +36,9 @@ type Sizing struct {
 	Ratio     float64
 	Increment float64 // mm, to whose next multiple the value is rounded up; 0: not
 	Target    float64 // least margin of every check
+	// Tolerances of the joint's lengths. They stay as they are about a length
+	// that changes, and the worst corner has to hold.
+	Tolerances []Tolerance
 }
 
 // Sized is what was found.
@@ -47,9 +50,10 @@ type Sized struct {
 	// narrower than it can have been missed.
 	Resolution float64
 	// Joint is the joint at Rounded, Result its calculation. Where nothing was
-	// found they are those at the upper bound, Result nil if it has faults.
+	// found they are those at the upper bound, Result nil if it has faults: a
+	// *Prepared, or with tolerances a *Toleranced.
 	Joint  Joint
-	Result *Prepared
+	Result strength.Calculation
 	// Case and Check are what governs there: the least margin, or what is
 	// undetermined. Check is -1 where no check is exercised.
 	Case, Check int
@@ -85,7 +89,11 @@ func Size(j Joint, choices []Choice, f strength.Factors, cases []LoadCase, want 
 	if len(wrong) > 0 {
 		return Sized{}, wrong
 	}
-	z := &sizer{joint: j, choices: choices, factors: f, cases: cases, want: want}
+	loads, wrong := newLoads(cases)
+	if len(wrong) > 0 {
+		return Sized{}, wrong
+	}
+	z := &sizer{joint: j, choices: choices, factors: f, loads: loads, want: want}
 	step := (want.Most - want.Least) / scanSteps
 	found := Sized{Resolution: step, Value: want.Least}
 	k := 0
@@ -123,7 +131,7 @@ type sizer struct {
 	joint   Joint
 	choices []Choice
 	factors strength.Factors
-	cases   []LoadCase
+	loads   []load
 	want    Sizing
 	last    int // the load case that failed last, tried first
 	out     []strength.Margin
@@ -170,12 +178,29 @@ func (j *Joint) sound() bool {
 	return (j.Pin == nil || j.Pin.Diameter > 0) && (j.Clevis == nil || j.Clevis.HoleDiameter > 0)
 }
 
-func (z *sizer) prepare(x float64) (*Prepared, []strength.Fault) {
+// variant is the joint at one value of the dimension.
+type variant interface {
+	strength.Calculation
+	Governing() (loadCase, check int)
+}
+
+func (z *sizer) prepare(x float64) (variant, []strength.Fault) {
 	j := z.with(x)
 	if !j.sound() {
 		return nil, []strength.Fault{{Pointer: "/pin/diameter", Message: strength.Say("a hole of %v leaves no pin", mm(x))}}
 	}
-	return Prepare(j, z.choices, z.factors, z.cases)
+	if len(z.want.Tolerances) > 0 {
+		t, wrong := prepareToleranced(j, z.want.Tolerances, z.choices, z.factors, z.loads, nil)
+		if t == nil { // which must not become a variant
+			return nil, wrong
+		}
+		return t, nil
+	}
+	p, wrong := prepare(j, z.choices, z.factors, z.loads, nil)
+	if p == nil {
+		return nil, wrong
+	}
+	return p, nil
 }
 
 // holds reports whether every check holds in every load case.
@@ -185,7 +210,7 @@ func (z *sizer) holds(x float64) bool {
 		return false
 	}
 	if z.holdsIn(p, z.last) {
-		for i := range z.cases {
+		for i := range z.loads {
 			if !z.holdsIn(p, i) {
 				z.last = i
 				return false
@@ -196,14 +221,15 @@ func (z *sizer) holds(x float64) bool {
 	return false
 }
 
-func (z *sizer) holdsIn(p *Prepared, i int) bool {
-	if len(z.out) < len(p.checks) {
-		z.out = make([]strength.Margin, len(p.checks))
+func (z *sizer) holdsIn(p variant, i int) bool {
+	checks := p.Checks()
+	if len(z.out) < len(checks) {
+		z.out = make([]strength.Margin, len(checks))
 	}
-	out := z.out[:len(p.checks)]
+	out := z.out[:len(checks)]
 	p.Margins(i, out)
 	for c, m := range out {
-		if p.checks[c].Compared || m.Status == strength.NotExercised {
+		if checks[c].Compared || m.Status == strength.NotExercised {
 			continue
 		}
 		if m.Status == strength.Undetermined || m.Margin < z.want.Target {
@@ -233,11 +259,10 @@ func (z *sizer) round(found *Sized) bool {
 // show prepares the joint at x and finds what governs there.
 func (z *sizer) show(found Sized, x float64) Sized {
 	found.Joint, found.Check = z.with(x), -1
-	found.Result, _ = z.prepare(x)
-	if found.Result == nil {
-		return found
+	if p, _ := z.prepare(x); p != nil {
+		found.Result = p
+		found.Case, found.Check = p.Governing()
 	}
-	found.Case, found.Check = found.Result.Governing()
 	return found
 }
 
@@ -260,13 +285,15 @@ func (z *sizer) none(found Sized) (Sized, []strength.Fault) {
 	case c < 0:
 		found.Reason = strength.Say("no check is exercised")
 	default:
-		m := p.margin(found.Case, c)
+		check, margins := p.Checks()[c], make([]strength.Margin, len(p.Checks()))
+		p.Margins(found.Case, margins)
+		m := margins[c]
 		how := strength.Say("has a margin of %.4g", m.Margin)
 		if m.Status == strength.Undetermined {
 			how = strength.Say("is undetermined: %v", *m.Why)
 		}
 		found.Reason = strength.Say("no value from %v to %v holds, tried every %v; at the upper bound %s %s (%s) in load case %s %v",
-			mm(z.want.Least), mm(z.want.Most), mm(found.Resolution), p.checks[c].Member, p.checks[c].Mode, p.checks[c].Level, z.cases[found.Case].ID, how)
+			mm(z.want.Least), mm(z.want.Most), mm(found.Resolution), check.Member, check.Mode, check.Level, z.loads[found.Case].ID, how)
 	}
 	return found, nil
 }
@@ -288,14 +315,17 @@ func common(low, high []strength.Fault) []strength.Fault {
 // Governing returns the load case and the check, of those not compared, with
 // the worst status and among them the least margin; check -1 where none is
 // exercised. The first among equals governs.
-func (p *Prepared) Governing() (loadCase, check int) {
+func (p *Prepared) Governing() (loadCase, check int) { return governing(p, len(p.loads)) }
+
+func governing(p strength.Calculation, cases int) (loadCase, check int) {
 	check = -1
-	out := make([]strength.Margin, len(p.checks))
+	checks := p.Checks()
+	out := make([]strength.Margin, len(checks))
 	var worst strength.Margin
-	for i := range p.loads {
+	for i := range cases {
 		p.Margins(i, out)
 		for c, m := range out {
-			if !p.checks[c].Compared && worse(m, worst) {
+			if !checks[c].Compared && worse(m, worst) {
 				worst, loadCase, check = m, i, c
 			}
 		}

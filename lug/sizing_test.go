@@ -44,6 +44,23 @@ func TestSizeHole(t *testing.T) {
 	}
 }
 
+// With ± 0.2 mm on the thickness the thinnest lug of TestSizeThickness is
+// 0.2 mm thicker, 5.39435 + 0.2: it is its lower limit that has to hold.
+func TestSizeHoldsAtTheWorstCorner(t *testing.T) {
+	want := lug.Sizing{
+		Free: lug.FreeThickness, Least: 1, Most: 30,
+		Tolerances: []lug.Tolerance{{Pointer: "/lug/thickness", Minus: 0.2, Plus: 0.2}},
+	}
+	got, wrong := lug.Size(bare(), methods("elementary"), usual(), at(50000, 0), want)
+	if wrong != nil || !got.Found {
+		t.Fatalf("%v %s", wrong, render(got.Reason))
+	}
+	length := math.Sqrt(1600-math.Pow(12.5*math.Sin(40*math.Pi/180), 2)) - 12.5*math.Cos(40*math.Pi/180)
+	if least := 86250/(2*length*270) + 0.2; math.Abs(got.Value-least) > 1e-9 {
+		t.Errorf("%.9f, by hand %.9f", got.Value, least)
+	}
+}
+
 // The pin and the clevis' hole go with the hole, the edge distance with the
 // width.
 func TestSizeTakesAlong(t *testing.T) {

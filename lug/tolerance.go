@@ -1,7 +1,7 @@
 package lug
 
 import (
-	"strconv"
+	"slices"
 	"strings"
 
 	"jointledger/strength"
@@ -10,25 +10,27 @@ import (
 // MostTolerances is how many lengths of a joint may have tolerances at once.
 const MostTolerances = 6
 
-// Tolerance is a length of a joint with its limits.
+// Tolerance is how far a length of a joint may lie from what the joint says.
 type Tolerance struct {
-	Pointer     string // of the length in a lug request, which LengthAt knows
-	Nominal     float64
+	Pointer     string  // of the length in a lug request, such as /lug/width
 	Minus, Plus float64 // mm, not negative
-	// Set puts a value into a joint.
-	Set func(*Joint, float64)
 }
 
 // Toleranced is a joint whose lengths have tolerances. It implements
 // strength.Calculation: each margin is that of the corner of limits that is
 // worst for its check and load case, the nominal lengths among them.
 type Toleranced struct {
-	nominal    *Prepared
-	corners    []corner
-	tolerances []Tolerance
-	checks     []strength.Check
-	out        []strength.Margin
-	cases      []LoadCase
+	nominal *Prepared
+	corners []corner
+	lengths []limited
+	checks  []strength.Check
+	out     []strength.Margin
+	loads   []load
+	// at is, for each check, the corner that is worst in the load case met, -1
+	// where none exercises it; met is -1 while there is none.
+	at   []int
+	met  int
+	kept []strength.Margin // of the load case met
 }
 
 // corner is the joint with every length at one of its limits.
@@ -42,47 +44,40 @@ type corner struct {
 
 var _ strength.Calculation = (*Toleranced)(nil)
 
-// PrepareToleranced settles a joint at its nominal lengths and at every corner
-// of their limits, at most 2^MostTolerances. Faults of a corner say which one.
-func PrepareToleranced(j Joint, lengths []Tolerance, choices []Choice, f strength.Factors, cases []LoadCase) (*Toleranced, []strength.Fault) {
-	var wrong faults
-	if len(lengths) > MostTolerances {
-		wrong.add("", "%d lengths have tolerances and at most %d may", len(lengths), MostTolerances)
+// PrepareToleranced settles a joint at its nominal lengths, those of j, and at
+// every corner of their limits, at most 2^MostTolerances. Faults of a corner
+// say which one.
+func PrepareToleranced(j Joint, tolerances []Tolerance, choices []Choice, f strength.Factors, cases []LoadCase) (*Toleranced, []strength.Fault) {
+	loads, wrong := newLoads(cases)
+	return prepareToleranced(j, tolerances, choices, f, loads, wrong)
+}
+
+func prepareToleranced(j Joint, tolerances []Tolerance, choices []Choice, f strength.Factors, loads []load, wrong faults) (*Toleranced, []strength.Fault) {
+	wrong = slices.Clone(wrong)
+	if len(tolerances) > MostTolerances {
+		wrong.add("", "%d lengths have tolerances and at most %d may", len(tolerances), MostTolerances)
 		return nil, wrong
 	}
-	for _, l := range lengths {
-		if l.Minus < 0 {
-			wrong.add(l.Pointer+"/minus", "the tolerance is %v and must not be below zero", mm(l.Minus))
+	t := &Toleranced{loads: loads, met: -1}
+	for _, l := range tolerances {
+		at := lengths[l.Pointer]
+		if at == nil || at(&j) == nil {
+			wrong.add(l.Pointer, "there is no length here that can have a tolerance")
+			continue
 		}
-		if l.Nominal > 0 && l.Minus >= l.Nominal && !strings.HasSuffix(l.Pointer, "/offset") {
-			wrong.add(l.Pointer+"/minus", "the tolerance %v leaves nothing of the length, %v", mm(l.Minus), mm(l.Nominal))
-		}
-		if l.Plus < 0 {
-			wrong.add(l.Pointer+"/plus", "the tolerance is %v and must not be below zero", mm(l.Plus))
-		}
+		limited := limited{l, *at(&j)}
+		limited.check(&wrong)
+		j.varies |= fieldAt(l.Pointer)
+		t.lengths = append(t.lengths, limited)
 	}
-	t := &Toleranced{tolerances: lengths, cases: cases}
-	var varies fieldSet
-	for _, l := range lengths {
-		varies |= fieldAt(l.Pointer)
-	}
-	at := func(upper uint) (*Prepared, []strength.Fault) {
-		own := j.Clone()
-		own.varies = varies
-		for k, l := range lengths {
-			l.Set(&own, l.at(upper, k))
-		}
-		return Prepare(own, choices, f, cases)
-	}
-	p, found := at(nominalCorner)
-	wrong = append(wrong, found...)
-	if len(wrong) > 0 {
-		return nil, wrong
+	p, found := t.prepare(j, nominalCorner, choices, f, wrong)
+	if len(found) > 0 {
+		return nil, found
 	}
 	t.nominal = p
 	t.checks = append(t.checks, p.checks...)
-	for upper := range uint(1) << len(lengths) {
-		p, found := at(upper)
+	for upper := range uint(1) << len(t.lengths) {
+		p, found := t.prepare(j, upper, choices, f, nil)
 		for _, f := range found {
 			wrong.add(f.Pointer, "%v (%v)", f.Message, t.describe(upper))
 		}
@@ -92,7 +87,43 @@ func PrepareToleranced(j Joint, lengths []Tolerance, choices []Choice, f strengt
 		t.add(corner{Prepared: p, upper: upper})
 	}
 	t.add(corner{Prepared: t.nominal, upper: nominalCorner})
+	t.at, t.kept = make([]int, len(t.checks)), make([]strength.Margin, len(t.checks))
 	return t, nil
+}
+
+// prepare settles the joint at one corner.
+func (t *Toleranced) prepare(j Joint, upper uint, choices []Choice, f strength.Factors, wrong faults) (*Prepared, []strength.Fault) {
+	j = j.Clone()
+	for k := range t.lengths {
+		*lengths[t.lengths[k].Pointer](&j) = t.lengths[k].at(upper, k)
+	}
+	return prepare(j, choices, f, t.loads, wrong)
+}
+
+// limited is a length with its limits.
+type limited struct {
+	Tolerance
+	nominal float64
+}
+
+// check finds limits that are none. An offset may have either sign, and what
+// may be left out may be nothing.
+func (l *limited) check(wrong *faults) {
+	if l.Minus < 0 {
+		wrong.add(l.Pointer+"/minus", "the tolerance is %v and must not be below zero", mm(l.Minus))
+	}
+	if l.Plus < 0 {
+		wrong.add(l.Pointer+"/plus", "the tolerance is %v and must not be below zero", mm(l.Plus))
+	}
+	switch name := l.Pointer[strings.LastIndexByte(l.Pointer, '/')+1:]; {
+	case name == "offset":
+	case name == "gap" || name == "inner_diameter" || name == "interference":
+		if l.nominal >= 0 && l.Minus > l.nominal {
+			wrong.add(l.Pointer+"/minus", "the tolerance %v is more than the length, %v", mm(l.Minus), mm(l.nominal))
+		}
+	case l.nominal > 0 && l.Minus >= l.nominal:
+		wrong.add(l.Pointer+"/minus", "the tolerance %v leaves nothing of the length, %v", mm(l.Minus), mm(l.nominal))
+	}
 }
 
 // nominalCorner stands for all lengths at their nominal values, which is tried
@@ -100,14 +131,14 @@ func PrepareToleranced(j Joint, lengths []Tolerance, choices []Choice, f strengt
 const nominalCorner = ^uint(0)
 
 // at is the length's value at a corner, as the k-th of the lengths.
-func (l *Tolerance) at(upper uint, k int) float64 {
+func (l *limited) at(upper uint, k int) float64 {
 	switch {
 	case upper == nominalCorner:
-		return l.Nominal
+		return l.nominal
 	case upper&(1<<k) != 0:
-		return l.Nominal + l.Plus
+		return l.nominal + l.Plus
 	}
-	return l.Nominal - l.Minus
+	return l.nominal - l.Minus
 }
 
 // add lines the checks of a corner up with those of the nominal joint.
@@ -139,41 +170,44 @@ func (t *Toleranced) Checks() []strength.Check { return t.checks }
 
 // Margins fills out with the worst corner of each check for load case i.
 func (t *Toleranced) Margins(i int, out []strength.Margin) {
+	t.meet(i)
+	copy(out, t.kept)
+}
+
+// meet finds the worst corners for load case i.
+func (t *Toleranced) meet(i int) {
+	if t.met == i {
+		return
+	}
+	t.met = i
 	for k := range t.checks {
-		out[k] = strength.Margin{}
+		t.at[k], t.kept[k] = -1, strength.Margin{}
 	}
 	for c := range t.corners {
 		corner := &t.corners[c]
 		own := t.out[:len(corner.checks)]
 		corner.Margins(i, own)
 		for k, at := range corner.index {
-			if at >= 0 && worse(own[at], out[k]) {
-				out[k] = own[at]
+			if at >= 0 && worse(own[at], t.kept[k]) {
+				t.at[k], t.kept[k] = c, own[at]
 			}
 		}
 	}
 }
 
-// NominalMargins fills out with the margins of the nominal joint.
-func (t *Toleranced) NominalMargins(i int, out []strength.Margin) { t.nominal.Margins(i, out) }
+// NominalMargin is what load case i makes of check k of the nominal joint.
+func (t *Toleranced) NominalMargin(i, k int) strength.Margin { return t.nominal.margin(i, k) }
+
+// Governing returns what governs, as Prepared does.
+func (t *Toleranced) Governing() (loadCase, check int) { return governing(t, len(t.loads)) }
 
 // Nominal is the calculation of the nominal joint.
 func (t *Toleranced) Nominal() *Prepared { return t.nominal }
 
 // worst is the corner whose margin check k takes in load case i; -1: none.
 func (t *Toleranced) worst(i, k int) int {
-	var worst strength.Margin
-	at := -1
-	for c := range t.corners {
-		corner := &t.corners[c]
-		if corner.index[k] < 0 {
-			continue
-		}
-		if m := corner.margin(i, corner.index[k]); worse(m, worst) {
-			worst, at = m, c
-		}
-	}
-	return at
+	t.meet(i)
+	return t.at[k]
 }
 
 // Corner says at which limits of the lengths check k has its margin in load
@@ -190,7 +224,8 @@ func (t *Toleranced) Corner(i, k int) strength.Message {
 func (t *Toleranced) describe(upper uint) strength.Message {
 	format := "at"
 	var args []any
-	for k, l := range t.tolerances {
+	for k := range t.lengths {
+		l := &t.lengths[k]
 		if k > 0 {
 			format += ","
 		}
@@ -214,7 +249,7 @@ func (t *Toleranced) CaseWorkings(i, k int) []strength.Working {
 	at := corner.index[k]
 	steps := append(corner.Workings(at), corner.CaseWorkings(i, at)...)
 	for s := range steps {
-		steps[s].LoadCase = t.cases[i].ID
+		steps[s].LoadCase = t.loads[i].ID
 	}
 	return steps
 }
@@ -234,69 +269,53 @@ func (t *Toleranced) Findings() []strength.Finding {
 // Cautions returns what the calculation leaves to the user.
 func (t *Toleranced) Cautions() []string { return t.nominal.Cautions() }
 
-// LengthAt returns what puts a length into a joint, by its pointer in a lug
-// request; false where no length stands there that can have a tolerance. A
-// length of a member that the joint does not have is left alone.
-func LengthAt(pointer string) (set func(*Joint, float64), ok bool) {
-	set, ok = lengths[pointer]
-	return set, ok
-}
-
+// lengths finds the lengths that can have a tolerance, by their pointers in a
+// lug request; nil where the joint does not have that member.
 var lengths = lengthTable()
 
-func lengthTable() map[string]func(*Joint, float64) {
-	all := map[string]func(*Joint, float64){
-		"/pin/diameter":       func(j *Joint, x float64) { with(j.Pin, func(p *Pin) { p.Diameter = x }) },
-		"/pin/inner_diameter": func(j *Joint, x float64) { with(j.Pin, func(p *Pin) { p.InnerDiameter = x }) },
-		"/clevis/gap":         func(j *Joint, x float64) { with(j.Clevis, func(c *Clevis) { c.Gap = x }) },
+func lengthTable() map[string]func(*Joint) *float64 {
+	all := map[string]func(*Joint) *float64{
+		"/pin/diameter":       within(pinOf, func(p *Pin) *float64 { return &p.Diameter }),
+		"/pin/inner_diameter": within(pinOf, func(p *Pin) *float64 { return &p.InnerDiameter }),
+		"/clevis/gap":         within(clevisOf, func(c *Clevis) *float64 { return &c.Gap }),
 	}
-	heads := map[string]func(*Joint) *Head{
-		"/lug": func(j *Joint) *Head { return &j.Lug },
-		"/clevis": func(j *Joint) *Head {
-			if j.Clevis == nil {
-				return nil
-			}
-			return &j.Clevis.Head
-		},
-	}
-	for at, head := range heads {
-		for name, set := range map[string]func(*Head, float64){
-			"/width":         func(h *Head, x float64) { h.Width = x },
-			"/thickness":     func(h *Head, x float64) { h.Thickness = x },
-			"/hole_diameter": func(h *Head, x float64) { h.HoleDiameter = x },
-			"/edge_distance": func(h *Head, x float64) { h.EdgeDistance = x },
-			"/end_radius":    func(h *Head, x float64) { h.EndRadius = x },
-			"/offset":        func(h *Head, x float64) { h.Offset = x },
-			"/body_width":    func(h *Head, x float64) { h.BodyWidth = x },
-			"/body_length":   func(h *Head, x float64) { h.BodyLength = x },
+	for at, head := range map[string]func(*Joint) *Head{
+		"/lug":    func(j *Joint) *Head { return &j.Lug },
+		"/clevis": within(clevisOf, func(c *Clevis) *Head { return &c.Head }),
+	} {
+		for name, length := range map[string]func(*Head) *float64{
+			"/width":         func(h *Head) *float64 { return &h.Width },
+			"/thickness":     func(h *Head) *float64 { return &h.Thickness },
+			"/hole_diameter": func(h *Head) *float64 { return &h.HoleDiameter },
+			"/edge_distance": func(h *Head) *float64 { return &h.EdgeDistance },
+			"/end_radius":    func(h *Head) *float64 { return &h.EndRadius },
+			"/offset":        func(h *Head) *float64 { return &h.Offset },
+			"/body_width":    func(h *Head) *float64 { return &h.BodyWidth },
+			"/body_length":   func(h *Head) *float64 { return &h.BodyLength },
 		} {
-			all[at+name] = func(j *Joint, x float64) { with(head(j), func(h *Head) { set(h, x) }) }
-		}
-		for k := range 4 {
-			all[at+"/section_depths/"+strconv.Itoa(k)] = func(j *Joint, x float64) {
-				with(head(j), func(h *Head) { with(h.SectionDepths, func(d *[4]float64) { d[k] = x }) })
-			}
+			all[at+name] = within(head, length)
 		}
 	}
-	bushings := map[string]func(*Joint) *Bushing{
-		"/bushing": func(j *Joint) *Bushing { return j.Bushing },
-		"/clevis/bushing": func(j *Joint) *Bushing {
-			if j.Clevis == nil {
-				return nil
-			}
-			return j.Clevis.Bushing
-		},
-	}
-	for at, bushing := range bushings {
-		all[at+"/interference"] = func(j *Joint, x float64) { with(bushing(j), func(b *Bushing) { b.Interference = x }) }
-		all[at+"/length"] = func(j *Joint, x float64) { with(bushing(j), func(b *Bushing) { b.Length = x }) }
+	for at, bushing := range map[string]func(*Joint) *Bushing{
+		"/bushing":        func(j *Joint) *Bushing { return j.Bushing },
+		"/clevis/bushing": within(clevisOf, func(c *Clevis) *Bushing { return c.Bushing }),
+	} {
+		all[at+"/interference"] = within(bushing, func(b *Bushing) *float64 { return &b.Interference })
+		all[at+"/length"] = within(bushing, func(b *Bushing) *float64 { return &b.Length })
 	}
 	return all
 }
 
-// with changes what p points to, if anything.
-func with[T any](p *T, change func(*T)) {
-	if p != nil {
-		change(p)
+func pinOf(j *Joint) *Pin { return j.Pin }
+
+func clevisOf(j *Joint) *Clevis { return j.Clevis }
+
+// within finds a part of a member of a joint, nil without the member.
+func within[M, P any](member func(*Joint) *M, part func(*M) *P) func(*Joint) *P {
+	return func(j *Joint) *P {
+		if m := member(j); m != nil {
+			return part(m)
+		}
+		return nil
 	}
 }

@@ -10,29 +10,19 @@ import (
 	"pgregory.net/rapid"
 )
 
-func tolerance(t testing.TB, pointer string, nominal, minus, plus float64) lug.Tolerance {
-	t.Helper()
-	set, ok := lug.LengthAt(pointer)
-	if !ok {
-		t.Fatalf("no length at %s", pointer)
-	}
-	return lug.Tolerance{Pointer: pointer, Nominal: nominal, Minus: minus, Plus: plus, Set: set}
-}
-
 // Each mode takes its own worst corner. Thickness 12 ± 0.1, hole 25 +0.2 -0:
 // net section at 11.9 and 25.2: 450 (80 - 25.2) 11.9 = 293,454 N; bearing at
 // 11.9 and 25: 720 x 25 x 11.9 = 214,200 N (at 25.2 it is 714.92 x 25.2 x 11.9).
 func TestWorstCorners(t *testing.T) {
 	lengths := []lug.Tolerance{
-		tolerance(t, "/lug/thickness", 12, 0.1, 0.1), tolerance(t, "/lug/hole_diameter", 25, 0, 0.2),
+		{Pointer: "/lug/thickness", Minus: 0.1, Plus: 0.1}, {Pointer: "/lug/hole_diameter", Minus: 0, Plus: 0.2},
 	}
 	p, wrong := lug.PrepareToleranced(bare(), lengths, methods("elementary"), usual(), at(50000, 0))
 	if wrong != nil {
 		t.Fatal(wrong)
 	}
-	out, nominal := make([]strength.Margin, len(p.Checks())), make([]strength.Margin, len(p.Checks()))
+	out := make([]strength.Margin, len(p.Checks()))
 	p.Margins(0, out)
-	p.NominalMargins(0, nominal)
 	for k, c := range p.Checks() {
 		var want, usual float64
 		var corner string
@@ -46,8 +36,9 @@ func TestWorstCorners(t *testing.T) {
 		default:
 			continue
 		}
-		if math.Abs(out[k].Allowable-want) > 1e-6 || math.Abs(nominal[k].Allowable-usual) > 1e-6 || render(p.Corner(0, k)) != corner {
-			t.Errorf("%s: %g (%s), nominal %g", c.Mode, out[k].Allowable, render(p.Corner(0, k)), nominal[k].Allowable)
+		nominal := p.NominalMargin(0, k).Allowable
+		if math.Abs(out[k].Allowable-want) > 1e-6 || math.Abs(nominal-usual) > 1e-6 || render(p.Corner(0, k)) != corner {
+			t.Errorf("%s: %g (%s), nominal %g", c.Mode, out[k].Allowable, render(p.Corner(0, k)), nominal)
 		}
 		if w, ok := working(p.CaseWorkings(0, k), "allowable"); !ok || w.Value != out[k].Allowable {
 			t.Errorf("%s: the workings are of another corner: %v", c.Mode, w.Value)
@@ -62,10 +53,11 @@ func TestToleranceFaults(t *testing.T) {
 		pointer string
 		words   string
 	}{
-		{"negative", []lug.Tolerance{tolerance(t, "/lug/width", 80, -1, 1)}, "/lug/width/minus", "below zero"},
-		{"all of it", []lug.Tolerance{tolerance(t, "/lug/thickness", 12, 12, 1)}, "/lug/thickness/minus", "leaves nothing"},
+		{"negative", []lug.Tolerance{{Pointer: "/lug/width", Minus: -1, Plus: 1}}, "/lug/width/minus", "below zero"},
+		{"all of it", []lug.Tolerance{{Pointer: "/lug/thickness", Minus: 12, Plus: 1}}, "/lug/thickness/minus", "leaves nothing"},
+		{"below nothing", []lug.Tolerance{{Pointer: "/pin/inner_diameter", Minus: 0.1}}, "/pin/inner_diameter/minus", "more than the length"},
 		{"a pin that does not fit at a corner", []lug.Tolerance{
-			tolerance(t, "/pin/diameter", 24.9, 0.1, 0.1), tolerance(t, "/lug/hole_diameter", 25, 0.1, 0.1),
+			{Pointer: "/pin/diameter", Minus: 0.1, Plus: 0.1}, {Pointer: "/lug/hole_diameter", Minus: 0.1, Plus: 0.1},
 		}, "/pin/diameter", "/lug/hole_diameter 24.9"},
 	} {
 		j := bare()
@@ -81,14 +73,15 @@ func TestToleranceFaults(t *testing.T) {
 	}
 	seven := make([]lug.Tolerance, lug.MostTolerances+1)
 	for i := range seven {
-		seven[i] = tolerance(t, "/lug/width", 80, 1, 1)
+		seven[i] = lug.Tolerance{Pointer: "/lug/width", Minus: 1, Plus: 1}
 	}
 	if _, wrong := lug.PrepareToleranced(bare(), seven, methods("elementary"), usual(), at(1, 0)); len(wrong) != 1 {
 		t.Errorf("seven tolerances: %v", wrong)
 	}
-	for _, pointer := range []string{"/lug/material", "/lug/taper_angle", "/lug", ""} {
-		if _, ok := lug.LengthAt(pointer); ok {
-			t.Errorf("%q is a length", pointer)
+	for _, pointer := range []string{"/lug/material", "/lug/taper_angle", "/lug", "", "/pin/diameter", "/clevis/bushing/length"} {
+		_, wrong := lug.PrepareToleranced(bare(), []lug.Tolerance{{Pointer: pointer, Plus: 1}}, methods("elementary"), usual(), at(1, 0))
+		if len(wrong) != 1 || wrong[0].Pointer != pointer {
+			t.Errorf("a tolerance of %q: %v", pointer, wrong)
 		}
 	}
 }
@@ -99,9 +92,9 @@ func TestCornersAreTheWorst(t *testing.T) {
 	rapid.Check(t, func(r *rapid.T) {
 		j := drawJoint(r)
 		lengths := []lug.Tolerance{
-			tolerance(t, "/lug/thickness", j.Lug.Thickness, 0.01*j.Lug.Thickness, 0.01*j.Lug.Thickness),
-			tolerance(t, "/clevis/gap", j.Clevis.Gap, 0, 0.1*j.Clevis.Gap),
-			tolerance(t, "/pin/diameter", j.Pin.Diameter, 0.005*j.Pin.Diameter, 0),
+			{Pointer: "/lug/thickness", Minus: 0.01 * j.Lug.Thickness, Plus: 0.01 * j.Lug.Thickness},
+			{Pointer: "/clevis/gap", Minus: 0, Plus: 0.1 * j.Clevis.Gap},
+			{Pointer: "/pin/diameter", Minus: 0.005 * j.Pin.Diameter, Plus: 0},
 		}
 		p, wrong := lug.PrepareToleranced(j, lengths, everyMethod(), usual(), at(20000, drawAngle(r)))
 		if wrong != nil {
@@ -109,7 +102,7 @@ func TestCornersAreTheWorst(t *testing.T) {
 		}
 		out, nominal := make([]strength.Margin, len(p.Checks())), make([]strength.Margin, len(p.Checks()))
 		p.Margins(0, out)
-		p.NominalMargins(0, nominal)
+		p.Nominal().Margins(0, nominal)
 		for k, c := range p.Checks() {
 			if settled(nominal[k]) && settled(out[k]) && out[k].Margin > nominal[k].Margin {
 				r.Fatalf("%+v: %g above the nominal %g", c, out[k].Margin, nominal[k].Margin)
@@ -141,11 +134,11 @@ func TestLimitsBringChecksAbout(t *testing.T) {
 		mode    strength.Mode
 		want    float64 // the allowable by hand; 0: any
 	}{
-		{"elementary", bare(), methods("elementary"), tolerance(t, "/lug/offset", 0, 2, 2), strength.Tang, 432000 / 1.15},
-		{"affdl", bare(), methods(affdl), tolerance(t, "/lug/offset", 0, 2, 2), strength.Tang, 432000 / 1.15},
-		{"aisc", play, methods("aisc-360-d5"), tolerance(t, "/lug/offset", 0, 2, 2), strength.Tang, 380 * 80 * 12 / 1.67 / 1.15},
-		{"press fit", hinge(), methods(affdl), tolerance(t, "/bushing/interference", 0, 0, 0.04), strength.Yielding, 0},
-		{"contact", play, replaceable, tolerance(t, "/lug/hole_diameter", 25, 0, 0.5), strength.Bearing, math.Pow(2.5*380/0.591, 2) * 625 * 12 / (71000 * 0.5)},
+		{"elementary", bare(), methods("elementary"), lug.Tolerance{Pointer: "/lug/offset", Minus: 2, Plus: 2}, strength.Tang, 432000 / 1.15},
+		{"affdl", bare(), methods(affdl), lug.Tolerance{Pointer: "/lug/offset", Minus: 2, Plus: 2}, strength.Tang, 432000 / 1.15},
+		{"aisc", play, methods("aisc-360-d5"), lug.Tolerance{Pointer: "/lug/offset", Minus: 2, Plus: 2}, strength.Tang, 380 * 80 * 12 / 1.67 / 1.15},
+		{"press fit", hinge(), methods(affdl), lug.Tolerance{Pointer: "/bushing/interference", Minus: 0, Plus: 0.04}, strength.Yielding, 0},
+		{"contact", play, replaceable, lug.Tolerance{Pointer: "/lug/hole_diameter", Minus: 0, Plus: 0.5}, strength.Bearing, math.Pow(2.5*380/0.591, 2) * 625 * 12 / (71000 * 0.5)},
 	} {
 		p, wrong := lug.PrepareToleranced(c.joint, []lug.Tolerance{c.length}, c.choices, usual(), at(1000, 0))
 		if wrong != nil {
