@@ -214,7 +214,7 @@ func failing(fault storetest.Fault) func(int, string) storetest.Fault {
 func TestUnavailable(t *testing.T) {
 	w := newWorld(t, storetest.SQLite(t))
 	needless := []string{
-		"calculateLug", "calculateFastenerGroup", "sizeFastenerGroup", "calculateSplice", "findSpliceSteps", "answerBatch", "listMaterials", "listFastenerTypes", "listMethods", "listRules", "getLedgerKey",
+		"calculateLug", "sizeLug", "calculateFastenerGroup", "sizeFastenerGroup", "calculateSplice", "findSpliceSteps", "answerBatch", "listMaterials", "listFastenerTypes", "listMethods", "listRules", "getLedgerKey",
 		"explainProblem", "getOpenAPI", "getHealth", "getMetrics",
 	}
 	for _, op := range theDocument(t).operations() {

@@ -18,6 +18,7 @@ func (v *server) routes() []route {
 	view := []string{"workings", "checks"}
 	return []route{
 		{http.MethodPost, "/v1/lugs", service.Reader, view, jsonMedia, v.calculate(service.Lug)},
+		{http.MethodPost, "/v1/lugs/sizing", service.Reader, view, jsonMedia, v.sizeLug},
 		{http.MethodPost, "/v1/fastener-groups", service.Reader, view, jsonMedia, v.calculate(service.FastenerGroup)},
 		{http.MethodPost, "/v1/fastener-groups/sizing", service.Reader, view, jsonMedia, v.sizeGroup},
 		{http.MethodPost, "/v1/splices", service.Reader, view, jsonMedia, v.calculate(service.Splice)},
@@ -107,6 +108,14 @@ func (v *server) calculate(kind service.Kind) func(context.Context, *Request) (*
 		}
 		return encoded(v.service.Calculate(ctx, kind, r.Body, view))
 	}
+}
+
+func (v *server) sizeLug(ctx context.Context, r *Request) (*Response, error) {
+	view, err := viewOf(r.Query)
+	if err != nil {
+		return nil, err
+	}
+	return encoded(v.service.SizeLug(ctx, r.Body, view))
 }
 
 func (v *server) sizeGroup(_ context.Context, r *Request) (*Response, error) {

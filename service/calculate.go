@@ -53,10 +53,12 @@ type prepared struct {
 // extras are the members of an answer that only some kinds have.
 type extras struct {
 	MethodOptions map[string]map[string]strictjson.Raw `json:"method_options,omitzero"`
-	Centroid      *[2]float64                          `json:"centroid,omitzero"`
-	Shares        []CaseShares                         `json:"shares,omitzero"`
-	Transfers     []CaseTransfers                      `json:"transfers,omitzero"`
-	Compared      []ComparedTransfers                  `json:"compared_transfers,omitzero"`
+	// StressConcentration is the elastic one of each loaded hole.
+	StressConcentration []Working           `json:"stress_concentration,omitzero"`
+	Centroid            *[2]float64         `json:"centroid,omitzero"`
+	Shares              []CaseShares        `json:"shares,omitzero"`
+	Transfers           []CaseTransfers     `json:"transfers,omitzero"`
+	Compared            []ComparedTransfers `json:"compared_transfers,omitzero"`
 }
 
 // kindEntry makes an empty document of a kind.

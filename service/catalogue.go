@@ -172,7 +172,7 @@ func optionItem(o lug.Option) OptionItem {
 	case lug.CurveSetRef:
 		item.Type = "curve set"
 		if o.HasDefault {
-			item.Default = o.Default.Word
+			item.Default = o.Default.Set.Name()
 		}
 	}
 	return item

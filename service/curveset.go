@@ -4,6 +4,7 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"fmt"
+	"slices"
 	"strings"
 
 	"jointledger/lug"
@@ -98,6 +99,17 @@ func curveSetDocument(set *lug.CurveSet) *CurveSet {
 // check notes what is impossible about a curve set, below a pointer.
 func (c *CurveSet) check(f *faults) {
 	f.check(c)
+	for name, chart := range c.Charts {
+		for i, curve := range chart.Curves {
+			at := pointer("charts", name, "curves", i, "at")
+			switch {
+			case chart.Between == nil && curve.At != nil:
+				f.add(at, "must be left out, as there is nothing between the curves")
+			case chart.Between != nil && curve.At == nil:
+				f.add(at, "is required: the value of %s", *chart.Between)
+			}
+		}
+	}
 	f.take(c.lug().Check(), SI)
 }
 
@@ -132,74 +144,87 @@ func (noRegistry) curveSet(name string) (*CurveSet, error) {
 }
 
 // readCurveSet reads the three forms of a reference: a name, a resolved
-// reference with its digest, or a whole set.
-func readCurveSet(raw strictjson.Raw, look lookup) (lug.Value, error) {
-	if raw.Kind() == strictjson.String {
+// reference with its digest, or a whole set. What is wrong with it is noted
+// under at.
+func readCurveSet(raw strictjson.Raw, look lookup, at string, f *faults) (lug.Value, bool) {
+	var none lug.Value
+	switch raw.Kind() {
+	case strictjson.String:
 		var name string
 		if err := strictjson.Decode(raw, &name); err != nil {
-			return lug.Value{}, err
+			f.malformed(err, at)
+			return none, false
 		}
-		return lookUpCurveSet(name, look)
+		v, err := lookUpCurveSet(name, look)
+		if err != nil {
+			f.lookedUp(at, err)
+		}
+		return v, err == nil
+	case strictjson.Object:
+	default:
+		f.add(at, "must be the name of a curve set or a whole one")
+		return none, false
 	}
-	var ref curveSetRef
-	if strictjson.Decode(raw, &ref) == nil {
+	var probe struct {
+		Digest strictjson.Raw `json:"digest"`
+	}
+	if err := strictjson.DecodeLoosely(raw, &probe); err == nil && probe.Digest != nil {
+		var ref curveSetRef
+		if err := strictjson.Decode(raw, &ref); err != nil {
+			f.malformed(err, at)
+			return none, false
+		}
 		v, err := lookUpCurveSet(ref.ID+"@"+ref.Version, look)
 		if err != nil {
-			return v, err
+			f.lookedUp(at, err)
+			return none, false
 		}
-		digest, err := curveSetDocument(v.Set).digest()
-		if err == nil && digest != ref.Digest {
-			err = fmt.Errorf("the curve set %s has the digest %s, not %s", v.Set.Name(), digest, ref.Digest)
+		if digest, err := curveSetDocument(v.Set).digest(); err != nil || digest != ref.Digest {
+			f.add(at+"/digest", "the curve set %s has the digest %s, not %.80q", v.Set.Name(), digest, ref.Digest)
+			return none, false
 		}
-		return v, err
+		return v, true
 	}
 	var set CurveSet
 	if err := strictjson.Decode(raw, &set); err != nil {
-		return lug.Value{}, fmt.Errorf("must be the name of a curve set or a whole one: %w", err)
+		f.malformed(err, at)
+		return none, false
 	}
-	var f faults
-	set.check(&f)
-	if p := f.problem(); p != nil {
-		var found []string
-		for _, e := range p.Errors {
-			found = append(found, e.Pointer+" "+e.Detail)
-		}
-		return lug.Value{}, fmt.Errorf("the curve set cannot be used: %s", strings.Join(found, "; "))
-	}
-	return lug.Value{Set: set.lug()}, nil
+	var own faults
+	set.check(&own)
+	f.join(at, own.list)
+	return lug.Value{Set: set.lug()}, len(own.list) == 0
 }
 
-// readOption reads the value of a method's option.
-func readOption(o lug.Option, raw strictjson.Raw, look lookup) (lug.Value, error) {
+// readOption reads the value of a method's option. What is wrong with it is
+// noted under at.
+func readOption(o lug.Option, raw strictjson.Raw, look lookup, at string, f *faults) (lug.Value, bool) {
 	var v lug.Value
+	var wrong string
 	switch o.Kind {
 	case lug.Number:
 		if raw.Kind() != strictjson.Number || strictjson.Decode(raw, &v.Number) != nil {
-			return v, fmt.Errorf("must be a number")
-		}
-		if strength.Less(v.Number, o.Least) || strength.More(v.Number, o.Most) {
-			return v, fmt.Errorf("must be from %g to %g, not %g", o.Least, o.Most, v.Number)
+			wrong = "must be a number"
+		} else if strength.Less(v.Number, o.Least) || strength.More(v.Number, o.Most) {
+			wrong = fmt.Sprintf("must be from %g to %g, not %g", o.Least, o.Most, v.Number)
 		}
 	case lug.Word:
 		if raw.Kind() != strictjson.String || strictjson.Decode(raw, &v.Word) != nil {
-			return v, fmt.Errorf("must be a string")
-		}
-		for _, w := range o.Words {
-			if w == v.Word {
-				return v, nil
-			}
-		}
-		if len(o.Words) > 0 {
-			return v, fmt.Errorf("must be one of %s, not %.80q", strings.Join(o.Words, ", "), v.Word)
+			wrong = "must be a string"
+		} else if len(o.Words) > 0 && !slices.Contains(o.Words, v.Word) {
+			wrong = fmt.Sprintf("must be one of %s, not %.80q", strings.Join(o.Words, ", "), v.Word)
 		}
 	case lug.Flag:
 		if strictjson.Decode(raw, &v.Flag) != nil {
-			return v, fmt.Errorf("must be true or false")
+			wrong = "must be true or false"
 		}
 	case lug.CurveSetRef:
-		return readCurveSet(raw, look)
+		return readCurveSet(raw, look, at, f)
 	}
-	return v, nil
+	if wrong != "" {
+		f.add(at, "%s", wrong)
+	}
+	return v, wrong == ""
 }
 
 // writeOption writes a value as the resolved input carries it.

@@ -84,27 +84,6 @@ var shapes = map[Shape]lug.Shape{"round": lug.Round, "square": lug.Square, "tape
 // Words implements strictjson.Words.
 func (Shape) Words() []string { return []string{"round", "square", "tapered"} }
 
-// Length is a dimension, exact or with its limits.
-type Length = strictjson.Either[float64, Tolerance]
-
-// Tolerance is a dimension between nominal - minus and nominal + plus.
-type Tolerance struct {
-	Nominal float64 `json:"nominal"`
-	Minus   float64 `json:"minus"`
-	Plus    float64 `json:"plus"`
-}
-
-// nominal is the dimension itself, 0 for none.
-func nominal(l *Length) float64 {
-	switch {
-	case l == nil:
-		return 0
-	case l.Object != nil:
-		return l.Object.Nominal
-	}
-	return l.Plain
-}
-
 // resolve writes out every default that is a value. Those that follow another
 // dimension (end_radius, body_width, a bushing's length) stay out, so that
 // they follow it still when it is varied.
@@ -139,6 +118,7 @@ func (d *LugDocument) resolve(look lookup, f *faults) {
 		}
 		bushing(d.Clevis.Bushing, "/clevis/bushing")
 	}
+	f.limits(toleranced(d))
 	d.Factors.resolve([]string{"lug", "bushing", "clevis", "clevis-bushing", "pin", "joint"}, f)
 	d.resolveMethods(look, f)
 }
@@ -190,9 +170,7 @@ func (d *LugDocument) resolveOptions(m lug.Method, look lookup, f *faults) lug.O
 		at := pointer("method_options", m.ID, o.Name)
 		raw, ok := given[o.Name]
 		if ok {
-			if v, err := readOption(o, raw, look); err != nil {
-				f.lookedUp(at, err)
-			} else {
+			if v, ok := readOption(o, raw, look, at, f); ok {
 				options[o.Name] = v
 			}
 		} else if o.HasDefault {
@@ -265,25 +243,86 @@ func (d *LugDocument) joint() lug.Joint {
 	return j
 }
 
-func (d *LugDocument) prepare(f *faults) *prepared {
+// tolerances are those of the joint's lengths.
+func (d *LugDocument) tolerances() []lug.Tolerance {
+	mm := d.Units.scale(strength.Length)
+	var list []lug.Tolerance
+	for _, l := range toleranced(d) {
+		list = append(list, lug.Tolerance{Pointer: l.at, Minus: l.Minus * mm, Plus: l.Plus * mm})
+	}
+	return list
+}
+
+// Load cases times combinations of limits of one calculation, and of a sizing,
+// which makes some hundred.
+const (
+	mostCorners      = 1_000_000
+	mostSizedCorners = 100_000
+)
+
+// cornersFit notes when the load cases are too many for the combinations of
+// limits, and reports whether all can be calculated.
+func (d *LugDocument) cornersFit(most int, f *faults) bool {
+	tolerances := len(toleranced(d))
+	if tolerances > lug.MostTolerances { // which is a fault already
+		return false
+	}
+	corners := 1
+	if tolerances > 0 {
+		corners = 1<<tolerances + 1
+	}
+	if n := corners * len(d.LoadCases); n > most {
+		f.add("/load_cases", "%d load cases at %d combinations of limits are %d, and at most %d can be calculated at once", len(d.LoadCases), corners, n, most)
+		return false
+	}
+	return true
+}
+
+// cases turns the load cases into N.
+func (d *LugDocument) cases() []lug.LoadCase {
 	cases := make([]lug.LoadCase, len(d.LoadCases))
 	newton := d.Units.scale(strength.Force)
 	for i, c := range d.LoadCases {
 		cases[i] = lug.LoadCase{ID: c.ID, Level: c.Level.strength(), Force: c.Force * newton, Angle: c.Angle}
 	}
-	p, found := lug.Prepare(d.joint(), d.choices, d.Factors.strength(), cases)
-	// That the list is empty was said, and so was what is wrong in it.
-	found = slices.DeleteFunc(found, func(one strength.Fault) bool { return one.Pointer == "/methods" })
-	f.take(found, d.Units)
-	if len(f.list) > 0 {
-		return nil
-	}
-	return &prepared{
+	return cases
+}
+
+func (d *LugDocument) prepare(f *faults) *prepared {
+	p := &prepared{
 		assembly: assembly{
-			calculation: p, units: d.Units, methods: append(slices.Clone(d.Methods), *d.Compare...),
+			units: d.Units, methods: append(slices.Clone(d.Methods), *d.Compare...),
 			cases: loadCases(d.LoadCases, func(c *LugLoadCase) string { return c.ID }),
 		},
 		places: 1,
-		add:    func(r *Result, _ []int) { r.MethodOptions = d.MethodOptions },
 	}
+	var nominal *lug.Prepared
+	var found []strength.Fault
+	if tolerances := d.tolerances(); !d.cornersFit(mostCorners, f) || len(tolerances) == 0 {
+		nominal, found = lug.Prepare(d.joint(), d.choices, d.Factors.strength(), d.cases())
+		p.calculation = nominal
+	} else {
+		var t *lug.Toleranced
+		if t, found = lug.PrepareToleranced(d.joint(), tolerances, d.choices, d.Factors.strength(), d.cases()); t != nil {
+			p.calculation, p.corners, nominal = t, t, t.Nominal()
+		}
+	}
+	f.take(lugFaults(found), d.Units)
+	if len(f.list) > 0 {
+		return nil
+	}
+	p.add = func(r *Result, _ []int) {
+		r.MethodOptions = d.MethodOptions
+		r.StressConcentration = []Working{}
+		for _, w := range nominal.StressConcentration() {
+			r.StressConcentration = append(r.StressConcentration, d.Units.working(w))
+		}
+	}
+	return p
+}
+
+// lugFaults leaves out what was said before: that the list of methods is empty,
+// or what is wrong in it.
+func lugFaults(found []strength.Fault) []strength.Fault {
+	return slices.DeleteFunc(found, func(one strength.Fault) bool { return one.Pointer == "/methods" })
 }

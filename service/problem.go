@@ -84,7 +84,7 @@ func MalformedQuery(found ...FieldError) *Problem {
 type faults struct {
 	list []FieldError
 	seen map[string]bool
-	// cause is why a name could not be looked up at all.
+	// cause is why a name could not be looked up at all, or what cannot be read.
 	cause error
 }
 
@@ -94,6 +94,21 @@ func (f *faults) lookedUp(at string, err error) {
 		f.cause = err
 	}
 	f.add(at, "%s", err)
+}
+
+// malformed notes that a part which is read late is not the JSON asked for:
+// the document as a whole is malformed then.
+func (f *faults) malformed(err error, at string) {
+	if f.cause == nil {
+		f.cause = malformed(err, at)
+	}
+}
+
+// join notes faults found in a part of a document.
+func (f *faults) join(at string, found []FieldError) {
+	for _, e := range found {
+		f.add(at+e.Pointer, "%s", e.Detail)
+	}
 }
 
 // add notes a fault unless its pointer has one already: the first says why,

@@ -164,9 +164,7 @@ func (f *faults) under(member string, err error) error {
 	case errors.As(err, &inner) && inner.Code == Malformed:
 		return inner.Under(member)
 	case inner != nil && inner.Code == Invalid && len(inner.Errors) > 0:
-		for _, e := range inner.Errors {
-			f.add(member+e.Pointer, "%s", e.Detail)
-		}
+		f.join(member, inner.Errors)
 	case err != nil:
 		return err
 	}

@@ -3,6 +3,7 @@ package service
 import (
 	"cmp"
 	"slices"
+	"strings"
 
 	"jointledger/strength"
 )
@@ -129,10 +130,19 @@ func (w *worst) see(m strength.Margin, at place) {
 // assembly turns a calculation into an answer.
 type assembly struct {
 	calculation strength.Calculation
-	nominal     func(load, check int) *float64 // of toleranced input, else nil
-	cases       []string                       // ids
-	methods     []string                       // as asked
+	corners     corners  // of toleranced input, else nil
+	cases       []string // ids
+	methods     []string // as asked
 	units       Units
+}
+
+// corners is what a calculation with tolerances knows besides: a margin is that
+// of the worst combination of limits.
+type corners interface {
+	// NominalMargin is a margin with every length at nominal.
+	NominalMargin(load, check int) strength.Margin
+	// Corner says which combination is the worst.
+	Corner(load, check int) strength.Message
 }
 
 // assemble runs every load case and writes down what is wanted. It returns
@@ -273,17 +283,22 @@ func (a assembly) check(at place, m strength.Margin) Check {
 		LoadCase: a.cases[at.load], Unit: a.units.name(c.Unit), Status: m.Status.String(), Method: c.Method,
 		Source: c.Source, Mark: c.Mark.String(), Compared: c.Compared,
 	}
+	var said []string
 	if m.Status == strength.Undetermined {
 		if m.Why != nil {
-			out.Message = text(a.units.say(*m.Why))
+			said = append(said, a.units.say(*m.Why))
 		}
-		return out
+	} else {
+		demand, allowable, margin := a.units.out(m.Demand, c.Unit), a.units.out(m.Allowable, c.Unit), m.Margin
+		out.Demand, out.Allowable, out.Margin = &demand, &allowable, &margin
 	}
-	demand, allowable, margin := a.units.out(m.Demand, c.Unit), a.units.out(m.Allowable, c.Unit), m.Margin
-	out.Demand, out.Allowable, out.Margin = &demand, &allowable, &margin
-	if a.nominal != nil {
-		out.NominalMargin = a.nominal(at.load, at.check)
+	if a.corners != nil {
+		said = append(said, a.units.say(a.corners.Corner(at.load, at.check)))
+		if n := a.corners.NominalMargin(at.load, at.check); n.Status != strength.NotExercised && n.Status != strength.Undetermined {
+			out.NominalMargin = &n.Margin
+		}
 	}
+	out.Message = text(strings.Join(said, ", "))
 	return out
 }
 
@@ -297,12 +312,7 @@ func (a assembly) workings(kept []place) []Working {
 				continue
 			}
 			seen[w] = true
-			out = append(out, Working{
-				Member: w.Member, Fastener: text(w.Fastener), Row: row(w.Row), Method: text(w.Method),
-				Mode: text(w.Mode.String()), Level: text(w.Level.String()), LoadCase: text(w.LoadCase),
-				Symbol: w.Symbol, Value: a.units.out(w.Value, w.Unit), Unit: a.units.name(w.Unit),
-				Equation: text(w.Equation), Source: text(w.Source), Mark: w.Mark.String(),
-			})
+			out = append(out, a.units.working(w))
 		}
 	}
 	static := map[int]bool{}
@@ -314,6 +324,16 @@ func (a assembly) workings(kept []place) []Working {
 		add(a.calculation.CaseWorkings(at.load, at.check))
 	}
 	return out
+}
+
+// working writes one step in the caller's units.
+func (u Units) working(w strength.Working) Working {
+	return Working{
+		Member: w.Member, Fastener: text(w.Fastener), Row: row(w.Row), Method: text(w.Method),
+		Mode: text(w.Mode.String()), Level: text(w.Level.String()), LoadCase: text(w.LoadCase),
+		Symbol: w.Symbol, Value: u.out(w.Value, w.Unit), Unit: u.name(w.Unit),
+		Equation: text(w.Equation), Source: text(w.Source), Mark: w.Mark.String(),
+	}
 }
 
 // clone copies an optional number out of where it will be overwritten.

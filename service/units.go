@@ -53,10 +53,15 @@ func (u Units) out(value float64, unit strength.Unit) float64 {
 	if unit == strength.None || unit.Angle {
 		return value
 	}
+	return fifteen(value / u.scale(unit))
+}
+
+// fifteen keeps fifteen digits of a number.
+func fifteen(x float64) float64 {
 	var room [32]byte
-	rounded, err := strconv.ParseFloat(string(strconv.AppendFloat(room[:0], value/u.scale(unit), 'e', 14, 64)), 64)
+	rounded, err := strconv.ParseFloat(string(strconv.AppendFloat(room[:0], x, 'e', 14, 64)), 64)
 	if err != nil {
-		return value / u.scale(unit) // beyond float64 when rounded up
+		return x // beyond float64 when rounded up
 	}
 	return rounded
 }

@@ -47,6 +47,7 @@ var rules = map[string]rule{
 	"poisson":  {"must be at least 0 and less than 0.5", number(func(x float64) bool { return x >= 0 && x < 0.5 })},
 	"angle":    {"must be between -36000 and 36000", number(func(x float64) bool { return math.Abs(x) <= 36000 })},
 	"flexible": {"must be more than 0, from 1e-18 to 1e6", number(func(x float64) bool { return x >= 1e-18 && x <= 1e6 })},
+	"margin":   {"must be more than -1 and at most 1000", number(func(x float64) bool { return x > -1 && x <= 1000 })},
 	"text": {fmt.Sprintf("must be at most %d characters", mostText), func(fl validator.FieldLevel) bool {
 		return utf8.RuneCountInString(fl.Field().String()) <= mostText
 	}},
@@ -105,7 +106,11 @@ func newValidator() *validator.Validate {
 		return name
 	})
 	v.RegisterCustomTypeFunc(func(field reflect.Value) any {
-		return nominal(field.Addr().Interface().(*Length))
+		l := field.Addr().Interface().(*Length)
+		if l.Object != nil {
+			return 1.0 // allowed everywhere: faults.limits looks at what it is
+		}
+		return l.Plain
 	}, Length{})
 	return v
 }
@@ -120,22 +125,26 @@ func (f *faults) check(document any) {
 	}
 }
 
-// pointerOf turns a validator's namespace, T.lug.load_cases[3].id, into a
-// JSON pointer. The object in the place of a name has no token of its own.
+// pointerOf turns a validator's namespace, T.lug.charts[Kn@0.8].points[3], into
+// a JSON pointer. The object in the place of a name has no token of its own.
 func pointerOf(namespace string) string {
 	_, path, _ := strings.Cut(namespace, ".")
 	var b strings.Builder
-	for _, part := range strings.Split(path, ".") {
-		name, index, indexed := strings.Cut(part, "[")
-		if name != "Object" {
+	for path != "" {
+		end := strings.IndexAny(path, ".[")
+		if end < 0 {
+			end = len(path)
+		}
+		if name := path[:end]; name != "Object" && name != "" {
 			b.WriteString(pointer(name))
 		}
-		for indexed {
-			var token string
-			token, index, _ = strings.Cut(index, "]")
+		path = path[end:]
+		for strings.HasPrefix(path, "[") {
+			token, rest, _ := strings.Cut(path[1:], "]")
 			b.WriteString(pointer(token))
-			_, index, indexed = strings.Cut(index, "[")
+			path = rest
 		}
+		path = strings.TrimPrefix(path, ".")
 	}
 	return b.String()
 }
