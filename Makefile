@@ -15,6 +15,7 @@ test: tools ## Run everything: format, vet, staticcheck, tests with the race det
 checks: lint # what runs while the throwaway Postgres is up
 	go test -race -timeout 15m ./...
 	cd deploy/check && go test ./...
+	cd api/generated && go vet . && go test .
 	go test -run '^$$' -fuzz '^FuzzRequests$$' -fuzztime 5s ./api
 
 .PHONY: lint

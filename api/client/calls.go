@@ -184,3 +184,17 @@ func decision(d *Decision, err error) (*Decision, error) {
 	}
 	return nil, fmt.Errorf("the answer is no decision: %.80q with %d findings", d.Decision, len(d.Findings))
 }
+
+// Part returns what is on record of a part.
+func (c *Client) Part(ctx context.Context, part string) (*Part, error) {
+	return get[Part](ctx, c, "/v1/parts", url.Values{"part": {part}})
+}
+
+// Impact finds what rests on something; cursor is empty for the first page,
+// then the NextCursor of the one before.
+func (c *Client) Impact(ctx context.Context, withdrawn Withdrawn, cursor string) (*Impact, error) {
+	return post[Impact](ctx, c, "/v1/impact", nil, struct {
+		Withdrawn Withdrawn `json:"withdrawn"`
+		Cursor    string    `json:"cursor,omitzero"`
+	}{withdrawn, cursor}, "")
+}

@@ -219,6 +219,14 @@ func TestFromRecordToRelease(t *testing.T) {
 	if err != nil || found.Withdrawal == nil || len(found.SignOffs) != 2 || found.Result.Verdict != "adequate" {
 		t.Errorf("the record: %+v, %v", found, err)
 	}
+	impact, err := gate.Impact(ctx, client.Withdrawn{Record: made.ID}, "")
+	if err != nil || len(impact.Records) != 1 || len(impact.Decisions) != 3 || impact.Decisions[1].Decision != client.Release || impact.NextCursor != nil {
+		t.Errorf("what rests on it: %+v, %v", impact, err)
+	}
+	part, err := gate.Part(ctx, "SM-2100")
+	if err != nil || len(part.Revisions) != 1 || part.Revisions[0].Records[0].State != "withdrawn" {
+		t.Errorf("the part: %+v, %v", part, err)
+	}
 	verifyExport(t, gate)
 }
 

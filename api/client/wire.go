@@ -250,3 +250,42 @@ type ReleaseFinding struct {
 	Message string  `json:"message"`
 	Record  *string `json:"record"`
 }
+
+// Part is what the ledger says of a part: the latest record of each joint,
+// aspect and kind, by revision, newest first.
+type Part struct {
+	Part      string `json:"part"`
+	Revisions []struct {
+		Revision string          `json:"revision"`
+		Records  []RecordSummary `json:"records"`
+	} `json:"revisions"`
+	Complete bool `json:"complete"` // false where the part has more joints than are listed
+}
+
+// Withdrawn names the one thing that does not hold any more.
+type Withdrawn struct {
+	Material string `json:"material,omitzero"`
+	Method   string `json:"method,omitzero"`    // with or without its revision
+	CurveSet string `json:"curve_set,omitzero"` // with or without its version
+	Record   string `json:"record,omitzero"`
+}
+
+// Impact is what rests on something: records, newest first, and the decisions
+// of the gate that rest on those.
+type Impact struct {
+	Records    []RecordSummary  `json:"records"`
+	Decisions  []ImpactDecision `json:"decisions"`
+	NextCursor *string          `json:"next_cursor"`
+}
+
+// ImpactDecision is a decision with those of the records that it rests on.
+type ImpactDecision struct {
+	ID       string   `json:"id"`
+	Index    int64    `json:"index"`
+	At       string   `json:"at"`
+	Author   string   `json:"author"`
+	Part     string   `json:"part"`
+	Revision string   `json:"revision"`
+	Decision string   `json:"decision"`
+	Records  []string `json:"records"`
+}
