@@ -1,7 +1,9 @@
 package api_test
 
 import (
+	"context"
 	"fmt"
+	"io"
 	"net/http"
 	"slices"
 	"strings"
@@ -345,5 +347,38 @@ func TestProblemPages(t *testing.T) {
 				t.Errorf("the page %s does not say %q", kind, says)
 			}
 		}
+	}
+}
+
+// cutStore loses its engine in the middle of reading entries.
+type cutStore struct{ service.Store }
+
+func (s cutStore) Entries(ctx context.Context, from, to int64, yield func(service.Entry) error) error {
+	read := 0
+	return s.Store.Entries(ctx, from, to, func(e service.Entry) error {
+		if read++; read > 1 {
+			return service.ErrUnavailable
+		}
+		return yield(e)
+	})
+}
+
+// TestStreamThatFailsIsCut: nobody takes half an export for a whole one.
+func TestStreamThatFailsIsCut(t *testing.T) {
+	c := serve(t, cutStore{storetest.SQLite(t)})
+	for range 2 {
+		c.do(t, post("/v1/records", example(t, "addRecord", "record"))).want(t, http.StatusCreated)
+	}
+	request, err := http.NewRequestWithContext(t.Context(), http.MethodGet, c.url+"/v1/export", nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	response, err := http.DefaultClient.Do(request)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer response.Body.Close()
+	if body, err := io.ReadAll(response.Body); err == nil {
+		t.Errorf("an export that failed ends as if it were whole: %.300s", body)
 	}
 }
