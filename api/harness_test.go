@@ -274,7 +274,8 @@ func (a *answer) hold(t testing.TB, request *http.Request, response *http.Respon
 	}
 	documented := op.Responses.Codes.GetOrZero(fmt.Sprint(a.status))
 	asksBody := documented.Content != nil && documented.Content.Len() > 0
-	if hasBody := len(a.body) > 0 && !bytes.Equal(bytes.TrimSpace(a.body), []byte("null")); hasBody != asksBody {
+	hasBody := len(a.body) > 0 && !bytes.Equal(bytes.TrimSpace(a.body), []byte("null"))
+	if noLines := len(a.body) == 0 && a.header.Get("Content-Type") == "application/x-ndjson"; hasBody != asksBody && !noLines {
 		t.Errorf("%s: a body is documented: %t, and it is %.200q", where, asksBody, a.body)
 	}
 	d.holdLines(t, where, documented, a.body)
@@ -291,7 +292,8 @@ func (a *answer) hold(t testing.TB, request *http.Request, response *http.Respon
 			t.Errorf("%s: the header %s is not documented", where, name)
 		}
 	}
-	if a.status < 400 {
+	// A stream of no lines is a request too, and for the validator a missing body.
+	if noLines := len(a.call.body) == 0 && op.media() == "application/x-ndjson"; a.status < 400 && !noLines {
 		request.Body = io.NopCloser(bytes.NewReader(a.call.body))
 		if ok, errs := d.validator.ValidateHttpRequestSync(request); !ok {
 			for _, err := range errs {
@@ -322,7 +324,7 @@ func (d *document) holdLines(t testing.TB, where string, documented *v3.Response
 		t.Fatal(err)
 	}
 	schema := d.model.Components.Schemas.GetOrZero(strings.TrimPrefix(item.Ref, "#/components/schemas/")).Schema()
-	if !bytes.HasSuffix(body, []byte("\n")) {
+	if len(body) > 0 && !bytes.HasSuffix(body, []byte("\n")) {
 		t.Errorf("%s: the last line has no end: %.200s", where, body)
 	}
 	for line := range bytes.Lines(body) {

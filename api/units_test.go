@@ -303,6 +303,24 @@ func TestBearingHasItsRange(t *testing.T) {
 	}
 }
 
+// TestGoverningKeepsNoMoreThanItsChecks: a large pattern without any check
+// answers no shares of its own accord, where all would be without bound.
+func TestGoverningKeepsNoMoreThanItsChecks(t *testing.T) {
+	c := serve(t, storetest.SQLite(t))
+	var cases []any
+	for i := range 600 {
+		cases = append(cases, object{"id": fmt.Sprint(i), "level": "limit", "point": []int{0, 0, 0}, "force": []int{i, 0, 0}, "moment": []int{0, 0, 0}})
+	}
+	body := edited(t, example(t, "calculateFastenerGroup", "sharingOnly"), object{"/load_cases": cases})
+	for target, want := range map[string]int{"": 0, "?checks=governing": 0, "?checks=all": 600} {
+		var a unitless
+		c.do(t, post("/v1/fastener-groups"+target, body)).decode(t, http.StatusOK, &a)
+		if len(a.Shares) != want {
+			t.Errorf("%q: shares of %d load cases, want %d", target, len(a.Shares), want)
+		}
+	}
+}
+
 // TestMissingValueIsNamed: a material that lacks a value leaves that check
 // undetermined, and the others stand.
 func TestMissingValueIsNamed(t *testing.T) {

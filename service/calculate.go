@@ -45,8 +45,7 @@ type document interface {
 type prepared struct {
 	assembly
 	places int // fasteners or rows
-	// add fills in what only this kind answers, for the load cases of loads
-	// or, when loads is nil, for all.
+	// add fills in what only this kind answers, for the load cases of loads.
 	add func(r *Result, loads []int)
 }
 
@@ -121,9 +120,6 @@ func calculate(kind Kind, input []byte, view View, look lookup) (*calculation, e
 	c := &calculation{input: resolved, inputDigest: inputDigest(kind, resolved)}
 	var loads []int
 	c.result, loads = p.assemble(view, governingOnly)
-	if !governingOnly {
-		loads = nil
-	}
 	if p.add != nil {
 		p.add(&c.result, loads)
 	}

@@ -267,19 +267,13 @@ func (d *GroupDocument) prepare(f *faults) *prepared {
 	}
 }
 
-// addShares fills in the centroid and the shares of the load cases wanted, of
-// all when loads is nil.
+// addShares fills in the centroid and the shares of the load cases wanted.
 func (d *GroupDocument) addShares(p *fastener.PreparedPattern, r *Result, loads []int) {
 	centroid := p.Centroid()
 	for i := range centroid {
 		centroid[i] = d.Units.out(centroid[i], strength.Length)
 	}
-	r.Centroid = &centroid
-	if loads == nil {
-		for i := range d.LoadCases {
-			loads = append(loads, i)
-		}
-	}
+	r.Centroid, r.Shares = &centroid, []CaseShares{}
 	shares := make([]fastener.Share, len(d.Fasteners))
 	force := func(x float64) float64 { return d.Units.out(x, strength.Force) }
 	for _, i := range loads {

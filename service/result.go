@@ -231,6 +231,12 @@ func (a assembly) assemble(view View, governingOnly bool) (Result, []int) {
 			loads = append(loads, at.load)
 		}
 	}
+	if !governingOnly {
+		loads = make([]int, len(a.cases))
+		for i := range loads {
+			loads[i] = i
+		}
+	}
 	if !view.NoWorkings {
 		result.Workings = a.workings(kept)
 	}

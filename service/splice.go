@@ -239,14 +239,9 @@ func (d *SpliceDocument) prepare(f *faults) *prepared {
 	}
 }
 
-// addTransfers fills in how the load cases wanted, all when loads is nil, go
-// through the rows, and how other compliances would share them.
+// addTransfers fills in how the load cases wanted go through the rows, and how
+// other compliances would share them.
 func (d *SpliceDocument) addTransfers(p *fastener.PreparedSplice, r *Result, loads []int) {
-	if loads == nil {
-		for i := range d.LoadCases {
-			loads = append(loads, i)
-		}
-	}
 	r.Transfers, r.Compared = []CaseTransfers{}, []ComparedTransfers{}
 	if !p.Undetermined().Empty() {
 		return
