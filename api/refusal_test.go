@@ -207,6 +207,7 @@ func TestInvalid(t *testing.T) {
 	lug, clevis := example(t, "calculateLug", "lugSI"), example(t, "calculateLug", "clevisJoint")
 	group, record := example(t, "calculateFastenerGroup", "boltPattern"), example(t, "addRecord", "record")
 	splice, steps := example(t, "calculateSplice", "capSplice"), example(t, "findSpliceSteps", "evenCap")
+	sizes := example(t, "sizeFastenerGroup", "boltsOfBracket")
 	type changes = map[string]any
 	type at = []string
 	cases := func(ids ...string) []any {
@@ -306,6 +307,9 @@ func TestInvalid(t *testing.T) {
 		{"an unknown formula", "/v1/splices", splice, changes{"/compliance": "soft"}, at{"/compliance"}},
 		{"member ids twice", "/v1/splices", splice, changes{"/members/1/id": "cap", "/load_cases/0/ends/1/member": "cap"}, at{"/load_cases/0/ends/1/member", "/members/1/id"}},
 		{"a row outside the splice", "/v1/splices", splice, changes{"/members/0/last_row": 9}, at{"/members/0/last_row"}},
+		{"no diameters to choose from", "/v1/fastener-groups/sizing", sizes, changes{"/diameters": []any{}, "/types": removed}, at{"/diameters"}},
+		{"a diameter of zero", "/v1/fastener-groups/sizing", sizes, changes{"/diameters/0": 0, "/types": removed}, at{"/diameters/0"}},
+		{"a size for a pattern that is none", "/v1/fastener-groups/sizing", sizes, changes{"/input/fasteners/1/id": "1"}, at{"/input/fasteners/1/id"}},
 		{"steps of a member that is none", "/v1/splices/steps", steps, changes{"/bounds/0/member": "wing"}, at{"/bounds/0/member"}},
 		{"steps of a splice that is none", "/v1/splices/steps", steps, changes{"/input/pitches/0": 0}, at{"/input/pitches/0"}},
 		{"bounds upside down", "/v1/splices/steps", steps, changes{"/bounds/0/least": 0.3}, at{"/bounds/0/most"}},
