@@ -8,7 +8,7 @@ command -v strace >/dev/null 2>&1 || missing="$missing strace"
 if ! command -v postgres >/dev/null 2>&1 && ! ls /usr/lib/postgresql/*/bin/postgres >/dev/null 2>&1; then
 	missing="$missing postgresql"
 fi
-for tool in haproxy sqlite3 curl; do
+for tool in haproxy sqlite3 curl python3 git; do
 	command -v "$tool" >/dev/null 2>&1 || [ -x "/usr/sbin/$tool" ] || missing="$missing $tool"
 done
 command -v promtool >/dev/null 2>&1 || missing="$missing prometheus"
