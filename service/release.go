@@ -135,6 +135,29 @@ func (s *Service) Judge(ctx context.Context, caller Caller, body []byte, dryRun 
 	return nil, false, s.fail(fmt.Errorf("%w: the records of part %s, revision %s, kept changing", ErrUnavailable, request.Part, request.Revision))
 }
 
+// GateAsRecorded tells what the gate would answer now about a revision whose
+// geometry is still that of its latest records. Nothing is appended.
+func (s *Service) GateAsRecorded(ctx context.Context, caller Caller, part, revision string) (*Decision, error) {
+	records, err := s.store.Records(ctx, Filter{Part: part, Revision: revision, Latest: true}, math.MaxInt64, mostOfPart)
+	if err != nil {
+		return nil, s.fail(err)
+	}
+	request := releaseRequest{Part: part, Revision: revision, Joints: []releaseJoint{}}
+	named := map[string]bool{}
+	for _, r := range records { // newest first
+		if !named[r.Joint] {
+			named[r.Joint] = true
+			request.Joints = append(request.Joints, releaseJoint{r.Joint, r.GeometryDigest})
+		}
+	}
+	body, err := strictjson.Encode(request)
+	if err != nil {
+		return nil, err
+	}
+	decision, _, err := s.Judge(ctx, caller, body, true, Idempotency{})
+	return decision, err
+}
+
 // mostJudgements is how often a part is judged anew because its records
 // changed meanwhile.
 const mostJudgements = 10
