@@ -27,6 +27,7 @@ const (
 	prometheus = "github.com/prometheus/client_golang"
 	rate       = "golang.org/x/time/rate"
 	kong       = "github.com/alecthomas/kong"
+	yaml       = "github.com/pb33f/go-yaml"
 	netutil    = "golang.org/x/net/netutil"
 )
 
@@ -44,7 +45,7 @@ var mayImport = map[string][]string{
 	"store/storetest":    {"service", "service/ledger", "store", pgx, sqlite},
 	"store/throwaway":    {"store/storetest"},
 	"api":                {"service", "service/strictjson", "api/pages", echo, prometheus, rate},
-	"api/pages":          {"service", "strength"},
+	"api/pages":          {"service", "strength", yaml},
 	"api/client":         {"service/strictjson"},
 	"notice":             {"service", "service/strictjson"},
 	".": {

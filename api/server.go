@@ -112,6 +112,7 @@ func New(s *service.Service, options Options) http.Handler {
 	for _, r := range v.routes() {
 		e.Add(r.method, r.path, v.adapt(r))
 	}
+	v.mountPages(e)
 	return e
 }
 

@@ -1,0 +1,5 @@
+//go:build !race
+
+package pages_test
+
+const raceDetector = false
