@@ -14,6 +14,7 @@ test: tools ## Run everything: format, vet, staticcheck, tests with the race det
 .PHONY: checks
 checks: lint # what runs while the throwaway Postgres is up
 	go test -race -timeout 15m ./...
+	go test -tags e2e -run 'InBrowser$$' ./api/pages
 	cd deploy/check && go test ./...
 	cd api/generated && go vet . && go test .
 	go test -run '^$$' -fuzz '^FuzzRequests$$' -fuzztime 5s ./api
@@ -22,6 +23,7 @@ checks: lint # what runs while the throwaway Postgres is up
 lint: ## Check format, go vet and staticcheck
 	@unformatted="$$(go tool gofumpt -l .)"; if [ -n "$$unformatted" ]; then echo "not formatted (make format):"; echo "$$unformatted"; exit 1; fi
 	go vet ./...
+	go vet -tags e2e ./api/pages
 	go tool staticcheck ./...
 
 .PHONY: format

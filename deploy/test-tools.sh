@@ -11,6 +11,8 @@ fi
 for tool in haproxy sqlite3 curl python3 git; do
 	command -v "$tool" >/dev/null 2>&1 || [ -x "/usr/sbin/$tool" ] || missing="$missing $tool"
 done
+command -v chromium >/dev/null 2>&1 || missing="$missing chromium fonts-liberation"
+command -v pdftotext >/dev/null 2>&1 || missing="$missing poppler-utils"
 command -v promtool >/dev/null 2>&1 || missing="$missing prometheus"
 [ -z "$missing" ] && exit 0
 
