@@ -43,10 +43,6 @@ func (p *PreparedPattern) allFindings(edges [][]edgeDistance, near []neighbour) 
 			say(strength.Note, "countersunk-bearing", "plate "+plate.ID, "common practice, no source", strength.Say(
 				"bearing counts the thickness less the whole depth of the countersink, %v", strength.Length.Of(plate.Thickness-plate.CountersinkDepth)))
 		}
-		if plate.Material.Fsu == 0 && p.outlines[k] != nil {
-			say(strength.Warning, "not-checked", "plate "+plate.ID, "", strength.Say(
-				"the material %q has no %s: shear-out toward the outline is not checked", plate.Material.Name, strength.Fsu))
-		}
 		if plate.AxisAngle == nil {
 			say(strength.Warning, "not-checked", "plate "+plate.ID, "", strength.Say(
 				"it has no axis_angle: sections across its rows, block tearing and buckling between fasteners are not checked"))

@@ -12,24 +12,29 @@ type shearOutCheck struct {
 	place
 	plate int
 	share float64
+	why   *strength.Message
 }
 
 // The planes of shear-out start on the hole at 40° to the load.
 var sinShearOut, cosShearOut = math.Sincos(40 * math.Pi / 180)
 
-// addShearOut adds the shear-out check of plate k at fastener i, where outline
-// and F_su are given; a finding tells where F_su is not.
+// addShearOut adds the shear-out check of plate k at fastener i. Without an
+// outline its bearing is undetermined already.
 func (p *PreparedPattern) addShearOut(i, k int) {
 	plate := &p.pattern.Plates[k]
-	if plate.Material == nil || p.outlines[k] == nil || plate.Material.Fsu == 0 {
+	if plate.Material == nil || p.outlines[k] == nil {
 		return
+	}
+	var why strength.Message
+	if plate.Material.Fsu == 0 {
+		why = strength.Say("the material %q has no %s", plate.Material.Name, strength.Fsu)
 	}
 	mark := strength.Weakest(strength.Derived, plate.Material.MarkOf(strength.Fsu))
 	check := strength.Check{
 		Member: plate.ID, Mode: strength.ShearOut, Level: strength.Ultimate, Unit: strength.Force,
 		Method: methodShearOut, Source: sourceShearOut, Mark: strength.Weakest(p.shearMark(strength.Ultimate), mark),
 	}
-	p.assessments = append(p.assessments, &shearOutCheck{p.place(i, check, safety{}), k, p.loadShare(i, k)})
+	p.assessments = append(p.assessments, &shearOutCheck{p.place(i, check, safety{}), k, p.loadShare(i, k), reason(why)})
 }
 
 // lengths returns the length of each shear plane, from the hole to the outline
@@ -50,6 +55,9 @@ func (a *shearOutCheck) margin(c *caseState) strength.Margin {
 	if !ok {
 		return strength.Margin{}
 	}
+	if a.why != nil {
+		return strength.Unknown(a.why)
+	}
 	rays, _, behind := a.lengths(ux, uy)
 	length := max(min(rays[0].length, rays[1].length)-behind, 0)
 	plate := &a.p.pattern.Plates[a.plate]
@@ -63,7 +71,9 @@ func (a *shearOutCheck) steps() []strength.Working {
 	s.add("y", f.Y, strength.Length, "", "input: fasteners.y", strength.Given)
 	f.holeStep(&s)
 	s.add("t", plate.Thickness, strength.Length, "", "input: plates.thickness", strength.Given)
-	s.add("F_su,plate", plate.Material.Fsu, strength.Stress, "", materialSource(plate.Material), plate.Material.MarkOf(strength.Fsu))
+	if a.why == nil {
+		s.add("F_su,plate", plate.Material.Fsu, strength.Stress, "", materialSource(plate.Material), plate.Material.MarkOf(strength.Fsu))
+	}
 	a.p.shareStep(&s, a.i, a.plate)
 	return append(a.p.shearSteps(a.c.Level), s.steps...)
 }
@@ -72,7 +82,7 @@ func (a *shearOutCheck) caseSteps(c *caseState, i int) []strength.Working {
 	share := a.shareOf(c)
 	steps := a.p.shearCaseSteps(c, i, a.c.Level, a.i)
 	ux, uy, ok := push(a.plate, share)
-	if !ok {
+	if !ok || a.why != nil {
 		return steps
 	}
 	var s allowable

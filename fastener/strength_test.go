@@ -247,3 +247,28 @@ func TestOwnFactorsStandBesideTheInstantaneousCentre(t *testing.T) {
 		}
 	}
 }
+
+// A plate whose shear strength is not given is not adequate in shear-out.
+func TestShearOutNeedsItsStrength(t *testing.T) {
+	p := single()
+	p.Plates[0].Material.Fsu = 0
+	prepared := prepare(t, p, pulled(strength.Ultimate))
+	margins := make([]strength.Margin, len(prepared.Checks()))
+	prepared.Margins(0, margins)
+	found := 0
+	for k, c := range prepared.Checks() {
+		if c.Mode != strength.ShearOut {
+			continue
+		}
+		found++
+		if m := margins[k]; m.Status != strength.Undetermined || !strings.Contains(m.Why.Render(write), "F_su") {
+			t.Errorf("%s: %+v", c.Member, m)
+		}
+		if steps := append(prepared.Workings(k), prepared.CaseWorkings(0, k)...); len(steps) == 0 {
+			t.Errorf("%s: no workings", c.Member)
+		}
+	}
+	if found != 2 {
+		t.Errorf("%d shear-outs", found)
+	}
+}
