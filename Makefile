@@ -52,6 +52,13 @@ bench: ## Measure the pure code
 soak: tools ## Kill the server fifty times under load, and fail every write and fsync of an append
 	JOINTLEDGER_SOAK_KILLS=50 go run ./store/throwaway -- go test -timeout 60m -run 'Killed|FailingDisk' -v .
 
+.PHONY: crosscheck
+crosscheck: ## Compare splices, patterns and lugs with the finite-element program CalculiX, and write the table anew
+	@command -v ccx >/dev/null || { [ "$$(id -u)" = 0 ] && command -v apt-get >/dev/null && apt-get update -qq && \
+		DEBIAN_FRONTEND=noninteractive apt-get install -y -qq --no-install-recommends calculix-ccx >/dev/null; } || \
+		{ echo "The cross-check needs CalculiX (on Debian, as root: apt-get install calculix-ccx)." >&2; exit 1; }
+	go test -tags crosscheck -count=1 -run Crosscheck .
+
 .PHONY: tools
 tools: # what the tests need beside Go: a C compiler for the race detector, and Postgres
 	@deploy/test-tools.sh
