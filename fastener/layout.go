@@ -146,12 +146,21 @@ func (r Rule) bound(f *Fastener, t float64) float64 {
 }
 
 // Asks writes the bound in symbols: D the diameter, D_h the hole, t the
-// thickness, lengths in mm.
-func (r Rule) Asks() string {
+// thickness.
+func (r Rule) Asks() strength.Message {
 	var terms []string
+	var lengths []any
+	length := func(format string, x float64) string {
+		lengths = append(lengths, strength.Length.Of(x))
+		return format
+	}
 	d := "D"
 	if r.OfHole {
 		d = "D_h"
+	}
+	table := ""
+	if len(r.Table) > 0 {
+		table = length("by table up to D %v, above it ", r.Table[len(r.Table)-1].UpTo)
 	}
 	if r.Diameters > 0 {
 		terms = append(terms, fmt.Sprintf("%.4g %s", r.Diameters, d))
@@ -160,16 +169,13 @@ func (r Rule) Asks() string {
 		terms = append(terms, fmt.Sprintf("%g t", r.Thicknesses))
 	}
 	if r.Length > 0 {
-		terms = append(terms, fmt.Sprintf("%g mm", r.Length))
+		terms = append(terms, length("%v", r.Length))
 	}
 	asks := strings.Join(terms, " + ")
 	if r.Cap > 0 {
-		asks = fmt.Sprintf("min(%s, %g mm)", asks, r.Cap)
+		asks = "min(" + asks + ", " + length("%v", r.Cap) + ")"
 	}
-	if len(r.Table) > 0 {
-		last := r.Table[len(r.Table)-1]
-		asks = fmt.Sprintf("by table up to D %g mm, above it %s", last.UpTo, asks)
-	}
+	asks = table + asks
 	switch r.Rows {
 	case SingleRow:
 		asks += ", single row"
@@ -177,9 +183,9 @@ func (r Rule) Asks() string {
 		asks += ", several rows"
 	}
 	if r.When != "" {
-		asks += ", " + r.When
+		asks, lengths = asks+", %s", append(lengths, r.When)
 	}
-	return asks
+	return strength.Say(asks, lengths...)
 }
 
 // worst returns the severest broken rule of a measure.

@@ -198,7 +198,10 @@ func (e *elastic) centre(c PatternCase, index int) (centred, strength.Fault) {
 	alone := len(e.fasteners) == 1
 	switch {
 	case e.slots != nil:
-		if m := e.slots.drift(e, load, nothing); !m.Empty() {
+		if m, slides := e.slots.drift(e, load, nothing); !m.Empty() {
+			if slides {
+				pointer = caseField(index, "force")
+			}
 			return fault(m)
 		}
 	case alone && settle(&load.mz):

@@ -137,11 +137,11 @@ func (s *slotted) motion(load centred) (u, v, turn float64) {
 	return m[0], m[1], m[2] / s.reach
 }
 
-// drift says which free motion a load drives, empty where it drives none.
-// nothing is the moment that counts as none.
-func (s *slotted) drift(e *elastic, load centred, nothing float64) strength.Message {
+// drift says which free motion a load drives, empty where it drives none, and
+// whether it is a slide. nothing is the moment that counts as none.
+func (s *slotted) drift(e *elastic, load centred, nothing float64) (why strength.Message, slides bool) {
 	if s.unequal {
-		return strength.Say("the shear stiffnesses of the fasteners are too far apart to be shared with slots")
+		return strength.Say("the shear stiffnesses of the fasteners are too far apart to be shared with slots"), false
 	}
 	p := [3]float64{load.x, load.y, load.mz / s.reach}
 	var m [3]float64
@@ -153,11 +153,11 @@ func (s *slotted) drift(e *elastic, load centred, nothing float64) strength.Mess
 	}
 	size := math.Sqrt(float64(m[0]*m[0]) + float64(m[1]*m[1]) + float64(m[2]*m[2]))
 	if size <= float64(strength.Within*math.Hypot(load.x, load.y))+nothing/s.reach {
-		return strength.Message{}
+		return strength.Message{}, false
 	}
 	if math.Abs(m[2]) <= slender*size {
 		angle := math.Atan2(m[1], m[0]) * 180 / math.Pi
-		return strength.Say("the slots leave the pattern free to slide along %.4g° from the x axis, and the load drives it that way", angle)
+		return strength.Say("the slots leave the pattern free to slide along %.4g° from the x axis, and the load drives it that way", angle), true
 	}
 	turn := m[2] / s.reach
 	at := func(x float64) strength.Quantity {
@@ -167,7 +167,7 @@ func (s *slotted) drift(e *elastic, load centred, nothing float64) strength.Mess
 		return strength.Length.Of(x)
 	}
 	return strength.Say("the slots leave the pattern free to turn about the point (%v, %v), and the load drives it that way",
-		at(e.xc-m[1]/turn), at(e.yc+m[0]/turn))
+		at(e.xc-m[1]/turn), at(e.yc+m[0]/turn)), false
 }
 
 // distribute adds the shear shares of a load.

@@ -107,6 +107,9 @@ func (s *Splice) sizeFaults() faultList {
 		if row.ShearPlanes < 1 || row.ShearPlanes > 2 {
 			faults.add(at("shear_planes"), "found %d, allowed are 1 and 2", row.ShearPlanes)
 		}
+		if t := row.Type; t != nil && t.Diameter > 0 && (strength.Less(row.Diameter, t.Diameter) || strength.More(row.Diameter, t.Diameter)) {
+			faults.add(at("diameter"), "found %v, but type %q is of %v", strength.Length.Of(row.Diameter), t.Name, strength.Length.Of(t.Diameter))
+		}
 		if row.Type != nil && row.Type.Thread != nil {
 			faults = append(faults, row.Type.Thread.faults(at("type")+"/thread", row.Diameter)...)
 		}

@@ -159,7 +159,7 @@ func Rules(units string) (*RuleSetList, error) {
 func (u Units) ruleItem(r fastener.Rule) RuleItem {
 	length := func(x float64) float64 { return u.out(x, strength.Length) }
 	item := RuleItem{
-		Measure: string(r.Measure), Asks: r.Asks(), Severity: r.Severity.String(),
+		Measure: string(r.Measure), Asks: u.say(r.Asks()), Severity: r.Severity.String(),
 		Diameters: r.Diameters, Thicknesses: r.Thicknesses, Length: length(r.Length), OfHole: r.OfHole, When: text(r.When),
 	}
 	if r.Cap > 0 {
