@@ -38,8 +38,6 @@ func refuseAll(t *testing.T, c client, target string, body []byte, table []spoil
 	}
 }
 
-type object = map[string]any
-
 // TestSplicesThatCannotBe: what no calculation can answer is refused where it
 // stands, and a free motion is named.
 func TestSplicesThatCannotBe(t *testing.T) {
