@@ -20,6 +20,7 @@ const (
 var (
 	eqPus      = Equation{Number: "9-12", Symbol: "P_us", Text: "1.571 (Dp^2 - dp^2) F_su / (2 λ)", Unit: strength.Force, Source: affdlSource, Mark: strength.FromMemory(97)}
 	eqPub      = Equation{Number: "9-13", Symbol: "P_ub", Text: "0.1963 k_b (Dp^4 - dp^4) F_tu / (2 m Dp)", Unit: strength.Force, Source: affdlSource, Mark: strength.FromMemory(97)}
+	eqPyb      = Equation{Symbol: "P_yb", Text: "F_ty Z_p / m", Unit: strength.Force, Source: "text-book strength of materials: a pin in bending, elastic at limit over the whole thicknesses", Mark: strength.Derived}
 	eqPulb1    = Equation{Number: "9-10", Symbol: "P_u.LB1", Text: "min(P_u.L, P_u.B)", Unit: strength.Force, Source: affdlSource + ": one leg of the clevis", Mark: strength.FromMemory(95)}
 	eqPulb2    = Equation{Number: "9-10", Symbol: "P_u.LB2", Text: "min(P_u.L, P_u.B)", Unit: strength.Force, Source: affdlSource + ": the lug", Mark: strength.FromMemory(95)}
 	eqPulb     = Equation{Number: "9-11", Symbol: "P_u.LB", Text: "min(P_u.LB1 / λ, P_u.LB2)", Unit: strength.Force, Source: affdlSource, Mark: strength.FromMemory(95)}
@@ -40,7 +41,7 @@ var (
 )
 
 var affdlJointEquations = []*Equation{
-	&eqPus, &eqPub, &eqPulb1, &eqPulb2, &eqPulb, &eqWeak, &eqPubMax, &eqActive1, &eqActive2, &eqTangK, &eqTangWeak, &eqTang1, &eqTang2, &eqTangs,
+	&eqPus, &eqPub, &eqPinArea, &eqPinModulus, &eqPinArm, &eqPyb, &eqPulb1, &eqPulb2, &eqPulb, &eqWeak, &eqPubMax, &eqActive1, &eqActive2, &eqTangK, &eqTangWeak, &eqTang1, &eqTang2, &eqTangs,
 	&eqStrong, &eqWeakAll, &eqNoTangs, &eqWeakNo, &eqFaceWeak,
 }
 
@@ -213,8 +214,24 @@ func (m *affdl) joint(p *affdlPin) {
 		return fixed(anyWay, s.allow(eqPus.Symbol, p.shearStrength(s)))
 	})
 	m.check(memberPin, strength.PinBending, strength.Ultimate, strength.Force, strength.ByRegulation, &eqPubMax, p.bending)
+	m.pinYield(p.beam)
 	m.check(memberPin, strength.PinCombined, strength.Ultimate, strength.None, strength.ByRegulation, &eqPinCombined, p.combined)
 	m.check(memberJoint, strength.WholeJoint, strength.Ultimate, strength.Force, strength.ByRegulation, &eqWeakAll, p.whole)
+}
+
+// pinYield checks at limit that the pin stays elastic. The manual's k_b of a
+// ductile pin is plastic: at u 1.5 a pin that just holds has 1.04 F_tu, by the
+// elastic formula, at limit. The manual itself asks for no yield strength of the
+// pin, so that one without is only told.
+func (m *affdl) pinYield(b *beam) {
+	if b.pin.Material.Fty == 0 {
+		m.found.add(strength.Warning, "pin-yield-not-checked", memberPin, affdlSource,
+			"the material %q of the pin has no %s: that it stays elastic at limit is not checked", b.pin.Material.Name, strength.Fty)
+		return
+	}
+	m.check(memberPin, strength.PinBending, strength.Limit, strength.Force, strength.ByRegulation, &eqPyb, func(s *sheet) law {
+		return fixed(anyWay, s.allow(eqPyb.Symbol, s.apply(&eqPyb, b.property(s, strength.Fty)*b.modulus(s)/b.arm(s))))
+	})
 }
 
 // needs says why nothing that involves the pin is known.

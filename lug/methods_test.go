@@ -237,3 +237,36 @@ func position(all []string, s string) int {
 	}
 	return -1
 }
+
+// The pin of the Stress Analysis Manual bends plastically at ultimate: that it
+// stays elastic at limit is a check of its own. A 20 mm pin through legs of 7 and
+// a lug of 12 with gaps of 0.5: Z = π 20³/32 = 785.398 mm³, arm (7/2 + 12/4 +
+// 0.5)/2 = 3.5 mm: 950 x 785.398 / 3.5 = 213,179.6 N. A pin without F_ty is told.
+func TestAffdlPinStaysElasticAtLimit(t *testing.T) {
+	find := func(j lug.Joint) (allowable float64, told bool) {
+		p := prepare(t, j, methods(affdl), at(50000, 0))
+		out := make([]strength.Margin, len(p.Checks()))
+		p.Margins(0, out)
+		for k, c := range p.Checks() {
+			if c.Member == "pin" && c.Mode == strength.PinBending && c.Level == strength.Limit {
+				allowable = out[k].Allowable
+				if math.Abs(out[k].Demand-57500) > 1e-9 {
+					t.Errorf("demand %g", out[k].Demand)
+				}
+			}
+		}
+		for _, f := range p.Findings() {
+			told = told || f.Code == "pin-yield-not-checked"
+		}
+		return allowable, told
+	}
+	want := 950 * math.Pi * 8000 / 32 / 3.5
+	if got, told := find(hinge()); math.Abs(got/want-1) > 1e-12 || told {
+		t.Errorf("%g, by hand %g", got, want)
+	}
+	j := hinge()
+	j.Pin.Material.Fty = 0
+	if got, told := find(j); got != 0 || !told {
+		t.Errorf("without F_ty: %g, told %v", got, told)
+	}
+}
