@@ -79,7 +79,8 @@ func drawLug(t *rapid.T) func(in) object {
 	e := w * rapid.Float64Range(0.55, 1.5).Draw(t, "e/W")
 	thickness := d * rapid.Float64Range(0.1, 2).Draw(t, "t/D")
 	offset := w * rapid.Float64Range(-0.1, 0.1).Draw(t, "o/W")
-	taper := rapid.Float64Range(1, 25).Draw(t, "β")
+	// The sides must not meet before the end.
+	taper := rapid.Float64Range(0.05, 0.9).Draw(t, "β") * math.Atan((w/2-math.Abs(offset))/e) * 180 / math.Pi
 	material, factors := drawMaterial(t), drawFactors(t)
 	var angles, forces []float64
 	for range rapid.IntRange(1, 4).Draw(t, "load cases") {
