@@ -17,7 +17,7 @@ checks: lint # what runs while the throwaway Postgres is up
 	go test -tags e2e -run 'InBrowser$$' ./api/pages
 	cd deploy/check && go test ./...
 	cd api/generated && go vet . && go test .
-	go test -run '^$$' -fuzz '^FuzzRequests$$' -fuzztime 5s ./api
+	go test -run '^$$' -fuzz '^FuzzRequests$$' -fuzztime 5s -fuzzminimizetime 10x ./api/fuzzing
 
 .PHONY: lint
 lint: ## Check format, go vet and staticcheck
