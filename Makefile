@@ -45,8 +45,13 @@ vuln: ## Look for known vulnerabilities in what the program calls (needs a vulne
 	@deploy/vuln.sh
 
 .PHONY: bench
-bench: ## Measure the pure code
-	go test -run '^$$' -bench . -benchmem ./lug ./fastener ./service/... ./store
+bench: tools ## Measure against bare Echo, pgbench and raw commits; keep a dated table in deploy/bench (takes half an hour)
+	@command -v wrk >/dev/null || apt-get install -y -qq --no-install-recommends wrk >/dev/null
+	go run ./deploy/bench -o deploy/bench/$$(date -u +%F).md
+
+.PHONY: microbench
+microbench: ## Run the benchmarks of single functions
+	go run ./store/throwaway -- go test -run '^$$' -bench . -benchmem ./lug ./fastener ./service/... ./store
 
 .PHONY: soak
 soak: tools ## Kill the server fifty times under load, and fail every write and fsync of an append

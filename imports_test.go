@@ -48,6 +48,7 @@ var mayImport = map[string][]string{
 	"api/pages":          {"service", "strength", yaml},
 	"api/client":         {"service/strictjson"},
 	"notice":             {"service", "service/strictjson"},
+	"deploy/bench":       {"lug", "fastener", "strength", "service", "service/ledger", "service/strictjson", "store", "store/storetest", json, echo, sqlite},
 	".": {
 		"strength", "lug", "fastener", "service", "service/ledger", "service/strictjson", "store", "api", "api/client", "notice", kong, netutil,
 	},

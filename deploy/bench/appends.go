@@ -1,0 +1,197 @@
+package main
+
+import (
+	"context"
+	"database/sql"
+	"fmt"
+	"net/http"
+	"net/url"
+	"os"
+	"os/exec"
+	"path/filepath"
+	"regexp"
+	"strconv"
+	"sync"
+	"sync/atomic"
+	"time"
+
+	_ "modernc.org/sqlite" // the driver of the raw commits
+
+	"jointledger/store/storetest"
+)
+
+// appends compares records a second, each a calculation, with what the engine
+// itself commits: pgbench inserting single rows, and single rows into SQLite by
+// its driver, both with the same durability.
+func appends(ctx context.Context, b *bench) error {
+	b.report.table("engine", "clients", "records/s", "single-row commits/s", "ratio", "spread", "")
+	if err := b.appendsPostgres(ctx); err != nil {
+		return err
+	}
+	return b.appendsSQLite(ctx)
+}
+
+// comparison is one line of the table.
+type comparison struct {
+	engine, want string
+	clients      int
+	reached      func(ratio float64) bool
+	ours, base   func() (float64, error)
+}
+
+func (b *bench) compare(c comparison) error {
+	var ours, base, ratios []float64
+	for range b.rounds {
+		x, err := c.ours()
+		if err != nil {
+			return err
+		}
+		y, err := c.base()
+		if err != nil {
+			return err
+		}
+		ours, base, ratios = append(ours, x), append(base, y), append(ratios, x/y)
+	}
+	says := ""
+	if c.want != "" {
+		says = reach(c.reached(median(ratios)), c.want)
+	}
+	b.report.row(c.engine, c.clients, median(ours), median(base), median(ratios), spread(ratios), says)
+	return nil
+}
+
+func (b *bench) appendsPostgres(ctx context.Context) error {
+	cluster, err := storetest.NewCluster()
+	if err != nil {
+		return err
+	}
+	defer func() { _ = cluster.Remove() }()
+	data, err := os.MkdirTemp(b.dir, "data-")
+	if err != nil {
+		return err
+	}
+	p, err := b.serve("--data", data, "--database-url", cluster.URL())
+	if err != nil {
+		return err
+	}
+	defer func() { _ = p.stop() }()
+	script := filepath.Join(b.dir, "insert.sql")
+	if err := os.WriteFile(script, []byte("INSERT INTO bench (text) VALUES ('a row of a usual length for a baseline, sixty-four bytes of it');\n"), 0o644); err != nil {
+		return err
+	}
+	tool := func(name string, args ...string) (string, error) {
+		cmd := exec.CommandContext(ctx, filepath.Join(cluster.Bin(), name), args...)
+		cmd.Env = append(os.Environ(), "PGHOST="+cluster.Dir(), "PGUSER=postgres", "PGDATABASE=postgres")
+		out, err := cmd.CombinedOutput()
+		if err != nil {
+			err = fmt.Errorf("%s: %w\n%s", name, err, out)
+		}
+		return string(out), err
+	}
+	if _, err := tool("psql", "-qc", "CREATE TABLE bench (id bigint GENERATED ALWAYS AS IDENTITY PRIMARY KEY, text text NOT NULL)"); err != nil {
+		return err
+	}
+	tps := regexp.MustCompile(`tps = ([0-9.]+)`)
+	for _, clients := range []int{1, 8, 32} {
+		c := comparison{engine: "Postgres", clients: clients}
+		switch clients {
+		case 1:
+			c.want, c.reached = "≥ 0.8", func(r float64) bool { return r >= 0.8 }
+		case 32:
+			c.want, c.reached = "≥ 1.2", func(r float64) bool { return r >= 1.2 }
+		}
+		c.ours = func() (float64, error) { return recordsASecond(ctx, p, clients, b.each) }
+		c.base = func() (float64, error) {
+			out, err := tool("pgbench", "--no-vacuum", "--protocol=prepared", "--client="+strconv.Itoa(clients), "--jobs="+strconv.Itoa(min(clients, 2)),
+				"--time="+strconv.Itoa(max(1, int(b.each.Seconds()))), "--file="+script)
+			if err != nil {
+				return 0, err
+			}
+			found := tps.FindStringSubmatch(out)
+			if found == nil {
+				return 0, fmt.Errorf("pgbench says no rate:\n%s", out)
+			}
+			return strconv.ParseFloat(found[1], 64)
+		}
+		if err := b.compare(c); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func (b *bench) appendsSQLite(ctx context.Context) error {
+	data, err := os.MkdirTemp(b.dir, "data-")
+	if err != nil {
+		return err
+	}
+	p, err := b.serve("--data", data)
+	if err != nil {
+		return err
+	}
+	defer func() { _ = p.stop() }()
+	// As the store opens its own.
+	raw, err := sql.Open("sqlite", "file:"+url.PathEscape(filepath.Join(b.dir, "raw.sqlite"))+"?_pragma=journal_mode(WAL)&_pragma=synchronous(FULL)&_txlock=immediate")
+	if err != nil {
+		return err
+	}
+	defer raw.Close()
+	raw.SetMaxOpenConns(1)
+	if _, err := raw.ExecContext(ctx, `CREATE TABLE bench (id INTEGER PRIMARY KEY, text TEXT NOT NULL)`); err != nil {
+		return err
+	}
+	insert, err := raw.PrepareContext(ctx, `INSERT INTO bench (text) VALUES ('a row of a usual length for a baseline, sixty-four bytes of it')`)
+	if err != nil {
+		return err
+	}
+	for _, clients := range []int{1, 8, 32} {
+		c := comparison{engine: "SQLite", clients: clients}
+		if clients == 32 {
+			c.want, c.reached = "≥ 4", func(r float64) bool { return r >= 4 }
+		}
+		c.ours = func() (float64, error) { return recordsASecond(ctx, p, clients, b.each) }
+		c.base = func() (float64, error) {
+			start, n := time.Now(), 0
+			for ; time.Since(start) < b.each; n++ {
+				if _, err := insert.ExecContext(ctx); err != nil {
+					return 0, err
+				}
+			}
+			return float64(n) / time.Since(start).Seconds(), nil
+		}
+		if err := b.compare(c); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+var recordNumber atomic.Int64
+
+// recordsASecond lets clients record one after another.
+func recordsASecond(ctx context.Context, p *process, clients int, during time.Duration) (float64, error) {
+	client := http.Client{Timeout: 30 * time.Second, Transport: &http.Transport{MaxIdleConnsPerHost: clients, MaxConnsPerHost: clients}}
+	defer client.CloseIdleConnections()
+	var done atomic.Int64
+	var failed atomic.Value
+	var all sync.WaitGroup
+	start := time.Now()
+	for range clients {
+		all.Go(func() {
+			for time.Since(start) < during {
+				n := recordNumber.Add(1)
+				body := fmt.Appendf(nil, `{"subject":{"part":"SM-%d","revision":"A","joint":"J%d"},"geometry_digest":"sha256:00","kind":"lug","input":%s}`, n%1000, n/1000, typicalLug)
+				if err := ask(ctx, &client, p, "/v1/records", body, "bench-"+strconv.FormatInt(n, 10)); err != nil {
+					failed.Store(err)
+					return
+				}
+				done.Add(1)
+			}
+		})
+	}
+	all.Wait()
+	if err, _ := failed.Load().(error); err != nil {
+		return 0, err
+	}
+	return float64(done.Load()) / time.Since(start).Seconds(), nil
+}
