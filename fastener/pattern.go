@@ -333,6 +333,9 @@ func (p *PreparedPattern) Cautions() []string {
 		"The attached member is taken as rigid: prying and the flexibility of flanges and plates are left out and may raise the tension and shear of single fasteners.",
 		"Each fastener is taken to fill its hole and to share by stiffness alone: clearances, friction and yielding are left out.",
 	}
+	if slices.ContainsFunc(p.checks, func(c strength.Check) bool { return c.Mode == strength.ShearOut }) {
+		cautions = append(cautions, "Shear-out runs to the outline as if no other hole stood in its way: where fasteners follow each other along the load at less than 3 D, it is not on the safe side; a rule of pitch tells.")
+	}
 	if p.centre != nil {
 		cautions = append(cautions, "The curve of the instantaneous centre was measured on high-strength steel bolts in bearing; for other fasteners its shares at ultimate are an assumption.")
 	}
