@@ -14,7 +14,7 @@ test: tools ## Run everything: format, vet, staticcheck, tests with the race det
 .PHONY: checks
 checks: lint # what runs while the throwaway Postgres is up
 	go test -race -timeout 15m ./...
-	go test -tags e2e -run 'InBrowser$$' ./api/pages
+	go test -tags e2e -run 'InBrowser$$|InTime$$' ./api/pages
 	cd deploy/check && go test ./...
 	cd api/generated && go vet . && go test .
 	go test -run '^$$' -fuzz '^FuzzRequests$$' -fuzztime 5s -fuzzminimizetime 10x ./api/fuzzing

@@ -5,6 +5,7 @@ import (
 	"crypto/rand"
 	"crypto/sha256"
 	"encoding/base64"
+	"errors"
 	"net/http"
 	"net/url"
 	"strings"
@@ -100,7 +101,8 @@ func (p *Pages) signInForm(v *visit) error {
 func (p *Pages) signIn(v *visit) error {
 	to := safeBack(v.r.PostForm.Get("to"))
 	token, err := p.service.SignIn(v.r.Context(), strings.TrimSpace(v.r.PostForm.Get("key")))
-	if status, _ := p.options.Explain(err); err != nil && status == http.StatusUnauthorized {
+	var problem *service.Problem
+	if errors.As(err, &problem) && problem.Code == service.Unauthenticated {
 		p.show(v, http.StatusUnauthorized, "sign-in", "Sign in", signInContent{To: to, Wrong: "This API key is not known here, or was revoked."})
 		return nil
 	}

@@ -119,7 +119,7 @@ var trials = map[service.Kind]struct {
 	read  func(f *form, methods []string) any
 }{
 	service.Lug: {"/v1/lugs", map[string]string{
-		"units": "SI", "title": "SM-214 boom hinge", "shape": "round", "width": "80", "thickness": "12", "hole_diameter": "25", "edge_distance": "40",
+		"units": "SI", "title": "SM-214 boom hinge", "shape": "round", "width": "80", "thickness": "12", "hole_diameter": "20", "edge_distance": "40",
 		"taper_angle": "", "offset": "", "material": "7050-T7451-plate-0.250-1.500-L", "pin_diameter": "20", "pin_material": "", "bushing_material": "",
 		"clevis_thickness": "7", "gap": "0.5", "clevis_material": "7050-T7451-plate-0.250-1.500-L", "ultimate": "1.5", "fitting": "1.15",
 		"load_cases": "landing limit 42000 0\nbraking limit 30000 0", "methods": "elementary",
