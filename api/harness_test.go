@@ -92,11 +92,11 @@ type client struct {
 // serve starts a server without keys on an empty store.
 func serve(t testing.TB, empty service.Store) client {
 	t.Helper()
-	return serveWith(t, empty, 0)
+	return serveWith(t, empty, api.Options{})
 }
 
-// serveWith starts one that limits the rate of each caller.
-func serveWith(t testing.TB, empty service.Store, perSecond float64) client {
+// serveWith starts one with options of its own.
+func serveWith(t testing.TB, empty service.Store, options api.Options) client {
 	t.Helper()
 	engine := storetest.NewFaulty(empty)
 	text, err := ledger.GenerateKey(rand.Reader, "saltmarsh.example/jointledger")
@@ -118,7 +118,8 @@ func serveWith(t testing.TB, empty service.Store, perSecond float64) client {
 	if err != nil {
 		t.Fatal(err)
 	}
-	handler := api.New(s, api.Options{Log: log, Metrics: metrics, RateLimit: perSecond, OpenAPI: theDocument(t).bytes})
+	options.Log, options.Metrics, options.OpenAPI = log, metrics, theDocument(t).bytes
+	handler := api.New(s, options)
 	server := httptest.NewUnstartedServer(nil)
 	server.Config = api.Serve(handler, log)
 	server.Start()
@@ -219,6 +220,14 @@ func (a answer) want(t testing.TB, status int) answer {
 // do makes a call and holds the exchange against the document.
 func (c client) do(t testing.TB, what call) answer {
 	t.Helper()
+	a, request, response := c.exchange(t, what)
+	a.hold(t, request, response)
+	return a
+}
+
+// exchange makes a call.
+func (c client) exchange(t testing.TB, what call) (answer, *http.Request, *http.Response) {
+	t.Helper()
 	request, err := http.NewRequestWithContext(t.Context(), what.method, c.url+what.target, bytes.NewReader(what.body))
 	if err != nil {
 		t.Fatal(err)
@@ -244,8 +253,7 @@ func (c client) do(t testing.TB, what call) answer {
 	response.Body.Close()
 	a := answer{what, response.StatusCode, response.Header, body, nil}
 	request.Host = ""
-	a.hold(t, request, response)
-	return a
+	return a, request, response
 }
 
 // hold holds an exchange against the document: the answer always, the request
@@ -280,8 +288,8 @@ func (a *answer) hold(t testing.TB, request *http.Request, response *http.Respon
 	}
 	d.holdLines(t, where, documented, a.body)
 	for name := range a.header {
-		// What every HTTP server says about its own framing.
-		if slices.Contains([]string{"Content-Length", "Content-Type", "Date", "X-Content-Type-Options", "Connection", "Vary"}, name) {
+		// What HTTP servers say about their framing, and to browsers.
+		if slices.Contains([]string{"Content-Length", "Content-Type", "Date", "X-Content-Type-Options", "Connection", "Vary"}, name) || strings.HasPrefix(name, "Access-Control-") {
 			continue
 		}
 		known := false

@@ -9,6 +9,7 @@ import (
 	"strings"
 	"testing"
 
+	"jointledger/api"
 	"jointledger/service"
 	"jointledger/store/storetest"
 )
@@ -21,7 +22,9 @@ func edited(t testing.TB, document []byte, changes map[string]any) []byte {
 	if err := json.Unmarshal(document, &root); err != nil {
 		t.Fatal(err)
 	}
-	for pointer, value := range changes {
+	// Parents before what is below them.
+	for _, pointer := range sortedKeys(changes) {
+		value := changes[pointer]
 		tokens := strings.Split(pointer, "/")[1:]
 		at := root
 		for i, token := range tokens {
@@ -373,7 +376,7 @@ func TestMessagesAreInTheUnitsOfTheQuestion(t *testing.T) {
 // TestRateLimit: with a rate each caller has its own, and who has used it up
 // is told when to come back.
 func TestRateLimit(t *testing.T) {
-	c := serveWith(t, storetest.SQLite(t), 0.001)
+	c := serveWith(t, storetest.SQLite(t), api.Options{RateLimit: 0.001})
 	w := world{record: "0198f3a4-7a2c-7000-8000-000000000000", curves: "none@1"}
 	a := c.do(t, get("/v1/rules")).want(t, http.StatusOK)
 	if a.header.Get("RateLimit") != `"caller";r=0;t=1000` || a.header.Get("RateLimit-Policy") != `"caller";q=1;w=1` {
