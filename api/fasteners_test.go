@@ -50,11 +50,10 @@ func TestSplicesThatCannotBe(t *testing.T) {
 		{"unbalanced end loads", object{"/load_cases/0/ends/0/left": 990}, []string{"/load_cases/0/ends"}, "out of balance by 10 lbf"},
 		{"an end load of nobody", object{"/load_cases/0/ends/0/member": "skin"}, []string{"/load_cases/0/ends/0/member"}, `no member "skin"`},
 		{"a member twice", object{"/load_cases/0/ends/1/member": "cap"}, []string{"/load_cases/0/ends/1/member"}, "named twice"},
-		{"a member without a path", object{"/members": []any{
-			object{"id": "cap", "e": 1.05e7, "bays": []any{bay, bay, bay}},
-			object{"id": "strap", "e": 1.05e7, "first_row": 1, "last_row": 2, "bays": []any{bay}},
-			object{"id": "stub", "e": 1.05e7, "first_row": 3, "last_row": 4, "bays": []any{bay}},
-		}, "/load_cases/0/ends": []any{}, "/members/0/last_row": 2, "/members/0/bays": []any{bay}}, []string{"/members", "/members/2"}, `the member "stub" has no path`},
+		{"a member without a path", object{
+			"/members":           []any{pair("cap", 1), pair("strap", 1), object{"id": "stub", "e": 1.05e7, "first_row": 3, "last_row": 4, "bays": []any{bay}}},
+			"/load_cases/0/ends": []any{},
+		}, []string{"/members", "/members/2"}, `the member "stub" has no path`},
 		{"rows outside a member", object{"/members/1/last_row": 5}, []string{"/members/1/last_row"}, "allowed are rows 1 to 4"},
 		{"a first row after the last", object{"/members/1/first_row": 3, "/members/1/last_row": 2, "/members/1/bays": []any{}}, []string{"/members/1/last_row"}, "allowed are rows 3 to 4"},
 		{"too few bays", object{"/members/0/bays": []any{bay}}, []string{"/members/0/bays"}, "found 1 bays"},

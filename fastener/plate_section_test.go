@@ -135,6 +135,22 @@ func TestRowsTurnWithTheLoad(t *testing.T) {
 	})
 }
 
+// An axis just short of a whole turn is no axis the other way round.
+func TestAxisOfAPlate(t *testing.T) {
+	for _, turns := range []float64{-2, -1, 0, 1, 2} {
+		for quarter := range 4 {
+			for _, off := range []float64{-1e-9, -2.2e-14, -1e-300, 0, 1e-300, 2.2e-14, 1e-9} {
+				degrees := 360*turns + 90*float64(quarter) + off
+				cos, sin := (&Plate{AxisAngle: &degrees}).axis()
+				want := [4][2]float64{{1, 0}, {0, 1}, {-1, 0}, {0, -1}}[quarter]
+				if math.Hypot(cos-want[0], sin-want[1]) > 1e-10 {
+					t.Errorf("%v° points to (%v, %v)", degrees, cos, sin)
+				}
+			}
+		}
+	}
+}
+
 func TestStaggeredRowsAreTold(t *testing.T) {
 	pull := PatternCase{ID: "LC1", Level: strength.Ultimate, Point: [3]float64{200, 50, 0}, Force: [3]float64{40e3, 0, 0}}
 	p := strap()

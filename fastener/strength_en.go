@@ -370,13 +370,20 @@ func (p *Plate) axis() (cos, sin float64) {
 	if p.AxisAngle == nil {
 		return 1, 0
 	}
-	n := across(*p.AxisAngle)
-	cos, sin = n[1], -n[0]
-	// across folds into half a turn.
-	if turned := math.Mod(math.Mod(*p.AxisAngle, 360)+360, 360); turned >= 180 {
-		return -cos, -sin
+	// Not folded into a positive turn: what rounds to one would point back.
+	switch turned := math.Mod(*p.AxisAngle, 360); turned {
+	case 0:
+		return 1, 0
+	case 90, -270:
+		return 0, 1
+	case 180, -180:
+		return -1, 0
+	case 270, -90:
+		return 0, -1
+	default:
+		sin, cos = math.Sincos(turned * math.Pi / 180)
+		return cos, sin
 	}
-	return cos, sin
 }
 
 // addENFastener adds the checks of fastener i by EN 1993-1-8. The check of the
