@@ -9,6 +9,7 @@ import (
 	"sync"
 	"testing"
 
+	"github.com/pb33f/go-yaml"
 	"github.com/pb33f/libopenapi"
 	validator "github.com/pb33f/libopenapi-validator"
 	"github.com/pb33f/libopenapi-validator/config"
@@ -161,6 +162,22 @@ func TestDocumentIsOpenAPI(t *testing.T) {
 			t.Error(err)
 		}
 	}
+	// A comma in a text without quotes makes a member without a value of what
+	// follows it, which no validator minds.
+	var root yaml.Node
+	if err := yaml.Unmarshal(d.bytes, &root); err != nil {
+		t.Fatal(err)
+	}
+	var walk func(*yaml.Node)
+	walk = func(n *yaml.Node) {
+		for i, child := range n.Content {
+			if n.Kind == yaml.MappingNode && i%2 == 1 && child.Tag == "!!null" && n.Content[i-1].Value != "between" {
+				t.Errorf("line %d: %q has no value", child.Line, n.Content[i-1].Value)
+			}
+			walk(child)
+		}
+	}
+	walk(&root)
 	ids := map[string]bool{}
 	for _, op := range d.operations() {
 		where := op.method + " " + op.path
