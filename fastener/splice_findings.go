@@ -19,8 +19,11 @@ func (p *PreparedSplice) allFindings() []strength.Finding {
 	}
 	untyped := 0
 	for r := range s.Rows {
-		if s.Rows[r].Type == nil {
+		switch t := s.Rows[r].Type; {
+		case t == nil:
 			untyped++
+		case t.Preload != nil || t.PullThroughStrength > 0:
+			say(strength.Note, "not-used", fmt.Sprintf("row %d", r+1), strength.Say("preload and pull_through_strength of its type are not read: the rows carry no tension"))
 		}
 		if k.rows[r+1]-k.rows[r] == 1 {
 			say(strength.Warning, "row-joins-nothing", fmt.Sprintf("row %d", r+1), strength.Say("only the member %q lies at row %d: its fasteners carry nothing",

@@ -424,3 +424,33 @@ func BenchmarkSpliceLoadCase(b *testing.B) {
 		p.Transfers(i, &out)
 	}
 }
+
+// Tension data of a row's type is told to be unread, not dropped silently.
+func TestRowsTellWhatTheyDoNotRead(t *testing.T) {
+	s := Splice{
+		Compliance: ComplianceGiven,
+		Members: []Member{
+			{ID: "cap", E: 70000, Bays: []Bay{{2, 30}}},
+			{ID: "strap", E: 70000, Bays: []Bay{{2, 30}}},
+		},
+		Pitches: []float64{25},
+		Rows: []Row{
+			{Diameter: 5, Compliance: 1e-5, Type: &Type{ShearStrength: 9000, PullThroughStrength: 4000}},
+			{Diameter: 5, Compliance: 1e-5, Type: &Type{ShearStrength: 9000}},
+		},
+	}
+	cases := []SpliceCase{{ID: "LC1", Level: strength.Limit, Ends: []End{{Member: "cap", Left: 1000}, {Member: "strap", Right: 1000}}}}
+	p, faults := PrepareSplice(s, strength.Factors{Ultimate: 1.5, Fitting: 1.15}, cases)
+	if len(faults) > 0 {
+		t.Fatal(faults)
+	}
+	var told []string
+	for _, f := range p.Findings() {
+		if f.Code == "not-used" {
+			told = append(told, f.Subject)
+		}
+	}
+	if len(told) != 1 || told[0] != "row 1" {
+		t.Errorf("told of %v, want row 1", told)
+	}
+}
