@@ -85,7 +85,7 @@ type CaseTransfers struct {
 	// Contact tells how hole clearances were taken up, null without them.
 	Contact *Contact `json:"contact"`
 	// Plastic is the load of each interface if every row yields, row by row
-	// in the order of rows; null where it does not follow from the end loads.
+	// in the order of rows; empty where it does not follow from the end loads.
 	Plastic []float64 `json:"plastic"`
 }
 
