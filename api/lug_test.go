@@ -1,6 +1,7 @@
 package api_test
 
 import (
+	"encoding/json"
 	"math"
 	"net/http"
 	"slices"
@@ -202,6 +203,50 @@ func TestDefaultsFollowAtEachCorner(t *testing.T) {
 	c.do(t, post("/v1/lugs", edited(t, joint, map[string]any{"/bushing/length": 10}))).decode(t, http.StatusOK, &a)
 	if bushing := a.check(t, "bushing", "bushing-bearing", "limit", ""); !near(bushing.Allowable, 80000, 1e-6) {
 		t.Errorf("%v", *bushing.Allowable)
+	}
+}
+
+// TestEveryLengthMayHaveATolerance: those of the document, one by one.
+func TestEveryLengthMayHaveATolerance(t *testing.T) {
+	c := serve(t, storetest.SQLite(t))
+	lengths := map[string]string{"LugHead": "/lug", "Clevis": "/clevis", "Pin": "/pin", "Bushing": "/bushing"}
+	full := edited(t, example(t, "calculateLug", "clevisJoint"), map[string]any{
+		"/lug/edge_distance": 42, "/lug/end_radius": 46, "/lug/offset": 1, "/lug/body_width": 80, "/lug/body_length": 90, "/pin/inner_diameter": 5, "/bushing/length": 12, "/bushing/interference": 0.02,
+		"/clevis/edge_distance": 42, "/clevis/end_radius": 46, "/clevis/offset": 1, "/clevis/body_width": 80, "/clevis/body_length": 90, "/clevis/bushing/length": 7, "/clevis/bushing/interference": 0.02,
+	})
+	var joint any
+	if err := json.Unmarshal(full, &joint); err != nil {
+		t.Fatal(err)
+	}
+	tried := 0
+	try := func(pointer string) {
+		t.Helper()
+		tried++
+		at := joint
+		for _, token := range strings.Split(pointer, "/")[1:] {
+			at = at.(map[string]any)[token]
+		}
+		nominal, ok := at.(float64)
+		if !ok {
+			t.Fatalf("the example has no length at %s", pointer)
+		}
+		var a lugAnswer
+		c.do(t, post("/v1/lugs", edited(t, full, map[string]any{pointer: map[string]any{"nominal": nominal, "minus": 0, "plus": 0.001}}))).decode(t, http.StatusOK, &a)
+		if a.Checks[0].NominalMargin == nil {
+			t.Errorf("%s: there is no nominal margin", pointer)
+		}
+	}
+	for name, at := range lengths {
+		for member, schema := range theDocument(t).model.Components.Schemas.GetOrZero(name).Schema().Properties.FromOldest() {
+			if strings.HasSuffix(schema.GetReference(), "Length") || strings.HasSuffix(schema.GetReference(), "LengthOrZero") {
+				try(at + "/" + member)
+			}
+		}
+	}
+	try("/clevis/bushing/length")
+	try("/clevis/bushing/interference")
+	if tried != 23 {
+		t.Errorf("%d lengths, and there are 23", tried)
 	}
 }
 

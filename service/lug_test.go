@@ -6,7 +6,9 @@ import (
 	"fmt"
 	"maps"
 	"math"
+	"os"
 	"slices"
+	"strconv"
 	"strings"
 	"testing"
 
@@ -260,5 +262,50 @@ func TestSizedLugsHold(t *testing.T) {
 	})
 	if found == 0 {
 		t.Error("nothing was ever found")
+	}
+}
+
+// The README follows a clevis joint by hand: each row of its table is a working
+// of the answer to its request, to the digits that stand there.
+func TestReadmeFollowsTheClevisJoint(t *testing.T) {
+	text, err := os.ReadFile("../README.md")
+	if err != nil {
+		t.Fatal(err)
+	}
+	_, section, found := strings.Cut(string(text), "## A clevis joint")
+	section, _, ends := strings.Cut(section, "\n## ")
+	_, request, asks := strings.Cut(section, "--json '")
+	request, rest, closed := strings.Cut(request, "'\n")
+	if !found || !ends || !asks || !closed {
+		t.Fatal("the README has no such section")
+	}
+	r, err := service.Calculate(service.Lug, []byte(request), service.View{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	rows := 0
+	for line := range strings.Lines(rest) {
+		cells := strings.Split(strings.TrimSpace(line), "|")
+		if len(cells) != 6 || !strings.HasPrefix(cells[2], " `") {
+			continue
+		}
+		rows++
+		member, symbol, printed := strings.TrimSpace(cells[1]), strings.Trim(cells[2], " `"), strings.TrimSpace(cells[4])
+		want, err := strconv.ParseFloat(printed, 64)
+		if err != nil {
+			t.Fatal(line)
+		}
+		_, decimals, _ := strings.Cut(printed, ".")
+		if !slices.ContainsFunc(r.Workings, func(w service.Working) bool {
+			return w.Member == member && w.Symbol == symbol && math.Abs(w.Value-want) <= 0.5001*math.Pow10(-len(decimals))
+		}) {
+			t.Errorf("no working of the %s has %s = %s", member, symbol, printed)
+		}
+	}
+	if rows < 20 {
+		t.Errorf("the table has %d rows", rows)
+	}
+	if g := r.Governing; g.Mode != "pin-combined" || math.Abs(*g.Margin-0.588) > 0.0005 {
+		t.Errorf("%s governs with %v", g.Mode, *g.Margin)
 	}
 }
