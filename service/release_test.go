@@ -543,10 +543,11 @@ func TestTextOfADecision(t *testing.T) {
 	}
 }
 
-// BenchmarkRelease judges a part of 500 joints.
+// BenchmarkRelease judges a part of 500 joints, each record signed twice, among
+// 100,000 records in Postgres.
 func BenchmarkRelease(b *testing.B) {
-	store := storetest.SQLite(b)
-	s := openWith(b, store, "", service.Unwatched{})
+	store, signer := storetest.Postgres(b), newSigner(b)
+	s := open(b, store, signer)
 	joints := make([]string, 500)
 	var work sync.WaitGroup
 	for i := range joints {
@@ -554,10 +555,53 @@ func BenchmarkRelease(b *testing.B) {
 		work.Go(func() { put(b, s, recordOf(joints[i], "", "lug", hingeLug), both...) })
 	}
 	work.Wait()
+	fill(b, store, signer, 100_000-len(joints))
 	body := ask("default", joints...)
 	for b.Loop() {
 		if d, _, err := s.Judge(b.Context(), vault, body, true, service.Idempotency{}); err != nil || d.Decision != service.Release {
 			b.Fatal(d, err)
+		}
+	}
+}
+
+// fill appends copies of the first record under other parts and ids.
+func fill(b *testing.B, store service.Store, signer service.Signer, n int) {
+	b.Helper()
+	ctx := b.Context()
+	first, err := store.Entry(ctx, 0)
+	if err != nil {
+		b.Fatal(err)
+	}
+	for made := 0; made < n; {
+		head, err := store.Head(ctx)
+		if err != nil {
+			b.Fatal(err)
+		}
+		batch := service.Batch{Base: head}
+		var leaves []ledger.Hash
+		for range min(256, n-made) {
+			part := fmt.Sprintf("SM-%d", 10_000+made/500)
+			id := fmt.Sprintf("00000000-0000-7000-8000-%012d", made)
+			e, err := service.EntryOf([]byte(strings.NewReplacer(first.ID, id, "SM-1200", part, "joint-0", fmt.Sprintf("joint-%d", made%500)).Replace(string(first.Bytes))))
+			if err != nil {
+				b.Fatal(err)
+			}
+			e.Index = head.Size + int64(len(leaves))
+			batch.Entries, leaves = append(batch.Entries, e), append(leaves, e.Leaf)
+			made++
+		}
+		hashes, _, root, err := ledger.Grow(ledger.Tree{Size: head.Size, Root: head.Root}, leaves, func(indexes []int64) ([]ledger.Hash, error) {
+			return store.Hashes(ctx, indexes)
+		})
+		if err != nil {
+			b.Fatal(err)
+		}
+		batch.Hashes, batch.Head = hashes, service.Head{Size: head.Size + int64(len(leaves)), Root: root}
+		if batch.Head.Checkpoint, err = signer.Checkpoint(batch.Head.Size, root); err != nil {
+			b.Fatal(err)
+		}
+		if err := store.Append(ctx, batch); err != nil {
+			b.Fatal(err)
 		}
 	}
 }
