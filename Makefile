@@ -48,6 +48,7 @@ vuln: ## Look for known vulnerabilities in what the program calls (needs a vulne
 bench: tools ## Measure against bare Echo, pgbench and raw commits; keep a dated table in deploy/bench (takes half an hour)
 	@command -v wrk >/dev/null || apt-get install -y -qq --no-install-recommends wrk >/dev/null
 	go run ./deploy/bench -o deploy/bench/$$(date -u +%F).md
+	go run ./store/throwaway -- go test -run '^$$' -bench '^Benchmark(Batches|Release)$$' -benchtime 50x . ./service
 
 .PHONY: microbench
 microbench: ## Run the benchmarks of single functions

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"sort"
+	"strconv"
 	"strings"
 
 	"jointledger/service/strictjson"
@@ -145,12 +146,23 @@ func (p *Problem) Under(member string) *Problem {
 
 var escapeToken = strings.NewReplacer("~", "~0", "/", "~1")
 
-// pointer joins tokens into a JSON pointer.
+// pointer joins tokens into a JSON pointer. Documents make many of them that
+// nobody reads.
 func pointer(tokens ...any) string {
-	var b strings.Builder
+	b := make([]byte, 0, 48)
 	for _, t := range tokens {
-		b.WriteByte('/')
-		b.WriteString(escapeToken.Replace(fmt.Sprint(t)))
+		b = append(b, '/')
+		switch t := t.(type) {
+		case int:
+			b = strconv.AppendInt(b, int64(t), 10)
+		case string:
+			if strings.ContainsAny(t, "~/") {
+				t = escapeToken.Replace(t)
+			}
+			b = append(b, t...)
+		default:
+			b = append(b, escapeToken.Replace(fmt.Sprint(t))...)
+		}
 	}
-	return b.String()
+	return string(b)
 }
