@@ -259,12 +259,16 @@ func (p *Prepared) Workings(c int) []strength.Working {
 	return s.record.lines
 }
 
+// usualSteps is how many a check has as a rule.
+const usualSteps = 16
+
 // fresh is a sheet on which the steps of a check are written to be read.
 func (p *Prepared) fresh(c int, loadCase string) *sheet {
 	check := &p.checks[c]
-	return &sheet{record: &record{heading: strength.Working{
-		Member: check.Member, Method: check.Method, Mode: check.Mode, Level: check.Level, LoadCase: loadCase,
-	}}}
+	return &sheet{record: &record{
+		heading: strength.Working{Member: check.Member, Method: check.Method, Mode: check.Mode, Level: check.Level, LoadCase: loadCase},
+		lines:   make([]strength.Working, 0, usualSteps),
+	}}
 }
 
 // CaseWorkings returns the steps behind check c that load case i makes: the

@@ -121,7 +121,7 @@ func materialSource(m *strength.Material) string {
 // keep adds a line unless it stands there already.
 func (s *sheet) keep(w strength.Working) {
 	for i := range s.record.lines {
-		if s.record.lines[i] == w {
+		if s.record.lines[i].Symbol == w.Symbol && s.record.lines[i] == w {
 			return
 		}
 	}

@@ -3,7 +3,9 @@ package service
 import (
 	"errors"
 	"reflect"
+	"slices"
 	"strings"
+	"sync"
 
 	"github.com/go-playground/validator/v10"
 
@@ -42,32 +44,64 @@ type limited struct {
 // toleranced finds the lengths of a document that came with their limits, in
 // the order of its members.
 func toleranced(document any) []limited {
+	v := reflect.ValueOf(document).Elem()
 	var found []limited
-	var walk func(v reflect.Value, at string)
-	walk = func(v reflect.Value, at string) {
-		if v = reflect.Indirect(v); !v.IsValid() || v.Kind() != reflect.Struct {
+	for _, m := range lengthsOf(v.Type()) {
+		member, err := v.FieldByIndexErr(m.index)
+		if err != nil {
+			continue // within an object that is left out
+		}
+		if member = reflect.Indirect(member); !member.IsValid() {
+			continue
+		}
+		if t := member.Addr().Interface().(*Length).Object; t != nil {
+			found = append(found, limited{t, m.at, m.rule})
+		}
+	}
+	return found
+}
+
+// lengthMember is where a type of document has a Length.
+type lengthMember struct {
+	index    []int
+	at, rule string
+}
+
+var lengthMembers sync.Map // reflect.Type → []lengthMember
+
+// lengthsOf finds the lengths of a type of document, once.
+func lengthsOf(t reflect.Type) []lengthMember {
+	if known, ok := lengthMembers.Load(t); ok {
+		return known.([]lengthMember)
+	}
+	var found []lengthMember
+	var walk func(t reflect.Type, index []int, at string)
+	walk = func(t reflect.Type, index []int, at string) {
+		if t.Kind() == reflect.Pointer {
+			t = t.Elem()
+		}
+		if t.Kind() != reflect.Struct {
 			return
 		}
-		for i := range v.NumField() {
-			field := v.Type().Field(i)
+		for i := range t.NumField() {
+			field := t.Field(i)
 			name, _, _ := strings.Cut(field.Tag.Get("json"), ",")
 			if name == "" && !field.Anonymous {
 				continue
 			}
-			member := reflect.Indirect(v.Field(i))
-			switch {
-			case field.Anonymous:
-				walk(member, at)
-			case member.IsValid() && member.Type() == reflect.TypeFor[Length]():
-				if t := member.Addr().Interface().(*Length).Object; t != nil {
-					found = append(found, limited{t, at + pointer(name), strings.TrimPrefix(field.Tag.Get("validate"), "omitnil,")})
-				}
-			default:
-				walk(member, at+pointer(name))
+			below, here := append(slices.Clone(index), i), at
+			if !field.Anonymous {
+				here += pointer(name)
 			}
+			if field.Type == reflect.TypeFor[Length]() || field.Type == reflect.TypeFor[*Length]() {
+				found = append(found, lengthMember{below, here, strings.TrimPrefix(field.Tag.Get("validate"), "omitnil,")})
+				continue
+			}
+			walk(field.Type, below, here)
 		}
 	}
-	walk(reflect.ValueOf(document), "")
+	walk(t, nil, "")
+	lengthMembers.Store(t, found)
 	return found
 }
 

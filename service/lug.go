@@ -314,8 +314,9 @@ func (d *LugDocument) prepare(f *faults) *prepared {
 	p.add = func(r *Result, _ []int) {
 		r.MethodOptions = d.MethodOptions
 		r.StressConcentration = []Working{}
-		for _, w := range nominal.StressConcentration() {
-			r.StressConcentration = append(r.StressConcentration, d.Units.working(w))
+		steps := nominal.StressConcentration()
+		for i := range steps {
+			r.StressConcentration = append(r.StressConcentration, d.Units.working(&steps[i]))
 		}
 	}
 	return p

@@ -2,6 +2,7 @@ package service
 
 import (
 	"cmp"
+	"hash/maphash"
 	"slices"
 	"strings"
 
@@ -310,36 +311,97 @@ func (a assembly) check(at place, m strength.Margin) Check {
 
 // workings gathers the steps behind the kept checks, each once.
 func (a assembly) workings(kept []place) []Working {
-	seen := map[strength.Working]bool{}
-	var out []Working
-	add := func(steps []strength.Working) {
-		for _, w := range steps {
-			if seen[w] {
-				continue
-			}
-			seen[w] = true
-			out = append(out, a.units.working(w))
-		}
-	}
+	var steps distinct
 	static := map[int]bool{}
 	for _, at := range kept {
 		if !static[at.check] {
 			static[at.check] = true
-			add(a.calculation.Workings(at.check))
+			steps.add(a.calculation.Workings(at.check))
 		}
-		add(a.calculation.CaseWorkings(at.load, at.check))
+		steps.add(a.calculation.CaseWorkings(at.load, at.check))
+	}
+	out := make([]Working, len(steps.list))
+	for i := range steps.list {
+		out[i] = a.units.working(&steps.list[i])
 	}
 	return out
 }
 
-// working writes one step in the caller's units.
-func (u Units) working(w strength.Working) Working {
-	return Working{
-		Member: w.Member, Fastener: text(w.Fastener), Row: row(w.Row), Method: text(w.Method),
-		Mode: text(w.Mode.String()), Level: text(w.Level.String()), LoadCase: text(w.LoadCase),
-		Symbol: w.Symbol, Value: u.out(w.Value, w.Unit), Unit: u.name(w.Unit),
-		Equation: text(w.Equation), Source: text(w.Source), Mark: w.Mark.String(),
+// distinct keeps steps in the order of their coming, each once.
+type distinct struct {
+	list []strength.Working
+	next []int32          // of list: the one before it of the same outline, plus one
+	last map[uint64]int32 // by the hash of an outline: the last in list, plus one
+}
+
+// outline is what most steps differ in: hashing the whole of them, texts of
+// sources and all, would take longer than making them.
+type outline struct {
+	member, fastener, loadCase, symbol string
+	row                                int
+	mode                               strength.Mode
+	level                              strength.Level
+	value                              float64
+}
+
+var outlineSeed = maphash.MakeSeed()
+
+// usualSteps is how many steps an answer has as a rule.
+const usualSteps = 96
+
+func (d *distinct) add(steps []strength.Working) {
+	if d.last == nil {
+		d.list, d.next, d.last = make([]strength.Working, 0, usualSteps), make([]int32, 0, usualSteps), make(map[uint64]int32, usualSteps)
 	}
+next:
+	for i := range steps {
+		w := &steps[i]
+		key := maphash.Comparable(outlineSeed, outline{w.Member, w.Fastener, w.LoadCase, w.Symbol, w.Row, w.Mode, w.Level, w.Value})
+		last := d.last[key]
+		for at := last; at > 0; at = d.next[at-1] {
+			if d.list[at-1] == *w {
+				continue next
+			}
+		}
+		d.list, d.next = append(d.list, *w), append(d.next, last)
+		d.last[key] = int32(len(d.list))
+	}
+}
+
+// working writes one step in the caller's units. What it returns points into the
+// step, which must stay as it is.
+func (u Units) working(w *strength.Working) Working {
+	return Working{
+		Member: w.Member, Fastener: part(&w.Fastener), Row: row(w.Row), Method: part(&w.Method),
+		Mode: modeTexts[w.Mode], Level: levelTexts[w.Level], LoadCase: part(&w.LoadCase),
+		Symbol: w.Symbol, Value: u.out(w.Value, w.Unit), Unit: u.name(w.Unit),
+		Equation: part(&w.Equation), Source: part(&w.Source), Mark: w.Mark.String(),
+	}
+}
+
+// The words of modes and levels, null for none, without a copy for each step.
+var (
+	modeTexts  = textsOf(strength.Modes()...)
+	levelTexts = textsOf(strength.Ultimate, strength.Limit)
+)
+
+func textsOf[T interface {
+	comparable
+	String() string
+}](values ...T) map[T]*string {
+	texts := make(map[T]*string, len(values))
+	for _, v := range values {
+		texts[v] = text(v.String())
+	}
+	return texts
+}
+
+// part is null for an empty text, and else the text where it stands.
+func part(s *string) *string {
+	if *s == "" {
+		return nil
+	}
+	return s
 }
 
 // clone copies an optional number out of where it will be overwritten.

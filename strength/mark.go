@@ -1,7 +1,6 @@
 package strength
 
 import (
-	"fmt"
 	"strconv"
 	"strings"
 )
@@ -69,7 +68,7 @@ func (m Mark) String() string {
 	case commonPractice:
 		return "common practice"
 	case memory:
-		return fmt.Sprintf("memory %d%%", m.percent)
+		return "memory " + strconv.Itoa(m.percent) + "%"
 	default:
 		return "given"
 	}
