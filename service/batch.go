@@ -181,7 +181,7 @@ func (s *Service) batchLine(ctx context.Context, caller Caller, view View, text 
 	r := &RecordRequest{
 		Subject: l.Record.Subject, GeometryDigest: l.Record.GeometryDigest, Kind: l.Kind, Note: l.Record.Note,
 	}
-	p, err := s.pendingRecord(ctx, caller, r, whole, idempotency)
+	p, _, err := s.pendingRecord(ctx, caller, r, whole, idempotency)
 	if err != nil {
 		return ref, line{}, err
 	}

@@ -94,6 +94,27 @@ type recordBody struct {
 	MadeBy         madeBy         `json:"made_by"`
 }
 
+// canonical writes the body in the form that is hashed. Input and result are in
+// it already.
+func (b *recordBody) canonical() ([]byte, error) {
+	return strictjson.Compose(map[string]any{
+		"subject": b.Subject, "geometry_digest": b.GeometryDigest, "kind": b.Kind, "note": b.Note,
+		"input": b.Input, "input_digest": b.InputDigest, "result": b.Result, "made_by": b.MadeBy,
+	})
+}
+
+// document shows the record of an entry with this body as callers see it before
+// anything is said about it.
+func (b *recordBody) document(entry Entry) *RecordDocument {
+	return &RecordDocument{
+		ID: entry.ID, Index: entry.Index, RecordedAt: entry.At, Author: entry.Author,
+		Subject: b.Subject, GeometryDigest: b.GeometryDigest, Kind: b.Kind, Note: b.Note,
+		Input: b.Input, Result: b.Result, InputDigest: b.InputDigest,
+		RecordDigest: digestOf(entry),
+		State:        Recorded,
+	}
+}
+
 // madeBy names the program that computed a record.
 type madeBy struct {
 	Engine string `json:"engine"`
@@ -131,9 +152,9 @@ func (i Idempotency) replay(earlier *Answer) error {
 
 // Record computes a joint and appends the result. again is true when the same
 // request was answered before and this is that answer.
-func (s *Service) Record(ctx context.Context, caller Caller, body []byte, idempotency Idempotency) (_ *RecordDocument, again bool, _ error) {
+func (s *Service) Record(ctx context.Context, caller Caller, asked []byte, idempotency Idempotency) (_ *RecordDocument, again bool, _ error) {
 	var request RecordRequest
-	if err := strictjson.Decode(body, &request); err != nil {
+	if err := strictjson.Decode(asked, &request); err != nil {
 		return nil, false, malformed(err, "")
 	}
 	var f faults
@@ -143,7 +164,7 @@ func (s *Service) Record(ctx context.Context, caller Caller, body []byte, idempo
 		return nil, false, s.fail(err)
 	}
 	s.count(&c.result)
-	p, err := s.pendingRecord(ctx, caller, &request, c, idempotency)
+	p, body, err := s.pendingRecord(ctx, caller, &request, c, idempotency)
 	if err != nil {
 		return nil, false, err
 	}
@@ -152,8 +173,11 @@ func (s *Service) Record(ctx context.Context, caller Caller, body []byte, idempo
 	if err != nil {
 		return nil, false, err
 	}
+	if !again {
+		return body.document(entry), false, nil
+	}
 	document, err := recordDocument(entry, nil)
-	return document, again, err
+	return document, true, err
 }
 
 // under joins what is wrong with an inner document, below a member, to the
@@ -175,20 +199,25 @@ func (f *faults) under(member string, err error) error {
 }
 
 // pendingRecord seals the record of a calculation.
-func (s *Service) pendingRecord(ctx context.Context, caller Caller, request *RecordRequest, c *calculation, idempotency Idempotency) (*pending, error) {
+func (s *Service) pendingRecord(ctx context.Context, caller Caller, request *RecordRequest, c *calculation, idempotency Idempotency) (*pending, *recordBody, error) {
 	result, err := strictjson.Canonical(&c.result)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
-	entry, err := s.seal(entryRecord, caller, recordBody{
+	body := &recordBody{
 		Subject:        subject(request.Subject),
 		GeometryDigest: request.GeometryDigest, Kind: request.Kind, Note: request.Note,
 		Input: c.input, InputDigest: c.inputDigest, Result: result, MadeBy: thisProgram(),
-	})
-	if err != nil {
-		return nil, err
 	}
-	return &pending{ctx: ctx, entry: entry, answer: idempotency.answer(caller)}, nil
+	canonical, err := body.canonical()
+	if err != nil {
+		return nil, nil, err
+	}
+	entry, err := s.sealCanonical(entryRecord, caller, canonical)
+	if err != nil {
+		return nil, nil, err
+	}
+	return &pending{ctx: ctx, entry: entry, answer: idempotency.answer(caller)}, body, nil
 }
 
 // recorded waits for what becomes of a submitted record, and returns its entry
@@ -216,6 +245,10 @@ func (s *Service) seal(kind string, caller Caller, body any) (Entry, error) {
 	if err != nil {
 		return Entry{}, err
 	}
+	return s.sealCanonical(kind, caller, canonical)
+}
+
+func (s *Service) sealCanonical(kind string, caller Caller, canonical []byte) (Entry, error) {
 	id, err := uuid.NewV7()
 	if err != nil {
 		return Entry{}, err
@@ -226,7 +259,8 @@ func (s *Service) seal(kind string, caller Caller, body any) (Entry, error) {
 	if err != nil {
 		return Entry{}, err
 	}
-	return EntryOf(bytes)
+	entry, _, err := sealedEntry(bytes)
+	return entry, err
 }
 
 // recordDocument shows an entry and those about it as callers see a record.
@@ -239,13 +273,8 @@ func recordDocument(entry Entry, about []Entry) (*RecordDocument, error) {
 	if err := strictjson.Decode(envelope.Body, &body); err != nil {
 		return nil, fmt.Errorf("entry %d: %w", entry.Index, err)
 	}
-	document := &RecordDocument{
-		ID: envelope.ID, Index: entry.Index, RecordedAt: envelope.At, Author: envelope.Author,
-		Subject: body.Subject, GeometryDigest: body.GeometryDigest, Kind: body.Kind, Note: body.Note,
-		Input: body.Input, Result: body.Result, InputDigest: body.InputDigest,
-		RecordDigest: digestOf(entry),
-		State:        stateOf(about),
-	}
+	document := body.document(entry)
+	document.State = stateOf(about)
 	for _, e := range about {
 		envelope, err := ledger.Parse(e.Bytes)
 		if err != nil {

@@ -34,6 +34,11 @@ func agrees(t interface {
 	if want := bytes.Equal(canonicalOf(data), data) && len(data) > 0; is != want {
 		t.Errorf("%q: %v, want %v", data, is, want)
 	}
+	if ordered, ok := inOrder(data); ok && !bytes.Equal(ordered, canonicalOf(data)) {
+		t.Errorf("%q is put in order as %q, want %q", data, ordered, canonicalOf(data))
+	} else if is && !ok {
+		t.Errorf("%q cannot be put in order", data)
+	}
 	if is {
 		if theirs, err := jcs.Transform(data); err != nil || !bytes.Equal(theirs, data) {
 			t.Errorf("%q is written %q by the second: %v", data, theirs, err)
@@ -106,6 +111,52 @@ func TestIsCanonicalOfNumbers(t *testing.T) {
 			agrees(t, fmt.Appendf(nil, "%.*f", places, float64(n)/math.Pow10(places)))
 		}
 	}
+}
+
+// TestInOrder holds the quick way against the library's, on documents with their
+// members in any order.
+func TestInOrder(t *testing.T) {
+	for _, text := range []string{
+		`{"b":1,"a":2}`, `{"b":{"d":[{"z":1,"y":2},{}],"c":null},"a":"x"}`, `[{"b":1,"a":[]},{"a":1}]`, `{"a\n":1,"a!":2,"Z":3}`, "{\"\uFB33\":1,\"\U0001F529\":2,\"a\":3}", `{"c":1,"b":{},"a":[1,2,3]}`,
+	} {
+		if got, ok := inOrder([]byte(text)); !ok || !bytes.Equal(got, canonicalOf([]byte(text))) {
+			t.Errorf("%s: %s, %t; want %s", text, got, ok, canonicalOf([]byte(text)))
+		}
+	}
+	for _, text := range []string{`{"b":1,"a":2,"b":3}`, `{"a":1,"a":1}`, `{"b":1.0,"a":2}`, `{"b": 1,"a":2}`, `{"b":1,"a":2`, `{"b":1,}`, `[1,]`, `[,1]`, `{"b":1"a":2}`, `[1 2]`, ``} {
+		if got, ok := inOrder([]byte(text)); ok {
+			t.Errorf("%s was put in order as %s", text, got)
+		}
+	}
+	rapid.Check(t, func(t *rapid.T) {
+		names := rapid.SliceOfNDistinct(rapid.String(), 0, 8, rapid.ID).Draw(t, "names")
+		var b bytes.Buffer
+		b.WriteByte('{')
+		for i, name := range names {
+			if i > 0 {
+				b.WriteByte(',')
+			}
+			quoted, err := Canonical(name)
+			if err != nil {
+				t.Fatal(err)
+			}
+			number := rapid.Float64().Draw(t, "value")
+			if number == 0 {
+				number = 0 // -0 is written as it is, which is not canonical
+			}
+			value, err := Encode(map[string]any{"v": number, "n": string(quoted)})
+			if err != nil {
+				t.Fatal(err)
+			}
+			b.Write(quoted)
+			b.WriteByte(':')
+			b.Write(value)
+		}
+		b.WriteByte('}')
+		if got, ok := inOrder(b.Bytes()); !ok || !bytes.Equal(got, canonicalOf(b.Bytes())) {
+			t.Errorf("%s: %s, %t; want %s", &b, got, ok, canonicalOf(b.Bytes()))
+		}
+	})
 }
 
 func FuzzIsCanonical(f *testing.F) {

@@ -12,6 +12,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"maps"
 	"reflect"
 	"slices"
 	"strconv"
@@ -111,11 +112,43 @@ func Canonical(v any) ([]byte, error) {
 	if err != nil {
 		return nil, err
 	}
+	if ordered, ok := inOrder(data); ok {
+		return ordered, nil
+	}
+	// A Raw of a caller's, with numbers or escapes of its own.
 	value := jsontext.Value(data)
 	if err := value.Canonicalize(); err != nil {
 		return nil, err
 	}
 	return value, nil
+}
+
+// Compose writes an object in the form of RFC 8785 from the values of its members,
+// which Canonical writes or which are in that form already, as a Raw is taken to
+// be: large ones are not read again. Names must be plain ASCII letters and _.
+func Compose(members map[string]any) ([]byte, error) {
+	values, size := make(map[string]Raw, len(members)), 2
+	for name, value := range members {
+		raw, ok := value.(Raw)
+		if !ok {
+			text, err := Canonical(value)
+			if err != nil {
+				return nil, err
+			}
+			raw = text
+		}
+		values[name] = raw
+		size += len(name) + len(raw) + 4
+	}
+	out := append(make([]byte, 0, size), '{')
+	for i, name := range slices.Sorted(maps.Keys(values)) { // as RFC 8785 does, for ASCII
+		if i > 0 {
+			out = append(out, ',')
+		}
+		out = append(append(append(out, '"'), name...), '"', ':')
+		out = append(out, values[name]...)
+	}
+	return append(out, '}'), nil
 }
 
 // Either is a plain string or number, or an object in its place. Object is nil

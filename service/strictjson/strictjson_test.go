@@ -129,3 +129,30 @@ func TestCanonicalAgreesWithAnotherWriter(t *testing.T) {
 		}
 	})
 }
+
+func TestCompose(t *testing.T) {
+	type inner struct {
+		B string  `json:"b"`
+		A float64 `json:"a"`
+	}
+	whole := struct {
+		Part   inner          `json:"part"`
+		Input  strictjson.Raw `json:"input"`
+		InputD string         `json:"input_digest"`
+		Empty  []int          `json:"empty"`
+	}{inner{"é\n", 1e21}, strictjson.Raw(`{"x":[1,2]}`), "sha256:00", nil}
+	want, err := strictjson.Canonical(whole)
+	if err != nil {
+		t.Fatal(err)
+	}
+	got, err := strictjson.Compose(map[string]any{"part": whole.Part, "input": whole.Input, "input_digest": whole.InputD, "empty": whole.Empty})
+	if err != nil || string(got) != string(want) {
+		t.Errorf("%s, %v; want %s", got, err, want)
+	}
+	if got, err := strictjson.Compose(nil); err != nil || string(got) != "{}" {
+		t.Errorf("%s, %v", got, err)
+	}
+	if _, err := strictjson.Compose(map[string]any{"f": func() {}}); err == nil {
+		t.Error("what is no JSON was written")
+	}
+}

@@ -1,0 +1,132 @@
+package strictjson
+
+import "slices"
+
+// inOrder writes JSON that is in the form of RFC 8785 but for the order of
+// members, as Encode writes it, with the members in order. It reads the data
+// once. ok is false where something else is not in that form.
+func inOrder(data []byte) (canonicalForm []byte, ok bool) {
+	o := orderer{canonical: canonical{data: data}, out: make([]byte, 0, len(data))}
+	ok = o.value(0) && o.at == len(data)
+	return o.out, ok
+}
+
+// orderer reads with canonical, and writes.
+type orderer struct {
+	canonical
+	out     []byte
+	members []member // of the objects that are being written
+	spare   []byte
+}
+
+// member is one of an object: its name as it is written, and where it stands in
+// out.
+type member struct {
+	name     []byte
+	from, to int
+}
+
+func (o *orderer) put(b byte) { o.out = append(o.out, b) }
+
+func (o *orderer) value(depth int) bool {
+	if o.at >= len(o.data) || depth > deepest {
+		return false
+	}
+	switch o.data[o.at] {
+	case '{':
+		return o.object(depth)
+	case '[':
+		return o.array(depth)
+	}
+	start := o.at
+	if !o.canonical.value(depth) {
+		return false
+	}
+	o.out = append(o.out, o.data[start:o.at]...)
+	return true
+}
+
+func (o *orderer) array(depth int) bool {
+	o.at++
+	o.put('[')
+	for first := true; !o.next(']'); first = false {
+		if !first {
+			if !o.next(',') {
+				return false
+			}
+			o.put(',')
+		}
+		if !o.value(depth + 1) {
+			return false
+		}
+	}
+	o.put(']')
+	return true
+}
+
+func (o *orderer) object(depth int) bool {
+	o.at++
+	o.put('{')
+	start, base := len(o.out), len(o.members)
+	ordered := true
+	for !o.next('}') {
+		if len(o.members) > base {
+			if !o.next(',') {
+				return false
+			}
+			o.put(',')
+		}
+		m := member{from: len(o.out)}
+		begin := o.at
+		if !o.text() {
+			return false
+		}
+		m.name = o.data[begin+1 : o.at-1]
+		o.out = append(o.out, o.data[begin:o.at]...)
+		if !o.next(':') {
+			return false
+		}
+		o.put(':')
+		if !o.value(depth + 1) {
+			return false
+		}
+		m.to = len(o.out)
+		if n := len(o.members); n > base && !ascend(o.members[n-1].name, m.name) {
+			ordered = false
+		}
+		o.members = append(o.members, m)
+	}
+	mine := o.members[base:]
+	if !ordered && !o.reorder(mine, start) {
+		return false
+	}
+	o.members = o.members[:base]
+	o.put('}')
+	return true
+}
+
+// reorder puts the members of an object, which begin at start, in order. Two of
+// one name are refused.
+func (o *orderer) reorder(members []member, start int) bool {
+	slices.SortFunc(members, func(a, b member) int {
+		switch {
+		case ascend(a.name, b.name):
+			return -1
+		case ascend(b.name, a.name):
+			return 1
+		}
+		return 0
+	})
+	o.spare = append(o.spare[:0], o.out[start:]...)
+	o.out = o.out[:start]
+	for i, m := range members {
+		if i > 0 {
+			if !ascend(members[i-1].name, m.name) {
+				return false
+			}
+			o.put(',')
+		}
+		o.out = append(o.out, o.spare[m.from-start:m.to-start]...)
+	}
+	return true
+}
