@@ -192,30 +192,27 @@ func (b *builder) value(name string) Value {
 
 // sort puts the checks in the order of answers: member, method, mode.
 func (p *Prepared) sort() {
-	order := make([]int, len(p.checks))
-	for i := range order {
-		order[i] = i
+	// What is compared, and the index, packed: a sort of numbers is stable and
+	// ranks each check once.
+	keys := make([]uint64, len(p.checks))
+	for i := range keys {
+		c := &p.checks[i]
+		keys[i] = uint64(memberRank(c.Member))<<56 | uint64(p.laws[i].place)<<40 | uint64(c.Mode)<<32 | uint64(i)
 	}
-	slices.SortStableFunc(order, func(i, j int) int {
-		a, b := &p.checks[i], &p.checks[j]
-		return cmp.Or(
-			cmp.Compare(memberRank(a.Member), memberRank(b.Member)),
-			cmp.Compare(p.laws[i].place, p.laws[j].place),
-			cmp.Compare(a.Mode, b.Mode),
-		)
-	})
+	slices.Sort(keys)
+	from := func(at int) int { return int(uint32(keys[at])) }
 	// The permutation is applied in place, cycle by cycle.
-	for start := range order {
+	for start := range keys {
 		check, law := p.checks[start], p.laws[start]
 		at := start
-		for order[at] != start {
-			from := order[at]
-			p.checks[at], p.laws[at] = p.checks[from], p.laws[from]
-			order[at] = at
-			at = from
+		for from(at) != start {
+			next := from(at)
+			p.checks[at], p.laws[at] = p.checks[next], p.laws[next]
+			keys[at] = uint64(at)
+			at = next
 		}
 		p.checks[at], p.laws[at] = check, law
-		order[at] = at
+		keys[at] = uint64(at)
 	}
 }
 
