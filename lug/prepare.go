@@ -68,16 +68,14 @@ func prepare(j Joint, choices []Choice, f strength.Factors, loads []load, wrong 
 	methods := make([]Method, len(choices))
 	asked, compared := 0, 0
 	for i, c := range choices {
-		pointer := "/methods/" + strconv.Itoa(asked)
+		list, at := "/methods/", &asked
 		if c.Compared {
-			pointer = "/compare/" + strconv.Itoa(compared)
-			compared++
-		} else {
-			asked++
+			list, at = "/compare/", &compared
 		}
+		*at++
 		m, ok := Find(c.Method)
 		if !ok {
-			wrong.add(pointer, "there is no method %q", c.Method)
+			wrong.add(list+strconv.Itoa(*at-1), "there is no method %q", c.Method)
 			continue
 		}
 		methods[i] = m
@@ -94,7 +92,8 @@ func prepare(j Joint, choices []Choice, f strength.Factors, loads []load, wrong 
 	p.place()
 	p.checks = make([]strength.Check, 0, 12*len(p.heads())*len(choices))
 	p.laws = make([]settled, 0, cap(p.checks))
-	found := &findings{}
+	room := make(findings, 0, 8) // more than most joints have
+	found := &room
 	var read fieldSet
 	for i := range choices {
 		b := &builder{
