@@ -91,20 +91,24 @@ type recordHead struct {
 
 // resultHead is what is read of a record's result without the rest.
 type resultHead struct {
-	Verdict   string `json:"verdict"`
-	Governing *struct {
-		Margin *float64 `json:"margin"`
-	} `json:"governing"`
-	ByMethod []struct {
-		Method   string `json:"method"`
-		Compared bool   `json:"compared"`
-	} `json:"by_method"`
-	Findings []struct {
+	Verdict   string         `json:"verdict"`
+	Governing *governingHead `json:"governing"`
+	ByMethod  []methodHead   `json:"by_method"`
+	Findings  []struct {
 		Severity string `json:"severity"`
 		Code     string `json:"code"`
 		Message  string `json:"message"`
 	} `json:"findings"`
 	Engine string `json:"engine"`
+}
+
+type governingHead struct {
+	Margin *float64 `json:"margin"`
+}
+
+type methodHead struct {
+	Method   string `json:"method"`
+	Compared bool   `json:"compared"`
 }
 
 // margin is the governing margin, nil where there is none.

@@ -13,6 +13,9 @@ import (
 	"testing"
 	"time"
 
+	"github.com/google/go-cmp/cmp"
+	"github.com/google/go-cmp/cmp/cmpopts"
+
 	"jointledger/service"
 	"jointledger/service/ledger"
 	"jointledger/store/storetest"
@@ -543,6 +546,34 @@ func TestRoles(t *testing.T) {
 	for _, need := range append(ladder, service.Admin) {
 		if want := need == service.Reader || need == service.Gate || need == service.Admin; service.Admin.May(need) != want {
 			t.Errorf("admin may %s: %v", need, !want)
+		}
+	}
+}
+
+// TestColumnsSayWhatTheEntrySays: the columns that a new record is stored with
+// are those that are read from its bytes.
+func TestColumnsSayWhatTheEntrySays(t *testing.T) {
+	store := storetest.SQLite(t)
+	s := open(t, store, newSigner(t))
+	negative := strings.Replace(hingeLug, `"force": 18000`, `"force": 90000`, 1)
+	none := strings.Replace(hingeLug, `"angle": 0`, `"angle": 90`, 1)
+	compared := strings.Replace(hingeLug, `"methods": ["elementary"],`, `"methods": ["elementary"], "compare": ["affdl-tr-69-42", "asme-bth-1"],`, 1)
+	for i, input := range []string{hingeLug, negative, none, compared} {
+		r, _, err := s.Record(t.Context(), ada, recordOf(fmt.Sprint("J", i), "tension", "lug", input), service.Idempotency{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		stored, err := store.Entry(t.Context(), r.Index)
+		if err != nil {
+			t.Fatal(err)
+		}
+		read, err := service.EntryOf(stored.Bytes)
+		if err != nil {
+			t.Fatal(err)
+		}
+		read.Index = stored.Index
+		if diff := cmp.Diff(read, stored, cmpopts.EquateEmpty()); diff != "" {
+			t.Errorf("%s", diff)
 		}
 	}
 }

@@ -103,6 +103,21 @@ func (b *recordBody) canonical() ([]byte, error) {
 	})
 }
 
+// head is what entryOf would read of the body, without reading it.
+func (b *recordBody) head(r *Result) *recordHead {
+	head := &recordHead{
+		Subject: b.Subject, GeometryDigest: b.GeometryDigest, Kind: b.Kind, Input: b.Input,
+		Result: resultHead{Verdict: r.Verdict},
+	}
+	if r.Governing != nil {
+		head.Result.Governing = &governingHead{r.Governing.Margin}
+	}
+	for _, m := range r.ByMethod {
+		head.Result.ByMethod = append(head.Result.ByMethod, methodHead{m.Method, m.Compared})
+	}
+	return head
+}
+
 // document shows the record of an entry with this body as callers see it before
 // anything is said about it.
 func (b *recordBody) document(entry Entry) *RecordDocument {
@@ -213,10 +228,15 @@ func (s *Service) pendingRecord(ctx context.Context, caller Caller, request *Rec
 	if err != nil {
 		return nil, nil, err
 	}
+	columns, err := body.head(&c.result).columns()
+	if err != nil {
+		return nil, nil, err
+	}
 	entry, err := s.sealCanonical(entryRecord, caller, canonical)
 	if err != nil {
 		return nil, nil, err
 	}
+	entry.Columns = columns
 	return &pending{ctx: ctx, entry: entry, answer: idempotency.answer(caller)}, body, nil
 }
 
@@ -245,22 +265,23 @@ func (s *Service) seal(kind string, caller Caller, body any) (Entry, error) {
 	if err != nil {
 		return Entry{}, err
 	}
-	return s.sealCanonical(kind, caller, canonical)
+	entry, err := s.sealCanonical(kind, caller, canonical)
+	if err != nil {
+		return Entry{}, err
+	}
+	entry, _, err = sealedEntry(entry.Bytes)
+	return entry, err
 }
 
+// sealCanonical makes an entry, but for its columns.
 func (s *Service) sealCanonical(kind string, caller Caller, canonical []byte) (Entry, error) {
 	id, err := uuid.NewV7()
 	if err != nil {
 		return Entry{}, err
 	}
-	bytes, _, err := ledger.Seal(ledger.Envelope{
-		Type: kind, ID: id.String(), At: stamp(s.clock.Now()), Author: caller.Name, Body: canonical,
-	})
-	if err != nil {
-		return Entry{}, err
-	}
-	entry, _, err := sealedEntry(bytes)
-	return entry, err
+	e := Entry{Type: kind, ID: id.String(), At: stamp(s.clock.Now()), Author: caller.Name}
+	e.Bytes, e.Leaf, err = ledger.Seal(ledger.Envelope{Type: e.Type, ID: e.ID, At: e.At, Author: e.Author, Body: canonical})
+	return e, err
 }
 
 // recordDocument shows an entry and those about it as callers see a record.
