@@ -76,7 +76,7 @@ func firstDocument(in io.ReadCloser, manyLines bool) (whole []byte, lines io.Rea
 		head = append(head, text...)
 		if len(bytes.TrimSpace(text)) > 0 {
 			var value any
-			if documents == 0 && strictjson.DecodeAny(text, &value) != nil {
+			if documents == 0 && strictjson.DecodeLoosely(text, &value) != nil {
 				// Not the whole of a document: the file is one.
 				more, err := io.ReadAll(buffered)
 				return append(head, more...), nil, err

@@ -16,26 +16,13 @@ type CatalogueMaterial struct {
 
 // in writes the material in a document's units.
 func (c CatalogueMaterial) in(u Units) Material {
-	m := c.ksi
 	// ksi to psi is exact; from there through the program's own units.
-	turn := func(x *float64) *float64 {
-		if x == nil {
-			return nil
+	return c.ksi.stresses(func(x float64) float64 {
+		if u == US {
+			return x * 1000
 		}
-		v := *x * 1000
-		if u != US {
-			v *= US.scale(strength.Stress)
-		}
-		return &v
-	}
-	for _, p := range []**float64{&m.Ftu, &m.Fty, &m.FtuCross, &m.FtyCross, &m.Fcy, &m.Fsu, &m.E, &m.Ec} {
-		*p = turn(*p)
-	}
-	m.Bearing = nil
-	for _, b := range c.ksi.Bearing {
-		m.Bearing = append(m.Bearing, Bearing{EOverD: b.EOverD, Fbru: turn(b.Fbru), Fbry: turn(b.Fbry)})
-	}
-	return m
+		return x * 1000 * US.scale(strength.Stress)
+	})
 }
 
 // materials are the built-in ones. Values in ksi; only A-basis values are

@@ -129,7 +129,7 @@ func (r *recordHead) columns() (Columns, error) {
 		c.Terms = append(c.Terms, Term{termMethod, m.Method})
 	}
 	var input any
-	if err := strictjson.DecodeAny(r.Input, &input); err != nil {
+	if err := strictjson.DecodeLoosely(r.Input, &input); err != nil {
 		return Columns{}, err
 	}
 	found := inputTerms(input, nil)

@@ -41,6 +41,26 @@ type Bearing struct {
 	Fbry   *float64 `json:"fbry,omitzero" validate:"omitnil,size"`
 }
 
+// stresses returns the material with every stress and modulus turned.
+func (m Material) stresses(turn func(float64) float64) Material {
+	optional := func(x *float64) *float64 {
+		if x == nil {
+			return nil
+		}
+		y := turn(*x)
+		return &y
+	}
+	for _, p := range []**float64{&m.Ftu, &m.Fty, &m.FtuCross, &m.FtyCross, &m.Fcy, &m.Fsu, &m.E, &m.Ec} {
+		*p = optional(*p)
+	}
+	bearing := m.Bearing
+	m.Bearing = nil
+	for _, b := range bearing {
+		m.Bearing = append(m.Bearing, Bearing{b.EOverD, optional(b.Fbru), optional(b.Fbry)})
+	}
+	return m
+}
+
 // MaterialRef is a material in full or by the id of a catalogue.
 type MaterialRef = strictjson.Either[string, Material]
 

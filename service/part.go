@@ -179,10 +179,10 @@ func (s *Service) Changes(ctx context.Context, part, from, to string) (*Changes,
 // fieldChanges lists the members that differ between two inputs.
 func fieldChanges(was, is strictjson.Raw) ([]FieldChange, error) {
 	var a, b any
-	if err := strictjson.DecodeAny(was, &a); err != nil {
+	if err := strictjson.DecodeLoosely(was, &a); err != nil {
 		return nil, err
 	}
-	if err := strictjson.DecodeAny(is, &b); err != nil {
+	if err := strictjson.DecodeLoosely(is, &b); err != nil {
 		return nil, err
 	}
 	found := []FieldChange{}

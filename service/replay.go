@@ -189,10 +189,10 @@ var wording = map[string]bool{
 // compareResults sets two canonical results against each other.
 func compareResults(was, is strictjson.Raw) (difference, error) {
 	var a, b any
-	if err := strictjson.DecodeAny(was, &a); err != nil {
+	if err := strictjson.DecodeLoosely(was, &a); err != nil {
 		return difference{}, err
 	}
-	if err := strictjson.DecodeAny(is, &b); err != nil {
+	if err := strictjson.DecodeLoosely(is, &b); err != nil {
 		return difference{}, err
 	}
 	var d difference

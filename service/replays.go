@@ -192,24 +192,12 @@ func (s *Service) replayItem(ctx context.Context, summary *Summary, substitute *
 
 // in writes the material in the units of a document.
 func (s *substitution) in(u Units) (strictjson.Raw, error) {
-	m := s.With
-	for _, p := range []**float64{&m.Ftu, &m.Fty, &m.FtuCross, &m.FtyCross, &m.Fcy, &m.Fsu, &m.E, &m.Ec} {
-		*p = convert(*p, s.Units, u)
-	}
-	m.Bearing = nil
-	for _, b := range s.With.Bearing {
-		m.Bearing = append(m.Bearing, Bearing{b.EOverD, convert(b.Fbru, s.Units, u), convert(b.Fbry, s.Units, u)})
-	}
-	return strictjson.Encode(m)
-}
-
-// convert turns an optional stress from some units into others.
-func convert(x *float64, from, to Units) *float64 {
-	if x == nil || from == to {
-		return x
-	}
-	v := *x * from.scale(strength.Stress) / to.scale(strength.Stress)
-	return &v
+	return strictjson.Encode(s.With.stresses(func(x float64) float64 {
+		if s.Units == u {
+			return x
+		}
+		return x * s.Units.scale(strength.Stress) / u.scale(strength.Stress)
+	}))
 }
 
 // substituted puts the material in the place of the named one, wherever an
@@ -229,11 +217,11 @@ func substituted(input strictjson.Raw, s *substitution) (strictjson.Raw, error) 
 		return nil, err
 	}
 	var members any
-	if err := strictjson.DecodeAny(input, &members); err != nil {
+	if err := strictjson.DecodeLoosely(input, &members); err != nil {
 		return nil, err
 	}
 	var replacement any
-	if err := strictjson.DecodeAny(with, &replacement); err != nil {
+	if err := strictjson.DecodeLoosely(with, &replacement); err != nil {
 		return nil, err
 	}
 	return strictjson.Encode(replaceMaterial(members, s.Material, replacement))

@@ -64,12 +64,8 @@ func Decode(data []byte, into any) error {
 	return nil
 }
 
-// DecodeAny reads a document of our own making, nulls included, into maps,
-// slices, strings, numbers, booleans and nil.
-func DecodeAny(data []byte, into *any) error { return json.Unmarshal(data, into) }
-
-// DecodeLoosely reads a document of our own making of which only some members
-// are asked for.
+// DecodeLoosely reads a document of our own making, nulls included: only some of
+// its members into a struct, or all of it into an any.
 func DecodeLoosely(data []byte, into any) error { return json.Unmarshal(data, into) }
 
 // Lines returns a function from pointers into a document to the lines, from 1,
