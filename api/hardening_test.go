@@ -4,7 +4,6 @@ import (
 	"bufio"
 	"bytes"
 	"context"
-	"crypto/rand"
 	"encoding/json"
 	"fmt"
 	"io"
@@ -20,7 +19,6 @@ import (
 
 	"jointledger/api"
 	"jointledger/service"
-	"jointledger/service/ledger"
 	"jointledger/store/storetest"
 )
 
@@ -34,14 +32,7 @@ type target struct {
 // attacked starts a server whose limits of time a test may shorten first.
 func attacked(t *testing.T, change func(*http.Server)) target {
 	t.Helper()
-	text, err := ledger.GenerateKey(rand.Reader, "saltmarsh.example/jointledger")
-	if err != nil {
-		t.Fatal(err)
-	}
-	signer, err := ledger.NewSigner(text)
-	if err != nil {
-		t.Fatal(err)
-	}
+	signer := storetest.Signer(t)
 	policies, err := service.NewPolicies(nil)
 	if err != nil {
 		t.Fatal(err)

@@ -3,7 +3,6 @@ package api_test
 import (
 	"bytes"
 	"context"
-	"crypto/rand"
 	"encoding/json"
 	"flag"
 	"fmt"
@@ -22,7 +21,6 @@ import (
 
 	"jointledger/api"
 	"jointledger/service"
-	"jointledger/service/ledger"
 	"jointledger/store/storetest"
 )
 
@@ -99,14 +97,7 @@ func serve(t testing.TB, empty service.Store) client {
 func serveWith(t testing.TB, empty service.Store, options api.Options) client {
 	t.Helper()
 	engine := storetest.NewFaulty(empty)
-	text, err := ledger.GenerateKey(rand.Reader, "saltmarsh.example/jointledger")
-	if err != nil {
-		t.Fatal(err)
-	}
-	signer, err := ledger.NewSigner(text)
-	if err != nil {
-		t.Fatal(err)
-	}
+	signer := storetest.Signer(t)
 	policies, err := service.NewPolicies(nil)
 	if err != nil {
 		t.Fatal(err)

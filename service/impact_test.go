@@ -155,7 +155,7 @@ func openNotifying(t *testing.T, store service.Store, clock service.Clock, watch
 	if err != nil {
 		t.Fatal(err)
 	}
-	s, err := service.New(t.Context(), service.Setup{Store: store, Clock: clock, Signer: newSigner(t), Policies: policies, Watch: watch, Notify: notify})
+	s, err := service.New(t.Context(), service.Setup{Store: store, Clock: clock, Signer: storetest.Signer(t), Policies: policies, Watch: watch, Notify: notify})
 	if err != nil {
 		t.Fatal(err)
 	}

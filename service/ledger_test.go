@@ -3,7 +3,6 @@ package service_test
 import (
 	"bytes"
 	"context"
-	"crypto/rand"
 	"encoding/json"
 	"errors"
 	"fmt"
@@ -26,20 +25,6 @@ type ticking struct{ at atomic.Int64 }
 
 func (c *ticking) Now() time.Time {
 	return time.Date(2026, 3, 1, 8, 0, 0, 0, time.UTC).Add(time.Duration(c.at.Add(1)) * time.Second)
-}
-
-// newSigner makes a key for a log of its own.
-func newSigner(t testing.TB) *ledger.Signer {
-	t.Helper()
-	text, err := ledger.GenerateKey(rand.Reader, "test.example/saltmarsh")
-	if err != nil {
-		t.Fatal(err)
-	}
-	signer, err := ledger.NewSigner(text)
-	if err != nil {
-		t.Fatal(err)
-	}
-	return signer
 }
 
 // open opens a service on a store; it is closed with the test.
@@ -113,7 +98,7 @@ func code(t testing.TB, err error) service.Code {
 
 func TestRecordIsKeptAsAnswered(t *testing.T) {
 	storetest.Each(t, func(t *testing.T, store service.Store) {
-		s := open(t, store, newSigner(t))
+		s := open(t, store, storetest.Signer(t))
 		made := record(t, s, ada, "hinge-upper", "")
 		if made.Author != "ada" || made.Index != 0 || made.State != service.Recorded {
 			t.Errorf("by %s at %d, %s", made.Author, made.Index, made.State)
@@ -142,7 +127,7 @@ func TestRecordIsKeptAsAnswered(t *testing.T) {
 
 func TestIdempotency(t *testing.T) {
 	storetest.Each(t, func(t *testing.T, store service.Store) {
-		s := open(t, store, newSigner(t))
+		s := open(t, store, storetest.Signer(t))
 		first := record(t, s, ada, "hinge-upper", "k")
 		body := recordBody("hinge-upper")
 		second, again, err := s.Record(t.Context(), ada, body, idempotency(body, "k"))
@@ -175,7 +160,7 @@ func TestIdempotency(t *testing.T) {
 
 func TestSeparationOfDuties(t *testing.T) {
 	storetest.Each(t, func(t *testing.T, store service.Store) {
-		s := open(t, store, newSigner(t))
+		s := open(t, store, storetest.Signer(t))
 		id := record(t, s, cleo, "hinge-upper", "").ID
 		steps := []struct {
 			name   string
@@ -224,7 +209,7 @@ func TestSeparationOfDuties(t *testing.T) {
 
 // In open mode everybody is the same author, so that nobody can sign.
 func TestOpenModeCannotSign(t *testing.T) {
-	s := open(t, storetest.SQLite(t), newSigner(t))
+	s := open(t, storetest.SQLite(t), storetest.Signer(t))
 	id := record(t, s, local, "hinge-upper", "").ID
 	_, err := sign(t, s, local, id, "checked")
 	if code(t, err) != service.SeparationOfDuties || !strings.Contains(err.Error(), "jointledger key add") {
@@ -234,7 +219,7 @@ func TestOpenModeCannotSign(t *testing.T) {
 
 func TestProofsAndExportVerifyOffline(t *testing.T) {
 	storetest.Each(t, func(t *testing.T, store service.Store) {
-		signer := newSigner(t)
+		signer := storetest.Signer(t)
 		s := open(t, store, signer)
 		var ids []string
 		for i := range 9 {
@@ -314,7 +299,7 @@ func export(t testing.TB, s *service.Service, from string) []byte {
 // A record whose result was changed and signed again, as by somebody who has
 // the key, is found by computing it again.
 func TestRecomputationFindsAChangedResult(t *testing.T) {
-	s := open(t, storetest.SQLite(t), newSigner(t))
+	s := open(t, storetest.SQLite(t), storetest.Signer(t))
 	made := record(t, s, ada, "hinge-upper", "")
 	entry, err := s.EntryBytes(t.Context(), made.ID)
 	if err != nil {
@@ -344,7 +329,7 @@ func TestRecomputationFindsAChangedResult(t *testing.T) {
 func TestFaultsGiveOneRecord(t *testing.T) {
 	storetest.Each(t, func(t *testing.T, store service.Store) {
 		faulty := storetest.NewFaulty(store)
-		signer := newSigner(t)
+		signer := storetest.Signer(t)
 		s := open(t, faulty, signer)
 		record(t, s, ada, "warm", "warm")
 		calls := func() int {
@@ -395,7 +380,7 @@ func verifyAll(t testing.TB, s *service.Service) int64 {
 // Many callers of two servers on one store make one log without gap or fork.
 func TestReplicasShareOneLog(t *testing.T) {
 	storetest.Each(t, func(t *testing.T, store service.Store) {
-		signer := newSigner(t)
+		signer := storetest.Signer(t)
 		replicas := []*service.Service{open(t, store, signer), open(t, store, signer)}
 		const callers, each = 8, 5
 		var work sync.WaitGroup
@@ -443,7 +428,7 @@ func (p *plugged) Append(ctx context.Context, b service.Batch) error {
 func TestOneSignatureARole(t *testing.T) {
 	storetest.Each(t, func(t *testing.T, inner service.Store) {
 		store := &plugged{Store: inner}
-		s := open(t, store, newSigner(t))
+		s := open(t, store, storetest.Signer(t))
 		id := record(t, s, ada, "hinge-upper", "").ID
 		var signed atomic.Int64
 		var work sync.WaitGroup
@@ -473,8 +458,8 @@ func TestOneSignatureARole(t *testing.T) {
 
 func TestAnotherKeyOrOriginIsRefused(t *testing.T) {
 	store := storetest.SQLite(t)
-	open(t, store, newSigner(t))
-	_, err := service.New(t.Context(), service.Setup{Store: store, Clock: service.SystemClock{}, Signer: newSigner(t), Watch: service.Unwatched{}})
+	open(t, store, storetest.Signer(t))
+	_, err := service.New(t.Context(), service.Setup{Store: store, Clock: service.SystemClock{}, Signer: storetest.Signer(t), Watch: service.Unwatched{}})
 	if err == nil || !strings.Contains(err.Error(), "--signing-key") {
 		t.Errorf("another key: %v", err)
 	}
@@ -482,7 +467,7 @@ func TestAnotherKeyOrOriginIsRefused(t *testing.T) {
 
 func TestKeys(t *testing.T) {
 	storetest.Each(t, func(t *testing.T, store service.Store) {
-		s := open(t, store, newSigner(t))
+		s := open(t, store, storetest.Signer(t))
 		ctx := t.Context()
 		if isOpen, err := s.Open(ctx); err != nil || !isOpen {
 			t.Errorf("open %v, %v before any key", isOpen, err)
@@ -554,7 +539,7 @@ func TestRoles(t *testing.T) {
 // are those that are read from its bytes.
 func TestColumnsSayWhatTheEntrySays(t *testing.T) {
 	store := storetest.SQLite(t)
-	s := open(t, store, newSigner(t))
+	s := open(t, store, storetest.Signer(t))
 	negative := strings.Replace(hingeLug, `"force": 18000`, `"force": 90000`, 1)
 	none := strings.Replace(hingeLug, `"angle": 0`, `"angle": 90`, 1)
 	compared := strings.Replace(hingeLug, `"methods": ["elementary"],`, `"methods": ["elementary"], "compare": ["affdl-tr-69-42", "asme-bth-1"],`, 1)

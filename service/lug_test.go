@@ -213,7 +213,7 @@ func TestLugsAreTheSameInBothUnits(t *testing.T) {
 // Sizing gives a value that holds as it is written, and the least one but for
 // its twelfth digit.
 func TestSizedLugsHold(t *testing.T) {
-	s := open(t, storetest.SQLite(t), newSigner(t))
+	s := open(t, storetest.SQLite(t), storetest.Signer(t))
 	sized := func(t *rapid.T, question any) *service.LugSizing {
 		body, err := json.Marshal(question)
 		if err != nil {

@@ -19,7 +19,7 @@ func revised(revision, joint, was, is string) []byte {
 
 func TestPartTellsWhatChangedBetweenRevisions(t *testing.T) {
 	store := storetest.SQLite(t)
-	s := open(t, store, newSigner(t))
+	s := open(t, store, storetest.Signer(t))
 	keep := func(body []byte) *service.RecordDocument {
 		t.Helper()
 		r, _, err := s.Record(t.Context(), ada, body, service.Idempotency{})
@@ -74,7 +74,7 @@ func TestPartTellsWhatChangedBetweenRevisions(t *testing.T) {
 func TestVerifyFindsAlteredBytes(t *testing.T) {
 	inner := storetest.SQLite(t)
 	altered := &alteredStore{Store: inner}
-	s := open(t, altered, newSigner(t))
+	s := open(t, altered, storetest.Signer(t))
 	r := record(t, s, ada, "hinge", "")
 	record(t, s, ada, "other", "")
 	v, err := s.Verify(t.Context(), r.ID)

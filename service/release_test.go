@@ -46,7 +46,7 @@ func openWith(t testing.TB, store service.Store, policies string, watch service.
 		t.Fatal(err)
 	}
 	s, err := service.New(t.Context(), service.Setup{
-		Store: store, Clock: &ticking{}, Signer: newSigner(t), Policies: known, Watch: watch,
+		Store: store, Clock: &ticking{}, Signer: storetest.Signer(t), Policies: known, Watch: watch,
 	})
 	if err != nil {
 		t.Fatal(err)
@@ -513,7 +513,7 @@ func (m *meanwhile) Hashes(ctx context.Context, indexes []int64) ([]ledger.Hash,
 // A withdrawal that gets into the log before the decision counts for it.
 func TestADecisionIsTrueAtItsPlaceInTheLog(t *testing.T) {
 	inner := storetest.SQLite(t)
-	signer := newSigner(t)
+	signer := storetest.Signer(t)
 	writer := open(t, inner, signer)
 	id := put(t, writer, recordOf("a", "", "lug", hingeLug), both...)
 	store := &meanwhile{Store: inner, do: func() {

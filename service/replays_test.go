@@ -20,7 +20,7 @@ func TestReplayWithAnotherMaterial(t *testing.T) {
 	psi := `"ftu": 74000, "fty": 64000, "fsu": 35000, "bearing": [{"e_over_d": 1.5, "fbru": 107000, "fbry": 86000}]`
 	mpa := `"ftu": 510.212, "fty": 441.265, "fsu": 241.3165, "bearing": [{"e_over_d": 1.5, "fbru": 737.739, "fbry": 592.949}]`
 	storetest.Each(t, func(t *testing.T, store service.Store) {
-		s := open(t, store, newSigner(t))
+		s := open(t, store, storetest.Signer(t))
 		record(t, s, ada, "hinge-upper", "")
 		for _, c := range []struct {
 			name, body string

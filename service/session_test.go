@@ -9,7 +9,7 @@ import (
 
 func TestSessionEndsWithItsKey(t *testing.T) {
 	storetest.Each(t, func(t *testing.T, store service.Store) {
-		s := open(t, store, newSigner(t))
+		s := open(t, store, storetest.Signer(t))
 		secret, err := s.AddKey(t.Context(), "ada", service.Analyst)
 		if err != nil {
 			t.Fatal(err)

@@ -106,7 +106,7 @@ func onSQLite(t *testing.T) *tampered {
 	if err != nil {
 		t.Fatal(err)
 	}
-	d := &tampered{signer: newSigner(t), place: "?", store: opened}
+	d := &tampered{signer: storetest.Signer(t), place: "?", store: opened}
 	d.fill(t, open(t, opened, d.signer))
 	db, err := sql.Open("sqlite", file)
 	if err != nil {
@@ -169,7 +169,7 @@ func onPostgres(t *testing.T) *tampered {
 	if err != nil {
 		t.Fatal(err)
 	}
-	d := &tampered{signer: newSigner(t), place: "$", store: opened}
+	d := &tampered{signer: storetest.Signer(t), place: "$", store: opened}
 	d.fill(t, open(t, opened, d.signer))
 	connection, err := pgx.Connect(t.Context(), url)
 	if err != nil {
@@ -248,7 +248,7 @@ func TestTampering(t *testing.T) {
 		{"another key's signature", func(t *testing.T, d *tampered) {
 			var root []byte
 			d.query(t, "SELECT root FROM head", &root)
-			checkpoint, err := newSigner(t).Checkpoint(8, ledger.Hash(root))
+			checkpoint, err := storetest.Signer(t).Checkpoint(8, ledger.Hash(root))
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -370,7 +370,7 @@ func forge(t *testing.T, d *tampered, signer *ledger.Signer) {
 func TestOlderCopyOfTheDatabase(t *testing.T) {
 	dir := t.TempDir()
 	file := filepath.Join(dir, "ledger.sqlite")
-	signer := newSigner(t)
+	signer := storetest.Signer(t)
 	opened, err := store.OpenSQLite(t.Context(), file)
 	if err != nil {
 		t.Fatal(err)

@@ -3,7 +3,6 @@ package client_test
 import (
 	"bytes"
 	"context"
-	"crypto/rand"
 	"errors"
 	"io"
 	"log/slog"
@@ -48,14 +47,7 @@ func newWorld(t *testing.T) *world {
 
 func newWorldWith(t *testing.T, options api.Options) *world {
 	t.Helper()
-	text, err := ledger.GenerateKey(rand.Reader, "test.example/saltmarsh")
-	if err != nil {
-		t.Fatal(err)
-	}
-	signer, err := ledger.NewSigner(text)
-	if err != nil {
-		t.Fatal(err)
-	}
+	signer := storetest.Signer(t)
 	policies, err := service.NewPolicies(nil)
 	if err != nil {
 		t.Fatal(err)

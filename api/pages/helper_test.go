@@ -2,7 +2,6 @@ package pages_test
 
 import (
 	"bytes"
-	"crypto/rand"
 	"errors"
 	"fmt"
 	"log/slog"
@@ -16,7 +15,6 @@ import (
 
 	"jointledger/api"
 	"jointledger/service"
-	"jointledger/service/ledger"
 	"jointledger/store/storetest"
 )
 
@@ -41,14 +39,7 @@ type site struct {
 
 func newSite(t testing.TB) *site {
 	t.Helper()
-	text, err := ledger.GenerateKey(rand.Reader, "test.example/saltmarsh")
-	if err != nil {
-		t.Fatal(err)
-	}
-	signer, err := ledger.NewSigner(text)
-	if err != nil {
-		t.Fatal(err)
-	}
+	signer := storetest.Signer(t)
 	policies, err := service.NewPolicies(nil)
 	if err != nil {
 		t.Fatal(err)
