@@ -55,7 +55,7 @@ func envelope(b *testing.B, n int, change func(map[string]any)) []byte {
 
 // BenchmarkLugSizing sizes the thickness of the same joint.
 func BenchmarkLugSizing(b *testing.B) {
-	s := open(b, storetest.SQLite(b), newSigner(b))
+	s := open(b, storetest.SQLite(b), storetest.Signer(b))
 	for _, cases := range []int{1, 1_000, 100_000} {
 		b.Run(strconv.Itoa(cases), func(b *testing.B) {
 			body := append([]byte(`{"free": "thickness", "bounds": [5, 60], "increment": 0.5, "input": `), envelope(b, cases, nil)...)

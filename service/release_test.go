@@ -546,7 +546,7 @@ func TestTextOfADecision(t *testing.T) {
 // BenchmarkRelease judges a part of 500 joints, each record signed twice, among
 // 100,000 records in Postgres.
 func BenchmarkRelease(b *testing.B) {
-	store, signer := storetest.Postgres(b), newSigner(b)
+	store, signer := storetest.Postgres(b), storetest.Signer(b)
 	s := open(b, store, signer)
 	joints := make([]string, 500)
 	var work sync.WaitGroup
