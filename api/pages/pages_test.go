@@ -45,7 +45,7 @@ func furnished(t *testing.T) (s *site, lug, pattern, splice *service.RecordDocum
 func TestEveryPageIsSound(t *testing.T) {
 	s, lug, pattern, splice := furnished(t)
 	for path, texts := range map[string][]string{
-		"/":                         {"hinge-lower", "SM-1200", "The ledger", "test.example/saltmarsh"},
+		"/":                         {"hinge-lower", "SM-1200", "The ledger", "saltmarsh.example/jointledger"},
 		"/?part=SM-305&latest=true": {"bracket", "Found, newest first"},
 		"/?part=nothing":            {"No record matches"},
 		"/records/" + lug.ID:        {"✓", "Least margin", "hinge-lower", "boom hinge, lower lug", "input and geometry agree", "cleo", lug.RecordDigest, lug.InputDigest, "AFFDL-TR-69-42", "Cautions"},
