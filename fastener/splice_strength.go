@@ -150,7 +150,7 @@ func (p *PreparedSplice) addCheck(c strength.Check, row, node int, capacity capa
 	}
 	check := rowCheck{check: c, row: row, node: node, capacity: capacity.value, why: capacity.why}
 	for _, given := range []strength.Level{strength.Limit, strength.Ultimate} {
-		check.factor[given] = p.factors.Demand(c, given, strength.ByRegulation, false).Factor()
+		check.factor[given] = p.factors.Demand(&c, given, strength.ByRegulation, false).Factor()
 	}
 	p.rowChecks = append(p.rowChecks, check)
 }

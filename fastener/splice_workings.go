@@ -67,7 +67,7 @@ func (p *PreparedSplice) CaseWorkings(i, c int) []strength.Working {
 	own := []strength.Working{{Symbol: symbol, Value: load, Unit: strength.Force, Equation: equation, Source: source, Mark: strength.Derived}}
 	level := p.cases[i].level
 	demand := load * check.factor[level]
-	own = append(own, p.factors.Demand(check.check, level, strength.ByRegulation, false).Workings(strength.Working{}, p.factors, symbol, demand, strength.Force)...)
+	own = append(own, p.factors.Demand(&check.check, level, strength.ByRegulation, false).Workings(strength.Working{}, p.factors, symbol, demand, strength.Force)...)
 	own = append(own, marginStep(compare(demand, check.capacity, check.why), "P_row")...)
 	return append(steps, stampRow(check, p.cases[i].id, own)...)
 }

@@ -29,7 +29,7 @@ func (p *PreparedPattern) place(i int, c strength.Check, s safety) place {
 	c.Fastener = p.pattern.Fasteners[i].ID
 	at := place{p: p, c: &c, i: i, level: c.Level, demands: &demands{}}
 	for _, given := range []strength.Level{strength.Limit, strength.Ultimate} {
-		at.demands[given] = p.factors.Demand(c, given, s.kind, s.applySpecial)
+		at.demands[given] = p.factors.Demand(&c, given, s.kind, s.applySpecial)
 		at.factor[given] = at.demands[given].Factor()
 	}
 	return at

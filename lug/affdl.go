@@ -187,8 +187,8 @@ func (m *affdl) settleHead(p *part) *affdlHead {
 // head adds the checks of one head.
 func (m *affdl) head(h *affdlHead) {
 	for level, at := range levels {
-		m.axially(h, strength.NetSection, at, h.net[level], result{}, pullAlong)
-		m.axially(h, strength.Bearing, at, h.bearing[level][0], h.bearing[level][1], along)
+		m.netCheck(h, at, &h.net[level])
+		m.bearingCheck(h, at, &h.bearing[level])
 	}
 	m.transverseCheck(h)
 	m.obliqueCheck(h)
@@ -197,24 +197,35 @@ func (m *affdl) head(h *affdlHead) {
 	m.pressFit(h)
 }
 
-// axially adds a check that an axial load exercises, from the strengths of a
-// pull and of a push.
-func (m *affdl) axially(h *affdlHead, mode strength.Mode, level strength.Level, pulled, pushed result, on sides) {
-	write := func(s *sheet, l *load) (ultimate, yield float64) { return h.bears(s, l.way) }
-	ends := [2][2]*Equation{{&eqBearYield, &eqBearYPush}, {&eqBearStrong, &eqBearPush}}
-	if mode == strength.NetSection {
-		write = func(s *sheet, _ *load) (ultimate, yield float64) { return h.nets(s) }
-		ends = [2][2]*Equation{{&eqNetYieldL}, {&eqNetStrong}}
-	}
-	end := ends[levelIndex(level)]
-	m.check(h.member, mode, level, strength.Force, strength.ByRegulation, end[0], func(s *sheet) law {
-		s.rest(pulled)
-		s.rest(pushed)
+// netCheck adds the net section under a pull.
+func (m *affdl) netCheck(h *affdlHead, level strength.Level, net *result) {
+	end := [2]*Equation{&eqNetYieldL, &eqNetStrong}[levelIndex(level)]
+	m.check(h.member, strength.NetSection, level, strength.Force, strength.ByRegulation, end, func(s *sheet) law {
+		s.rest(*net)
 		return law{
-			sides: on, along: [2]allowable{pulled.over(h.share), pushed.over(h.share)},
+			sides: pullAlong, along: [2]allowable{net.over(h.share)},
+			trace: func(s *sheet, _ *load) {
+				ultimate, yield := h.nets(s)
+				h.allow(s, end.Symbol, [...]float64{yield, ultimate}[levelIndex(level)])
+			},
+		}
+	})
+}
+
+// bearingEnds are what the bearing of a pull and of a push ends in, by level.
+var bearingEnds = [2][2]*Equation{{&eqBearYield, &eqBearYPush}, {&eqBearStrong, &eqBearPush}}
+
+// bearingCheck adds the bearing under an axial load, a pull and a push.
+func (m *affdl) bearingCheck(h *affdlHead, level strength.Level, ways *[2]result) {
+	ends := &bearingEnds[levelIndex(level)]
+	m.check(h.member, strength.Bearing, level, strength.Force, strength.ByRegulation, ends[0], func(s *sheet) law {
+		s.rest(ways[0])
+		s.rest(ways[1])
+		return law{
+			sides: along, along: [2]allowable{ways[0].over(h.share), ways[1].over(h.share)},
 			trace: func(s *sheet, l *load) {
-				ultimate, yield := write(s, l)
-				h.allow(s, end[l.way].Symbol, [...]float64{yield, ultimate}[levelIndex(level)])
+				ultimate, yield := h.bears(s, l.way)
+				h.allow(s, ends[l.way].Symbol, [...]float64{yield, ultimate}[levelIndex(level)])
 			},
 		}
 	})
@@ -299,8 +310,6 @@ func (h *affdlHead) bearingStress(s *sheet, way int) (ultimate, yield float64) {
 	yield = s.apply(equationY, k*end*fty)
 	over := h.m.yieldRatio(s)
 
-	e, ey := eqBearStress, eqBearYStress
-	e.Text, ey.Text = "min(F_bru.L, y F_bry.L", "F_bry.L"
 	ultimate = min(ultimate, over*yield)
 	handbook := func(p strength.Property) (float64, bool) {
 		for _, b := range h.head.Material.Bearing {
@@ -328,14 +337,17 @@ func (h *affdlHead) bearingStress(s *sheet, way int) (ultimate, yield float64) {
 		s.find(strength.Warning, "cap-unknown", h.member, affdlSource,
 			"the material %q has no handbook bearing values, above which the bearing strength of e/D %.4g must not go", h.head.Material.Name, ratio)
 	}
-	if s.recording() {
-		if hasU {
-			e.Text += ", F_bru"
-		}
-		if hasY {
-			e.Text += ", y F_bry"
-			ey.Text = "min(F_bry.L, F_bry)"
-		}
+	if !s.recording() {
+		return s.apply(&eqBearStress, ultimate), s.apply(&eqBearYStress, yield)
+	}
+	e, ey := eqBearStress, eqBearYStress
+	e.Text, ey.Text = "min(F_bru.L, y F_bry.L", "F_bry.L"
+	if hasU {
+		e.Text += ", F_bru"
+	}
+	if hasY {
+		e.Text += ", y F_bry"
+		ey.Text = "min(F_bry.L, F_bry)"
 	}
 	e.Text += ")"
 	return s.apply(&e, ultimate), s.apply(&ey, yield)

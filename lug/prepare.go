@@ -140,23 +140,19 @@ func (p *Prepared) heads() []*part {
 func (b *builder) check(member string, mode strength.Mode, level strength.Level, unit strength.Unit,
 	safety strength.Safety, source *Equation, write func(*sheet) law,
 ) {
-	c := strength.Check{
-		Member: member, Mode: mode, Level: level, Unit: unit,
-		Method: b.name, Source: source.source(), Compared: b.choice.Compared,
-	}
 	s := b.sheet()
 	s.mark = source.Mark
-	k := settled{write: write, place: b.place, safety: safety, special: b.special}
-	k.law = write(s)
-	k.why = s.why
-	c.Mark = s.mark
+	b.laws = append(b.laws, settled{law: write(s), why: s.why, write: write, place: b.place, safety: safety, special: b.special})
+	b.checks = append(b.checks, strength.Check{
+		Member: member, Mode: mode, Level: level, Unit: unit, Mark: s.mark,
+		Method: b.name, Source: source.source(), Compared: b.choice.Compared,
+	})
 	b.read |= s.read
+	c, k := &b.checks[len(b.checks)-1], &b.laws[len(b.laws)-1]
 	for i, at := range levels {
 		k.factor[i] = b.factors.Demand(c, at, safety, b.special).Factor()
 	}
 	b.wipe(s)
-	b.checks = append(b.checks, c)
-	b.laws = append(b.laws, k)
 }
 
 // sheet is one on which numbers are settled, wiped if it was used before.
@@ -287,7 +283,7 @@ func (p *Prepared) CaseWorkings(i, c int) []strength.Working {
 	if m.Status == strength.Undetermined {
 		return s.record.lines
 	}
-	demand := p.factors.Demand(p.checks[c], l.Level, k.safety, k.special)
+	demand := p.factors.Demand(&p.checks[c], l.Level, k.safety, k.special)
 	switch {
 	case k.unloaded:
 	case k.ratio != nil:

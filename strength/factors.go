@@ -20,7 +20,7 @@ type SpecialFactor struct {
 }
 
 // Names reports whether the special factor bears on a check.
-func (s SpecialFactor) Names(c Check) bool {
+func (s SpecialFactor) Names(c *Check) bool {
 	return (len(s.Modes) == 0 || slices.Contains(s.Modes, c.Mode)) &&
 		(len(s.Members) == 0 || slices.Contains(s.Members, c.Member)) &&
 		(c.Level == Ultimate || !s.UltimateOnly)
@@ -31,7 +31,7 @@ func (s SpecialFactor) Names(c Check) bool {
 // multiplied together.
 //
 // Source: 14 CFR 25.619, 25.625 (the highest pertinent factor, not a product).
-func (f Factors) Largest(c Check) (s float64, name string) {
+func (f Factors) Largest(c *Check) (s float64, name string) {
 	s, name = f.Fitting, "fitting factor"
 	for _, special := range f.Special {
 		if special.Names(c) && special.Value > s {
@@ -75,7 +75,7 @@ func (d Demand) Factor() float64 { return d.Level * d.Special }
 
 // Demand returns the factors on a load given at one level for check c. Special
 // factors act on ByMethod and ByResistance only when applySpecial is set.
-func (f Factors) Demand(c Check, givenAt Level, safety Safety, applySpecial bool) Demand {
+func (f Factors) Demand(c *Check, givenAt Level, safety Safety, applySpecial bool) Demand {
 	d := Demand{Special: 1, Level: 1}
 	if safety == ByRegulation || applySpecial {
 		d.Special, d.SpecialName = f.Largest(c)

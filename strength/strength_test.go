@@ -43,7 +43,7 @@ func TestDemand(t *testing.T) {
 		{"resistance, limit load: L u", check("lug", strength.Fracture, strength.Ultimate), strength.Limit, strength.ByResistance, false, 1.5, false},
 		{"resistance, ultimate load: L", check("lug", strength.Fracture, strength.Ultimate), strength.Ultimate, strength.ByResistance, false, 1, false},
 	} {
-		d := f.Demand(c.check, c.given, c.safety, c.applySpecial)
+		d := f.Demand(&c.check, c.given, c.safety, c.applySpecial)
 		if got := d.Factor(); math.Abs(got-c.want) > 1e-15 || d.FromUltimate != c.fromUltimate {
 			t.Errorf("%s: factor %v, from ultimate %v; want %v, %v", c.name, got, d.FromUltimate, c.want, c.fromUltimate)
 		}
