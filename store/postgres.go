@@ -36,9 +36,12 @@ const (
 // postgresDefaults are set for every session unless the URL sets them. A server
 // that hangs within a transaction lets go of the head after half a minute.
 var postgresDefaults = map[string]string{
-	"application_name":                    "jointledger",
-	"statement_timeout":                   "10s",
-	"jit":                                 "off", // it costs more than these queries take
+	"application_name":  "jointledger",
+	"statement_timeout": "10s",
+	"jit":               "off", // it costs more than these queries take
+	// There is an index for every query. A plan made while a table was small
+	// would go on reading it whole when it has grown.
+	"enable_seqscan":                      "off",
 	"idle_in_transaction_session_timeout": "30s",
 }
 

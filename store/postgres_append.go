@@ -122,9 +122,16 @@ func queueStanding(batch *pgx.Batch, b service.Batch) {
 		}
 	}
 	if len(indexes) > 0 {
+		// The latest before the batch stands next below it in the index over
+		// subjects. It is looked for there by the whole of that index's key: by
+		// equal columns and the greatest idx, the planner may instead read the
+		// log backwards until it meets the subject.
 		batch.Queue(`UPDATE standing SET latest = false WHERE idx = ANY (ARRAY(
-			SELECT (SELECT max(idx) FROM entries n WHERE `+sameSubject+` AND n.idx < $1)
-			FROM unnest($2::text[], $3::text[], $4::text[], $5::text[], $6::text[]) r (part, revision, joint, aspect, kind)))`,
+			SELECT b.idx FROM unnest($2::text[], $3::text[], $4::text[], $5::text[], $6::text[]) r (part, revision, joint, aspect, kind), LATERAL (
+				SELECT part, revision, joint, aspect, kind, idx FROM entries
+				WHERE type = 'record' AND (part, revision, joint, aspect, kind, idx) < (r.part, r.revision, r.joint, r.aspect, r.kind, $1)
+				ORDER BY part DESC, revision DESC, joint DESC, aspect DESC, kind DESC, idx DESC LIMIT 1
+			) b WHERE (b.part, b.revision, b.joint, b.aspect, b.kind) = (r.part, r.revision, r.joint, r.aspect, r.kind)))`,
 			b.Base.Size, of[0], of[1], of[2], of[3], of[4])
 		batch.Queue(`INSERT INTO standing (idx, state, latest) SELECT idx, 'recorded', latest FROM unnest($1::bigint[], $2::boolean[]) r (idx, latest)`, indexes, latest)
 	}

@@ -141,6 +141,11 @@ BEGIN
     IF NOT FOUND THEN
         RAISE EXCEPTION 'the head is not of % entries any more', base_size USING ERRCODE = 'LD001';
     END IF;
+    -- The statements of an append have one good plan each, by the index whose
+    -- order they ask for. It is made once, perhaps while the tables are empty, and not
+    -- for every batch. It holds for this transaction.
+    PERFORM set_config('plan_cache_mode', 'force_generic_plan', true);
+    PERFORM set_config('enable_sort', 'off', true);
 END $$;
 
 CREATE FUNCTION revoke_key(key_id text, revoked_at text) RETURNS void LANGUAGE plpgsql AS $$
