@@ -300,14 +300,14 @@ func (p *PreparedPattern) enter(i int) {
 
 // Workings implements strength.Calculation. Steps of the sharing have the
 // member "pattern" and no mode: they are the same in every check.
-func (p *PreparedPattern) Workings(c int) []strength.Working {
-	return p.stamp(c, "", p.assessments[c].steps())
+func (p *PreparedPattern) Workings(c int, steps []strength.Working) []strength.Working {
+	return append(steps, p.stamp(c, "", p.assessments[c].steps())...)
 }
 
 // CaseWorkings implements strength.Calculation.
-func (p *PreparedPattern) CaseWorkings(i, c int) []strength.Working {
+func (p *PreparedPattern) CaseWorkings(i, c int, steps []strength.Working) []strength.Working {
 	p.enter(i)
-	return p.stamp(c, p.cases[i].ID, p.assessments[c].caseSteps(&p.state, i))
+	return append(steps, p.stamp(c, p.cases[i].ID, p.assessments[c].caseSteps(&p.state, i))...)
 }
 
 // stamp writes the place of a check into steps that have none of their own.

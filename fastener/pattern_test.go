@@ -76,7 +76,7 @@ func TestWorkingsClose(t *testing.T) {
 					if margins[c].Status == strength.NotExercised {
 						continue
 					}
-					steps := append(prepared.Workings(c), prepared.CaseWorkings(i, c)...)
+					steps := prepared.CaseWorkings(i, c, prepared.Workings(c, nil))
 					assertClosed(t, check, margins[c], steps)
 					followPattern(t, check.Member+" "+check.Mode.String()+" "+check.Method, steps)
 					followed++
@@ -214,7 +214,7 @@ func TestWorkingsOfALineClose(t *testing.T) {
 		prepared.Margins(0, margins)
 		for c, check := range prepared.Checks() {
 			if margins[c].Status != strength.NotExercised {
-				steps := append(prepared.Workings(c), prepared.CaseWorkings(0, c)...)
+				steps := prepared.CaseWorkings(0, c, prepared.Workings(c, nil))
 				assertClosed(t, check, margins[c], steps)
 				followPattern(t, check.Member+" "+check.Mode.String()+" "+check.Method, steps)
 			}

@@ -76,7 +76,7 @@ func TestWildPatternsStayFinite(t *testing.T) {
 			prepared.Margins(i, margins)
 			for k, m := range margins {
 				finite(prepared.Checks()[k].Method, m.Demand+m.Allowable+m.Margin)
-				for _, s := range append(prepared.Workings(k), prepared.CaseWorkings(i, k)...) {
+				for _, s := range prepared.CaseWorkings(i, k, prepared.Workings(k, nil)) {
 					finite(prepared.Checks()[k].Method+" "+s.Symbol, s.Value)
 				}
 			}

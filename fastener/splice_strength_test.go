@@ -108,7 +108,7 @@ func TestNoSharingLeavesChecksUndetermined(t *testing.T) {
 		if m.Status != strength.Undetermined || !strings.Contains(render(*m.Why), "swift has no form for double shear") {
 			t.Errorf("%+v: %+v", p.Checks()[i], m)
 		}
-		if len(p.CaseWorkings(0, i)) != 0 {
+		if len(p.CaseWorkings(0, i, nil)) != 0 {
 			t.Errorf("check %d has steps", i)
 		}
 	}

@@ -38,36 +38,34 @@ func (s *sharingSheet) add(row int, symbol string, value float64, unit strength.
 
 // Workings implements strength.Calculation. Steps of the sharing have the
 // member "splice" and no mode: they are the same in every check.
-func (p *PreparedSplice) Workings(c int) []strength.Working {
+func (p *PreparedSplice) Workings(c int, steps []strength.Working) []strength.Working {
 	check := &p.rowChecks[c]
-	var steps []strength.Working
 	switch {
 	case check.check.Compared:
-		steps = p.plasticSteps(check.row)
+		steps = append(steps, p.plasticSteps(check.row)...)
 	case p.main.why.Empty():
-		steps = p.sharingSteps()
+		steps = append(steps, p.sharingSteps()...)
 	}
 	return append(steps, stampRow(check, "", p.allowable(check.check, check.row, check.node).steps)...)
 }
 
 // CaseWorkings implements strength.Calculation.
-func (p *PreparedSplice) CaseWorkings(i, c int) []strength.Working {
+func (p *PreparedSplice) CaseWorkings(i, c int, steps []strength.Working) []strength.Working {
 	check := &p.rowChecks[c]
 	if why := p.enter(i); why != nil {
-		return nil
+		return steps
 	}
 	load := p.load(check)
-	var steps []strength.Working
 	if check.check.Compared {
-		steps = p.plasticCaseSteps(i, check.row)
+		steps = append(steps, p.plasticCaseSteps(i, check.row)...)
 	} else {
-		steps = p.sharingCaseSteps(i)
+		steps = append(steps, p.sharingCaseSteps(i)...)
 	}
 	symbol, equation, source := p.loadStep(check)
 	own := []strength.Working{{Symbol: symbol, Value: load, Unit: strength.Force, Equation: equation, Source: source, Mark: strength.Derived}}
 	level := p.cases[i].level
 	demand := load * check.factor[level]
-	own = append(own, p.factors.Demand(&check.check, level, strength.ByRegulation, false).Workings(strength.Working{}, p.factors, symbol, demand, strength.Force)...)
+	own = p.factors.Demand(&check.check, level, strength.ByRegulation, false).Workings(own, strength.Working{}, p.factors, symbol, demand, strength.Force)
 	own = append(own, marginStep(compare(demand, check.capacity, check.why), "P_row")...)
 	return append(steps, stampRow(check, p.cases[i].id, own)...)
 }

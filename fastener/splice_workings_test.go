@@ -266,7 +266,7 @@ func TestSpliceWorkingsFollow(t *testing.T) {
 			if margins[c].Status == strength.NotExercised {
 				continue
 			}
-			steps := append(p.Workings(c), p.CaseWorkings(0, c)...)
+			steps := p.CaseWorkings(0, c, p.Workings(c, nil))
 			what := fmt.Sprintf("%s %s row %d", check.Method, check.Member, check.Row)
 			followed[check.Method] += followWorkings(rt, what, steps)
 			assertClosed(t, check, margins[c], steps)

@@ -43,7 +43,7 @@ func (a *place) shareOf(c *caseState) *Share { return &c.shares[a.level][a.i] }
 // demandSteps write a demand from the load of the given symbol, and the margin
 // against the allowable of the given symbol.
 func (a *place) demandSteps(c *caseState, symbol string, load float64, capacity string, m strength.Margin) []strength.Working {
-	steps := a.demands[c.level].Workings(strength.Working{}, a.p.factors, symbol, load*a.factor[c.level], a.c.Unit)
+	steps := a.demands[c.level].Workings(nil, strength.Working{}, a.p.factors, symbol, load*a.factor[c.level], a.c.Unit)
 	return append(steps, marginStep(m, capacity)...)
 }
 
@@ -242,7 +242,7 @@ func (a *interactionCheck) caseSteps(c *caseState, i int) []strength.Working {
 	}
 	// The demand that Workings writes last is replaced by the two ratios.
 	factors := func(symbol string) (steps []strength.Working, equation string) {
-		steps = a.demands[c.level].Workings(strength.Working{}, a.p.factors, symbol, 0, strength.Force)
+		steps = a.demands[c.level].Workings(nil, strength.Working{}, a.p.factors, symbol, 0, strength.Force)
 		last := len(steps) - 1
 		return steps[:last], steps[last].Equation
 	}

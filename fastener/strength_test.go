@@ -264,7 +264,7 @@ func TestShearOutNeedsItsStrength(t *testing.T) {
 		if m := margins[k]; m.Status != strength.Undetermined || !strings.Contains(m.Why.Render(write), "F_su") {
 			t.Errorf("%s: %+v", c.Member, m)
 		}
-		if steps := append(prepared.Workings(k), prepared.CaseWorkings(0, k)...); len(steps) == 0 {
+		if steps := prepared.CaseWorkings(0, k, prepared.Workings(k, nil)); len(steps) == 0 {
 			t.Errorf("%s: no workings", c.Member)
 		}
 	}

@@ -49,7 +49,7 @@ func workingOf(t *testing.T, j lug.Joint, o lug.Options, angle float64, mode str
 	p := prepare(t, j, []lug.Choice{{Method: affdl, Options: o}}, at(1000, angle))
 	for k, c := range p.Checks() {
 		if c.Member == "lug" && c.Mode == mode && c.Level == strength.Ultimate {
-			if w, ok := working(append(p.Workings(k), p.CaseWorkings(0, k)...), symbol); ok {
+			if w, ok := working(p.CaseWorkings(0, k, p.Workings(k, nil)), symbol); ok {
 				return w.Value
 			}
 			out := make([]strength.Margin, len(p.Checks()))

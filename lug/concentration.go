@@ -26,11 +26,12 @@ var (
 // stress over P/A_net) and on the bearing area (K_tb: over P/(D t)). Outside
 // the range of the fit there is none, and a finding says so.
 func (p *Prepared) StressConcentration() []strength.Working {
-	var all []strength.Working
+	const most = 8 // steps of a head
+	all := make([]strength.Working, 0, most*len(p.heads()))
 	for _, part := range p.heads() {
-		s := &sheet{record: &record{heading: strength.Working{Member: part.member}}}
+		s := &sheet{record: &record{heading: strength.Working{Member: part.member}, lines: all, others: len(all)}}
 		if part.concentration(s) {
-			all = append(all, s.record.lines...)
+			all = s.record.lines
 		}
 	}
 	return all

@@ -244,34 +244,33 @@ func (p *Prepared) margin(i, c int) strength.Margin {
 	return out[0]
 }
 
-// Workings returns the steps behind check c that no load case changes.
-func (p *Prepared) Workings(c int) []strength.Working {
-	s := p.fresh(c, "")
+// Workings appends the steps behind check c that no load case changes.
+func (p *Prepared) Workings(c int, steps []strength.Working) []strength.Working {
+	s := p.fresh(c, "", steps)
 	p.laws[c].write(s)
 	return s.record.lines
 }
 
-// usualSteps is how many a check has as a rule.
-const usualSteps = 16
-
-// fresh is a sheet on which the steps of a check are written to be read.
-func (p *Prepared) fresh(c int, loadCase string) *sheet {
+// fresh is a sheet on which the steps of a check are written to be read, after
+// the steps of others.
+func (p *Prepared) fresh(c int, loadCase string, steps []strength.Working) *sheet {
 	check := &p.checks[c]
 	return &sheet{record: &record{
 		heading: strength.Working{Member: check.Member, Method: check.Method, Mode: check.Mode, Level: check.Level, LoadCase: loadCase},
-		lines:   make([]strength.Working, 0, usualSteps),
+		lines:   steps,
+		others:  len(steps),
 	}}
 }
 
-// CaseWorkings returns the steps behind check c that load case i makes: the
+// CaseWorkings appends the steps behind check c that load case i makes: the
 // load, what its direction does, the factors, the demand and the margin.
-func (p *Prepared) CaseWorkings(i, c int) []strength.Working {
+func (p *Prepared) CaseWorkings(i, c int, steps []strength.Working) []strength.Working {
 	l, k := &p.loads[i], &p.laws[c]
 	m := p.margin(i, c)
 	if m.Status == strength.NotExercised {
-		return nil
+		return steps
 	}
-	s := p.fresh(c, l.ID)
+	s := p.fresh(c, l.ID, steps)
 	s.input("", "P", l.Force, strength.Force, fieldForce)
 	s.input("", "α", l.angle, strength.Degrees, fieldAngle)
 	if k.why != nil {
@@ -288,13 +287,12 @@ func (p *Prepared) CaseWorkings(i, c int) []strength.Working {
 	case k.unloaded:
 	case k.ratio != nil:
 		factored := k.factor[l.level] * l.Force
-		steps := demand.Workings(s.record.heading, p.factors, "P", factored, strength.Force)
-		steps[len(steps)-1].Symbol = "P_d"
-		s.record.lines = append(s.record.lines, steps...)
+		s.record.lines = demand.Workings(s.record.lines, s.record.heading, p.factors, "P", factored, strength.Force)
+		s.record.lines[len(s.record.lines)-1].Symbol = "P_d"
 		s.apply(&eqUnity, m.Demand)
 		k.ratio(s, l, factored)
 	default:
-		s.record.lines = append(s.record.lines, demand.Workings(s.record.heading, p.factors, cmp.Or(k.measure, "P"), m.Demand, p.checks[c].Unit)...)
+		s.record.lines = demand.Workings(s.record.lines, s.record.heading, p.factors, cmp.Or(k.measure, "P"), m.Demand, p.checks[c].Unit)
 	}
 	if k.after != nil {
 		k.after(s, m.Demand)

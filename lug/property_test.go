@@ -156,7 +156,7 @@ func TestOnlyNumbersComeOut(t *testing.T) {
 			if m.Status == strength.Undetermined && (m.Why == nil || render(*m.Why) == "") {
 				t.Fatalf("%+v does not say why", p.Checks()[k])
 			}
-			for _, w := range append(p.Workings(k), p.CaseWorkings(0, k)...) {
+			for _, w := range p.CaseWorkings(0, k, p.Workings(k, nil)) {
 				if math.IsNaN(w.Value) || math.IsInf(w.Value, 0) {
 					t.Fatalf("%+v: %+v", p.Checks()[k], w)
 				}
@@ -383,7 +383,7 @@ func TestWeakPin(t *testing.T) {
 			for k, c := range p.Checks() {
 				if c.Mode == strength.WholeJoint && settled(out[k]) {
 					values := map[string]float64{}
-					for _, w := range append(p.Workings(k), p.CaseWorkings(0, k)...) {
+					for _, w := range p.CaseWorkings(0, k, p.Workings(k, nil)) {
 						values[w.Symbol] = w.Value
 					}
 					return values, out[k].Allowable

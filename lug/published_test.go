@@ -129,7 +129,7 @@ func (c *publishedCase) run(t *testing.T) {
 	}
 	for _, e := range c.Workings {
 		i, k := find(t, p, r, e.LoadCase, e.Member, e.Mode, e.Level, e.Method)
-		w, ok := working(append(p.Workings(k), p.CaseWorkings(i, k)...), e.Symbol)
+		w, ok := working(p.CaseWorkings(i, k, p.Workings(k, nil)), e.Symbol)
 		if !ok {
 			t.Errorf("no working %s of %s %s %s", e.Symbol, e.Member, e.Mode, e.Level)
 			continue

@@ -18,6 +18,7 @@ type sheet struct {
 type record struct {
 	heading strength.Working // member, method, mode, level, load case of each step
 	lines   []strength.Working
+	others  int // of lines, the first ones, which are not of this record
 }
 
 // recording reports whether the steps will be read.
@@ -120,7 +121,7 @@ func materialSource(m *strength.Material) string {
 
 // keep adds a line unless it stands there already.
 func (s *sheet) keep(w strength.Working) {
-	for i := range s.record.lines {
+	for i := s.record.others; i < len(s.record.lines); i++ {
 		if s.record.lines[i].Symbol == w.Symbol && s.record.lines[i] == w {
 			return
 		}

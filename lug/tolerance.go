@@ -235,20 +235,20 @@ func (t *Toleranced) describe(upper uint) strength.Message {
 	return strength.Say(format, args...)
 }
 
-// Workings returns nothing: which corner a check's steps come from depends on
+// Workings appends nothing: which corner a check's steps come from depends on
 // the load case.
-func (t *Toleranced) Workings(int) []strength.Working { return nil }
+func (t *Toleranced) Workings(_ int, steps []strength.Working) []strength.Working { return steps }
 
-// CaseWorkings returns all steps behind check k in load case i, at its corner.
-func (t *Toleranced) CaseWorkings(i, k int) []strength.Working {
+// CaseWorkings appends all steps behind check k in load case i, at its corner.
+func (t *Toleranced) CaseWorkings(i, k int, steps []strength.Working) []strength.Working {
 	c := t.worst(i, k)
 	if c < 0 {
-		return nil
+		return steps
 	}
 	corner := &t.corners[c]
-	at := corner.index[k]
-	steps := append(corner.Workings(at), corner.CaseWorkings(i, at)...)
-	for s := range steps {
+	at, others := corner.index[k], len(steps)
+	steps = corner.CaseWorkings(i, at, corner.Workings(at, steps))
+	for s := others; s < len(steps); s++ {
 		steps[s].LoadCase = t.loads[i].ID
 	}
 	return steps

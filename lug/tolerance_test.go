@@ -40,7 +40,7 @@ func TestWorstCorners(t *testing.T) {
 		if math.Abs(out[k].Allowable-want) > 1e-6 || math.Abs(nominal-usual) > 1e-6 || render(p.Corner(0, k)) != corner {
 			t.Errorf("%s: %g (%s), nominal %g", c.Mode, out[k].Allowable, render(p.Corner(0, k)), nominal)
 		}
-		if w, ok := working(p.CaseWorkings(0, k), "allowable"); !ok || w.Value != out[k].Allowable {
+		if w, ok := working(p.CaseWorkings(0, k, nil), "allowable"); !ok || w.Value != out[k].Allowable {
 			t.Errorf("%s: the workings are of another corner: %v", c.Mode, w.Value)
 		}
 	}
@@ -111,7 +111,7 @@ func TestCornersAreTheWorst(t *testing.T) {
 				r.Fatalf("%+v: %s, nominal %s", c, out[k].Status, nominal[k].Status)
 			}
 			if settled(out[k]) {
-				if w, ok := working(p.CaseWorkings(0, k), "margin"); !ok || w.Value != out[k].Margin {
+				if w, ok := working(p.CaseWorkings(0, k, nil), "margin"); !ok || w.Value != out[k].Margin {
 					r.Fatalf("%+v: the workings have the margin %g, the check %g", c, w.Value, out[k].Margin)
 				}
 			}

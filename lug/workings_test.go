@@ -53,7 +53,7 @@ func explained(t *testing.T, name string, p *lug.Prepared, cases int) (equations
 				continue
 			}
 			what := strings.Join([]string{name, c.Member, c.Method, c.Mode.String(), c.Level.String()}, " ")
-			steps := append(p.Workings(k), p.CaseWorkings(i, k)...)
+			steps := p.CaseWorkings(i, k, p.Workings(k, nil))
 			type place struct{ member, symbol string }
 			values := map[place]float64{}
 			members := map[string]map[string]bool{}

@@ -47,11 +47,17 @@ func toleranced(document any) []limited {
 	v := reflect.ValueOf(document).Elem()
 	var found []limited
 	for _, m := range lengthsOf(v.Type()) {
-		member, err := v.FieldByIndexErr(m.index)
-		if err != nil {
-			continue // within an object that is left out
+		member := v
+		for _, i := range m.index {
+			if member = reflect.Indirect(member); !member.IsValid() {
+				break // an object that is left out
+			}
+			member = member.Field(i)
 		}
-		if member = reflect.Indirect(member); !member.IsValid() {
+		if member.Kind() == reflect.Pointer {
+			member = member.Elem()
+		}
+		if !member.IsValid() {
 			continue
 		}
 		if t := member.Addr().Interface().(*Length).Object; t != nil {

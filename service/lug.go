@@ -24,7 +24,9 @@ type LugDocument struct {
 	Factors       Factors                              `json:"factors"`
 	LoadCases     []LugLoadCase                        `json:"load_cases" validate:"min=1,max=100000,dive"`
 
-	choices []lug.Choice // made by resolve
+	// Made by resolve:
+	choices []lug.Choice
+	limited []limited // the lengths with a tolerance
 }
 
 // LugHead is a lug, or one leg of a clevis.
@@ -118,7 +120,8 @@ func (d *LugDocument) resolve(look lookup, f *faults) {
 		}
 		bushing(d.Clevis.Bushing, "/clevis/bushing")
 	}
-	f.limits(toleranced(d))
+	d.limited = toleranced(d)
+	f.limits(d.limited)
 	d.Factors.resolve([]string{"lug", "bushing", "clevis", "clevis-bushing", "pin", "joint"}, f)
 	d.resolveMethods(look, f)
 }
@@ -247,7 +250,7 @@ func (d *LugDocument) joint() lug.Joint {
 func (d *LugDocument) tolerances() []lug.Tolerance {
 	mm := d.Units.scale(strength.Length)
 	var list []lug.Tolerance
-	for _, l := range toleranced(d) {
+	for _, l := range d.limited {
 		list = append(list, lug.Tolerance{Pointer: l.at, Minus: l.Minus * mm, Plus: l.Plus * mm})
 	}
 	return list
@@ -263,7 +266,7 @@ const (
 // cornersFit notes when the load cases are too many for the combinations of
 // limits, and reports whether all can be calculated.
 func (d *LugDocument) cornersFit(most int, f *faults) bool {
-	tolerances := len(toleranced(d))
+	tolerances := len(d.limited)
 	if tolerances > lug.MostTolerances { // which is a fault already
 		return false
 	}
@@ -313,10 +316,10 @@ func (d *LugDocument) prepare(f *faults) *prepared {
 	}
 	p.add = func(r *Result, _ []int) {
 		r.MethodOptions = d.MethodOptions
-		r.StressConcentration = []Working{}
 		steps := nominal.StressConcentration()
+		r.StressConcentration = make([]Working, len(steps))
 		for i := range steps {
-			r.StressConcentration = append(r.StressConcentration, d.Units.working(&steps[i]))
+			r.StressConcentration[i] = d.Units.working(&steps[i])
 		}
 	}
 	return p

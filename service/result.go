@@ -312,13 +312,16 @@ func (a assembly) check(at place, m strength.Margin) Check {
 // workings gathers the steps behind the kept checks, each once.
 func (a assembly) workings(kept []place) []Working {
 	var steps distinct
-	static := map[int]bool{}
+	static := make([]bool, len(a.calculation.Checks()))
+	var some []strength.Working
 	for _, at := range kept {
 		if !static[at.check] {
 			static[at.check] = true
-			steps.add(a.calculation.Workings(at.check))
+			some = a.calculation.Workings(at.check, some[:0])
+			steps.add(some)
 		}
-		steps.add(a.calculation.CaseWorkings(at.load, at.check))
+		some = a.calculation.CaseWorkings(at.load, at.check, some[:0])
+		steps.add(some)
 	}
 	out := make([]Working, len(steps.list))
 	for i := range steps.list {
@@ -331,7 +334,7 @@ func (a assembly) workings(kept []place) []Working {
 type distinct struct {
 	list []strength.Working
 	next []int32          // of list: the one before it of the same outline, plus one
-	last map[uint64]int32 // by the hash of an outline: the last in list, plus one
+	last map[uint64]int32 // by the hash of an outline: the last in list, plus one; nil of a short list
 }
 
 // outline is what most steps differ in: hashing the whole of them, texts of
@@ -346,26 +349,56 @@ type outline struct {
 
 var outlineSeed = maphash.MakeSeed()
 
-// usualSteps is how many steps an answer has as a rule.
-const usualSteps = 96
+func hashOf(w *strength.Working) uint64 {
+	return maphash.Comparable(outlineSeed, outline{w.Member, w.Fastener, w.LoadCase, w.Symbol, w.Row, w.Mode, w.Level, w.Value})
+}
+
+// A list of up to shortList steps, which most answers have, is searched through
+// in less time than it takes to hash.
+const shortList = 96
 
 func (d *distinct) add(steps []strength.Working) {
-	if d.last == nil {
-		d.list, d.next, d.last = make([]strength.Working, 0, usualSteps), make([]int32, 0, usualSteps), make(map[uint64]int32, usualSteps)
+	if d.list == nil {
+		d.list = make([]strength.Working, 0, shortList)
 	}
-next:
 	for i := range steps {
-		w := &steps[i]
-		key := maphash.Comparable(outlineSeed, outline{w.Member, w.Fastener, w.LoadCase, w.Symbol, w.Row, w.Mode, w.Level, w.Value})
-		last := d.last[key]
-		for at := last; at > 0; at = d.next[at-1] {
-			if d.list[at-1] == *w {
-				continue next
+		if w := &steps[i]; !d.has(w) {
+			d.list = append(d.list, *w)
+			if d.last != nil {
+				d.index(len(d.list) - 1)
 			}
 		}
-		d.list, d.next = append(d.list, *w), append(d.next, last)
-		d.last[key] = int32(len(d.list))
 	}
+	if d.last == nil && len(d.list) > shortList {
+		d.last = make(map[uint64]int32, 2*len(d.list))
+		for i := range d.list {
+			d.index(i)
+		}
+	}
+}
+
+func (d *distinct) has(w *strength.Working) bool {
+	if d.last == nil {
+		for i := range d.list {
+			if d.list[i].Value == w.Value && d.list[i] == *w {
+				return true
+			}
+		}
+		return false
+	}
+	for at := d.last[hashOf(w)]; at > 0; at = d.next[at-1] {
+		if d.list[at-1] == *w {
+			return true
+		}
+	}
+	return false
+}
+
+// index makes step i of the list found by its hash.
+func (d *distinct) index(i int) {
+	key := hashOf(&d.list[i])
+	d.next = append(d.next, d.last[key])
+	d.last[key] = int32(i + 1)
 }
 
 // working writes one step in the caller's units. What it returns points into the

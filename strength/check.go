@@ -203,11 +203,11 @@ type Calculation interface {
 	// Margins fills out, one for each check, for load case i. It allocates
 	// nothing and may be called from one goroutine at a time.
 	Margins(i int, out []Margin)
-	// Workings returns the steps behind check c that no load case changes.
-	Workings(c int) []Working
-	// CaseWorkings returns the steps behind check c that load case i makes,
-	// the demand and its factors among them.
-	CaseWorkings(i, c int) []Working
+	// Workings appends to steps those behind check c that no load case changes.
+	Workings(c int, steps []Working) []Working
+	// CaseWorkings appends to steps those behind check c that load case i
+	// makes, the demand and its factors among them.
+	CaseWorkings(i, c int, steps []Working) []Working
 	// Findings returns what is to be said about the joint and its load cases.
 	Findings() []Finding
 	// Cautions returns what the calculation leaves to the user.

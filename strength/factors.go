@@ -89,16 +89,15 @@ func (f Factors) Demand(c *Check, givenAt Level, safety Safety, applySpecial boo
 	return d
 }
 
-// Workings writes the factors and the demand that they make of a load, with
+// Workings appends the factors and the demand that they make of a load, with
 // the fields of w (member, method, mode, load case) in each step. The load's
 // symbol must already be explained by another working.
-func (d Demand) Workings(w Working, f Factors, symbol string, demand float64, unit Unit) []Working {
+func (d Demand) Workings(steps []Working, w Working, f Factors, symbol string, demand float64, unit Unit) []Working {
 	step := func(symbol string, value float64, unit Unit, equation, source string, mark Mark) Working {
 		w := w
 		w.Symbol, w.Value, w.Unit, w.Equation, w.Source, w.Mark = symbol, value, unit, equation, source, mark
 		return w
 	}
-	var steps []Working
 	equation := symbol
 	if d.LevelEquation != "" {
 		steps = append(steps, step("u", f.Ultimate, None, "", "given: factors.ultimate", Given))

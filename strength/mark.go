@@ -68,11 +68,19 @@ func (m Mark) String() string {
 	case commonPractice:
 		return "common practice"
 	case memory:
-		return "memory " + strconv.Itoa(m.percent) + "%"
+		return memoryTexts[min(max(m.percent, 0), len(memoryTexts)-1)]
 	default:
 		return "given"
 	}
 }
+
+// memoryTexts are written once: every step of an answer has a mark.
+var memoryTexts = func() (texts [101]string) {
+	for percent := range texts {
+		texts[percent] = "memory " + strconv.Itoa(percent) + "%"
+	}
+	return texts
+}()
 
 // ParseMark reads what String wrote, but for the marks of curve sets, which no
 // value of a material or a fastener can have.

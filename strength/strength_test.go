@@ -48,7 +48,7 @@ func TestDemand(t *testing.T) {
 			t.Errorf("%s: factor %v, from ultimate %v; want %v, %v", c.name, got, d.FromUltimate, c.want, c.fromUltimate)
 		}
 		product := 100.0
-		for _, w := range d.Workings(strength.Working{}, f, "P", 100*d.Factor(), strength.Force) {
+		for _, w := range d.Workings(nil, strength.Working{}, f, "P", 100*d.Factor(), strength.Force) {
 			switch w.Symbol {
 			case "s":
 				product *= w.Value

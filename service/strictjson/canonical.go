@@ -92,7 +92,7 @@ func (c *canonical) object(depth int) bool {
 			return false
 		}
 		name := c.data[start+1 : c.at-1]
-		if before != nil && !ascend(before, name) {
+		if before != nil && order(before, name) >= 0 {
 			return false
 		}
 		before = name
@@ -108,17 +108,18 @@ func (c *canonical) object(depth int) bool {
 	}
 }
 
-// ascend compares two names, as they are written, by their UTF-16 code units.
-func ascend(a, b []byte) bool {
+// order compares two names, as they are written, by their UTF-16 code units:
+// negative, 0 or positive as of cmp.Compare.
+func order(a, b []byte) int {
 	for i := 0; i < len(a) && i < len(b); i++ {
 		if a[i] >= utf8.RuneSelf || b[i] >= utf8.RuneSelf || a[i] == '\\' || b[i] == '\\' {
-			return slices.Compare(units(a), units(b)) < 0
+			return slices.Compare(units(a), units(b))
 		}
 		if a[i] != b[i] {
-			return a[i] < b[i]
+			return int(a[i]) - int(b[i])
 		}
 	}
-	return len(a) < len(b)
+	return len(a) - len(b)
 }
 
 // units returns the UTF-16 code units of a name.

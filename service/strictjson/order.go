@@ -91,7 +91,7 @@ func (o *orderer) object(depth int) bool {
 			return false
 		}
 		m.to = len(o.out)
-		if n := len(o.members); n > base && !ascend(o.members[n-1].name, m.name) {
+		if n := len(o.members); n > base && order(o.members[n-1].name, m.name) >= 0 {
 			ordered = false
 		}
 		o.members = append(o.members, m)
@@ -108,20 +108,12 @@ func (o *orderer) object(depth int) bool {
 // reorder puts the members of an object, which begin at start, in order. Two of
 // one name are refused.
 func (o *orderer) reorder(members []member, start int) bool {
-	slices.SortFunc(members, func(a, b member) int {
-		switch {
-		case ascend(a.name, b.name):
-			return -1
-		case ascend(b.name, a.name):
-			return 1
-		}
-		return 0
-	})
+	slices.SortFunc(members, func(a, b member) int { return order(a.name, b.name) })
 	o.spare = append(o.spare[:0], o.out[start:]...)
 	o.out = o.out[:start]
 	for i, m := range members {
 		if i > 0 {
-			if !ascend(members[i-1].name, m.name) {
+			if order(members[i-1].name, m.name) == 0 {
 				return false
 			}
 			o.put(',')

@@ -237,8 +237,14 @@ func wanted(t reflect.Type) string {
 
 // members is what inspect knows of a struct type.
 type members struct {
-	types    map[string]reflect.Type
+	byName   map[string]memberOf
 	required []string
+}
+
+// memberOf is a member of a struct type.
+type memberOf struct {
+	is       reflect.Type
+	required int // its place among the required ones, -1 for an optional one
 }
 
 var known sync.Map // reflect.Type → *members
@@ -247,7 +253,7 @@ func membersOf(t reflect.Type) *members {
 	if m, ok := known.Load(t); ok {
 		return m.(*members)
 	}
-	m := &members{types: map[string]reflect.Type{}}
+	m := &members{byName: map[string]memberOf{}}
 	m.add(t)
 	known.Store(t, m)
 	return m
@@ -259,10 +265,12 @@ func (m *members) add(t reflect.Type) {
 			continue
 		}
 		name, options, _ := strings.Cut(f.Tag.Get("json"), ",")
-		m.types[name] = f.Type
+		member := memberOf{f.Type, -1}
 		if !strings.Contains(options, "omitzero") {
+			member.required = len(m.required)
 			m.required = append(m.required, name)
 		}
+		m.byName[name] = member
 	}
 }
 
@@ -361,10 +369,9 @@ func inspectObject(d *jsontext.Decoder, t reflect.Type) error {
 	if _, err := d.ReadToken(); err != nil {
 		return err
 	}
-	object := d.StackPointer()
-	var found map[string]bool
+	var found []bool
 	if known != nil {
-		found = make(map[string]bool, len(known.required))
+		found = make([]bool, len(known.required))
 	}
 	for d.PeekKind() != '}' {
 		token, err := d.ReadToken()
@@ -373,14 +380,16 @@ func inspectObject(d *jsontext.Decoder, t reflect.Type) error {
 		}
 		next := element
 		if known != nil {
-			name := token.String()
-			member, ok := known.types[name]
+			member, ok := known.byName[token.String()]
 			if !ok {
 				return &Error{string(d.StackPointer()), "there is no member of this name"}
 			}
-			found[name], next = true, member
-			if d.PeekKind() == 'n' && member.Kind() == reflect.Pointer && slices.Contains(known.required, name) {
-				next = nullable
+			next = member.is
+			if member.required >= 0 {
+				found[member.required] = true
+				if d.PeekKind() == 'n' && next.Kind() == reflect.Pointer {
+					next = nullable
+				}
 			}
 		}
 		if err := inspectValue(d, next); err != nil {
@@ -390,12 +399,8 @@ func inspectObject(d *jsontext.Decoder, t reflect.Type) error {
 	if _, err := d.ReadToken(); err != nil {
 		return err
 	}
-	if known != nil {
-		for _, name := range known.required {
-			if !found[name] {
-				return &Error{string(object.AppendToken(name)), "is required"}
-			}
-		}
+	if missing := slices.Index(found, false); missing >= 0 {
+		return &Error{string(d.StackPointer().AppendToken(known.required[missing])), "is required"}
 	}
 	return nil
 }
