@@ -23,6 +23,9 @@ type SQLite struct {
 	write *sql.DB // one connection
 	read  *sql.DB
 	known []migration
+	// What every append runs, prepared.
+	answered *sql.Stmt
+	appends  map[string]*sql.Stmt
 }
 
 var _ service.Store = (*SQLite)(nil)
@@ -68,7 +71,25 @@ func openSQLite(ctx context.Context, file, engine string) (*SQLite, error) {
 	if err := s.migrate(ctx); err != nil {
 		return nil, errors.Join(fmt.Errorf("%s: %w", file, err), s.Close())
 	}
+	if err := s.prepare(ctx); err != nil {
+		return nil, errors.Join(fmt.Errorf("%s: %w", file, err), s.Close())
+	}
 	return s, nil
+}
+
+// prepare prepares the statements of appends: to do it for each takes longer
+// than to run them.
+func (s *SQLite) prepare(ctx context.Context) (err error) {
+	if s.answered, err = s.read.PrepareContext(ctx, sqliteAnswered); err != nil {
+		return err
+	}
+	s.appends = make(map[string]*sql.Stmt, len(sqliteAppends))
+	for _, text := range sqliteAppends {
+		if s.appends[text], err = s.write.PrepareContext(ctx, text); err != nil {
+			return err
+		}
+	}
+	return nil
 }
 
 func connectSQLite(file string, options ...string) (*sql.DB, error) {
@@ -239,6 +260,8 @@ func (s *SQLite) Hashes(ctx context.Context, indexes []int64) ([]ledger.Hash, er
 	return found, nil
 }
 
+const sqliteAnswered = `SELECT request_digest, idx, state FROM idempotency WHERE caller = ? AND method = ? AND path = ? AND key = ?`
+
 // Answered implements service.Store.
 func (s *SQLite) Answered(ctx context.Context, keys []service.IdempotencyKey) ([]*service.Answer, error) {
 	ctx, cancel := context.WithTimeout(ctx, sqliteTimeout)
@@ -247,17 +270,12 @@ func (s *SQLite) Answered(ctx context.Context, keys []service.IdempotencyKey) ([
 	if len(keys) == 0 {
 		return found, nil
 	}
-	query, err := s.read.PrepareContext(ctx, `SELECT request_digest, idx, state FROM idempotency WHERE caller = ? AND method = ? AND path = ? AND key = ?`)
-	if err != nil {
-		return nil, sqliteError(err)
-	}
-	defer query.Close()
 	for i, k := range keys {
 		if !storable(k.Caller, k.Method, k.Key) {
 			continue
 		}
 		a, digest := &service.Answer{IdempotencyKey: k}, []byte(nil)
-		err := query.QueryRowContext(ctx, k.Caller, k.Method, []byte(k.Path), k.Key).Scan(&digest, &a.Index, &a.State)
+		err := s.answered.QueryRowContext(ctx, k.Caller, k.Method, []byte(k.Path), k.Key).Scan(&digest, &a.Index, &a.State)
 		switch err = sqliteError(err); {
 		case err == nil:
 			copy(a.RequestDigest[:], digest)

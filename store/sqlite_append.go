@@ -10,11 +10,42 @@ import (
 	"jointledger/service/ledger"
 )
 
+// The statements of an append.
+const (
+	sqliteSwapHead  = `UPDATE head SET size = ?, root = ?, checkpoint = ? WHERE size = ? AND root = ?`
+	sqliteAddEntry  = `INSERT INTO entries VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)`
+	sqliteAddTerm   = `INSERT INTO terms VALUES (?, ?, ?, ?)`
+	sqliteAddHash   = `INSERT INTO tree_hashes VALUES (?, ?)`
+	sqliteAddAnswer = `INSERT INTO idempotency VALUES (?, ?, ?, ?, ?, ?, ?)`
+	sqliteAddNotice = `INSERT INTO notices (id, target, body, attempts, due, sent) VALUES (?, ?, ?, 0, ?, '') ON CONFLICT DO NOTHING`
+	sqliteReplaced  = `UPDATE standing SET latest = 0 WHERE idx = (SELECT max(idx) FROM entries INDEXED BY entries_subject
+		WHERE type = 'record' AND part = ? AND revision = ? AND joint = ? AND aspect = ? AND kind = ? AND idx < ?)`
+	sqliteAddStanding = `INSERT INTO standing VALUES (?, 'recorded', ?)`
+	sqliteJudged      = `UPDATE standing SET state = (SELECT ` + derivedState + ` FROM entries r WHERE r.idx = standing.idx)
+		WHERE idx = (SELECT idx FROM entries WHERE id = ?)`
+)
+
+// sqliteAppends are those that are prepared.
+var sqliteAppends = []string{
+	sqliteSwapHead, sqliteAddEntry, sqliteAddTerm, sqliteAddHash, sqliteAddAnswer, sqliteAddNotice, sqliteReplaced, sqliteAddStanding, sqliteJudged,
+}
+
+// sqliteTx is a transaction of an append.
+type sqliteTx struct {
+	*sql.Tx
+	prepared map[string]*sql.Stmt
+}
+
 // Append implements service.Store.
 func (s *SQLite) Append(ctx context.Context, b service.Batch) error {
 	if err := check(b); err != nil {
 		return err
 	}
+	return s.transact(ctx, func(ctx context.Context, tx sqliteTx) error { return tx.append(ctx, b) })
+}
+
+// transact runs statements in one transaction.
+func (s *SQLite) transact(ctx context.Context, run func(context.Context, sqliteTx) error) error {
 	ctx, cancel := context.WithTimeout(ctx, sqliteTimeout)
 	defer cancel()
 	tx, err := s.write.BeginTx(ctx, nil)
@@ -22,15 +53,16 @@ func (s *SQLite) Append(ctx context.Context, b service.Batch) error {
 		return sqliteError(err)
 	}
 	defer tx.Rollback()
-	if err := sqliteAppend(ctx, tx, b); err != nil {
+	// The end of the time ends the transaction; that each statement watches for
+	// it too would cost more than the statement.
+	if err := run(context.WithoutCancel(ctx), sqliteTx{tx, s.appends}); err != nil {
 		return sqliteError(err)
 	}
 	return sqliteError(tx.Commit())
 }
 
-func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
-	moved, err := tx.ExecContext(ctx, `UPDATE head SET size = ?, root = ?, checkpoint = ? WHERE size = ? AND root = ?`,
-		b.Head.Size, b.Head.Root[:], b.Head.Checkpoint, b.Base.Size, b.Base.Root[:])
+func (tx sqliteTx) append(ctx context.Context, b service.Batch) error {
+	moved, err := tx.StmtContext(ctx, tx.prepared[sqliteSwapHead]).ExecContext(ctx, b.Head.Size, b.Head.Root[:], b.Head.Checkpoint, b.Base.Size, b.Base.Root[:])
 	if err != nil {
 		return err
 	}
@@ -39,7 +71,7 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	} else if n == 0 {
 		return service.ErrHeadMoved
 	}
-	if err := sqliteEach(ctx, tx, `INSERT INTO entries VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)`, func(yield func([]any) bool) {
+	if err := tx.each(ctx, sqliteAddEntry, func(yield func([]any) bool) {
 		for i := range b.Entries {
 			e := &b.Entries[i]
 			if !yield([]any{
@@ -52,7 +84,7 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	}); err != nil {
 		return err
 	}
-	if err := sqliteEach(ctx, tx, `INSERT INTO terms VALUES (?, ?, ?, ?)`, func(yield func([]any) bool) {
+	if err := tx.each(ctx, sqliteAddTerm, func(yield func([]any) bool) {
 		for _, e := range b.Entries {
 			for place, t := range e.Terms {
 				if !yield([]any{e.Index, place, t.Kind, []byte(t.Value)}) {
@@ -64,7 +96,7 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 		return err
 	}
 	first := ledger.StoredHashCount(b.Base.Size)
-	if err := sqliteEach(ctx, tx, `INSERT INTO tree_hashes VALUES (?, ?)`, func(yield func([]any) bool) {
+	if err := tx.each(ctx, sqliteAddHash, func(yield func([]any) bool) {
 		for i := range b.Hashes {
 			if !yield([]any{first + int64(i), b.Hashes[i][:]}) {
 				return
@@ -73,7 +105,7 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	}); err != nil {
 		return err
 	}
-	if err := sqliteEach(ctx, tx, `INSERT INTO idempotency VALUES (?, ?, ?, ?, ?, ?, ?)`, func(yield func([]any) bool) {
+	if err := tx.each(ctx, sqliteAddAnswer, func(yield func([]any) bool) {
 		for i := range b.Answers {
 			a := &b.Answers[i]
 			if !yield([]any{a.Caller, a.Method, []byte(a.Path), a.Key, a.RequestDigest[:], a.Index, string(a.State)}) {
@@ -83,27 +115,23 @@ func sqliteAppend(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	}); err != nil {
 		return err
 	}
-	if err := sqliteNotices(ctx, tx, b.Notices); err != nil {
+	if err := tx.notify(ctx, b.Notices); err != nil {
 		return err
 	}
 	for _, k := range b.Keys {
-		if err := sqliteKey(ctx, tx, k); err != nil {
+		if err := sqliteKey(ctx, tx.Tx, k); err != nil {
 			return err
 		}
 	}
-	return sqliteStanding(ctx, tx, b)
+	return tx.standing(ctx, b)
 }
 
-// sqliteEach runs one statement with every row of arguments.
-func sqliteEach(ctx context.Context, tx *sql.Tx, query string, rows iter.Seq[[]any]) error {
+// each runs one of the prepared statements with every row of arguments.
+func (tx sqliteTx) each(ctx context.Context, text string, rows iter.Seq[[]any]) error {
 	var statement *sql.Stmt
 	for row := range rows {
 		if statement == nil {
-			var err error
-			if statement, err = tx.PrepareContext(ctx, query); err != nil {
-				return err
-			}
-			defer statement.Close()
+			statement = tx.StmtContext(ctx, tx.prepared[text])
 		}
 		if _, err := statement.ExecContext(ctx, row...); err != nil {
 			return err
@@ -133,11 +161,10 @@ func sqliteKey(ctx context.Context, tx *sql.Tx, k service.KeyChange) error {
 	return err
 }
 
-// sqliteStanding brings the index over the standing of records up to date.
-func sqliteStanding(ctx context.Context, tx *sql.Tx, b service.Batch) error {
+// standing brings the index over the standing of records up to date.
+func (tx sqliteTx) standing(ctx context.Context, b service.Batch) error {
 	records := standings(b)
-	if err := sqliteEach(ctx, tx, `UPDATE standing SET latest = 0 WHERE idx = (SELECT max(idx) FROM entries INDEXED BY entries_subject
-		WHERE type = 'record' AND part = ? AND revision = ? AND joint = ? AND aspect = ? AND kind = ? AND idx < ?)`, func(yield func([]any) bool) {
+	if err := tx.each(ctx, sqliteReplaced, func(yield func([]any) bool) {
 		for _, r := range records {
 			if r.latest && !yield([]any{r.Part, r.Revision, r.Joint, r.Aspect, r.kind, b.Base.Size}) {
 				return
@@ -146,7 +173,7 @@ func sqliteStanding(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	}); err != nil {
 		return err
 	}
-	if err := sqliteEach(ctx, tx, `INSERT INTO standing VALUES (?, 'recorded', ?)`, func(yield func([]any) bool) {
+	if err := tx.each(ctx, sqliteAddStanding, func(yield func([]any) bool) {
 		for _, r := range records {
 			if !yield([]any{r.index, r.latest}) {
 				return
@@ -155,8 +182,7 @@ func sqliteStanding(ctx context.Context, tx *sql.Tx, b service.Batch) error {
 	}); err != nil {
 		return err
 	}
-	return sqliteEach(ctx, tx, `UPDATE standing SET state = (SELECT `+derivedState+` FROM entries r WHERE r.idx = standing.idx)
-		WHERE idx = (SELECT idx FROM entries WHERE id = ?)`, func(yield func([]any) bool) {
+	return tx.each(ctx, sqliteJudged, func(yield func([]any) bool) {
 		for _, id := range targets(b) {
 			if !yield([]any{id}) {
 				return

@@ -2,7 +2,6 @@ package store
 
 import (
 	"context"
-	"database/sql"
 
 	"jointledger/service"
 )
@@ -41,21 +40,11 @@ func (s *SQLite) Notify(ctx context.Context, notices []service.Notice) error {
 	if err := checkNotices(notices); err != nil {
 		return err
 	}
-	ctx, cancel := context.WithTimeout(ctx, sqliteTimeout)
-	defer cancel()
-	tx, err := s.write.BeginTx(ctx, nil)
-	if err != nil {
-		return sqliteError(err)
-	}
-	defer tx.Rollback()
-	if err := sqliteNotices(ctx, tx, notices); err != nil {
-		return sqliteError(err)
-	}
-	return sqliteError(tx.Commit())
+	return s.transact(ctx, func(ctx context.Context, tx sqliteTx) error { return tx.notify(ctx, notices) })
 }
 
-func sqliteNotices(ctx context.Context, tx *sql.Tx, notices []service.Notice) error {
-	return sqliteEach(ctx, tx, `INSERT INTO notices (id, target, body, attempts, due, sent) VALUES (?, ?, ?, 0, ?, '') ON CONFLICT DO NOTHING`, func(yield func([]any) bool) {
+func (tx sqliteTx) notify(ctx context.Context, notices []service.Notice) error {
+	return tx.each(ctx, sqliteAddNotice, func(yield func([]any) bool) {
 		for _, n := range notices {
 			if !yield([]any{n.ID, n.Target, n.Body, n.Due}) {
 				return

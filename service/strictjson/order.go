@@ -1,6 +1,9 @@
 package strictjson
 
-import "slices"
+import (
+	"bytes"
+	"slices"
+)
 
 // inOrder writes JSON that is in the form of RFC 8785 but for the order of
 // members, as Encode writes it, with the members in order. It reads the data
@@ -17,7 +20,19 @@ type orderer struct {
 	out     []byte
 	members []member // of the objects that are being written
 	spare   []byte
+	shapes  []shape
 }
+
+// shape is the names of the members of an object as they came, and the places
+// where they stand in order: the objects of a list have one shape as a rule,
+// which is sorted once.
+type shape struct {
+	names  [][]byte
+	places []int
+}
+
+// mostShapes are remembered; more are a document without lists.
+const mostShapes = 16
 
 // member is one of an object: its name as it is written, and where it stands in
 // out.
@@ -108,17 +123,42 @@ func (o *orderer) object(depth int) bool {
 // reorder puts the members of an object, which begin at start, in order. Two of
 // one name are refused.
 func (o *orderer) reorder(members []member, start int) bool {
-	slices.SortFunc(members, func(a, b member) int { return order(a.name, b.name) })
+	places, ok := o.places(members)
+	if !ok {
+		return false
+	}
 	o.spare = append(o.spare[:0], o.out[start:]...)
 	o.out = o.out[:start]
-	for i, m := range members {
+	for i, place := range places {
 		if i > 0 {
-			if order(members[i-1].name, m.name) == 0 {
-				return false
-			}
 			o.put(',')
 		}
+		m := &members[place]
 		o.out = append(o.out, o.spare[m.from-start:m.to-start]...)
 	}
 	return true
+}
+
+// places returns the members in order, by their places; ok is false where two
+// have one name.
+func (o *orderer) places(members []member) (places []int, ok bool) {
+	for i := range o.shapes {
+		if s := &o.shapes[i]; slices.EqualFunc(s.names, members, func(name []byte, m member) bool { return bytes.Equal(name, m.name) }) {
+			return s.places, true
+		}
+	}
+	s := shape{make([][]byte, len(members)), make([]int, len(members))}
+	for i, m := range members {
+		s.names[i], s.places[i] = m.name, i
+	}
+	slices.SortFunc(s.places, func(a, b int) int { return order(s.names[a], s.names[b]) })
+	for i := range s.places[1:] {
+		if order(s.names[s.places[i]], s.names[s.places[i+1]]) == 0 {
+			return nil, false
+		}
+	}
+	if len(o.shapes) < mostShapes {
+		o.shapes = append(o.shapes, s)
+	}
+	return s.places, true
 }
