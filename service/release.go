@@ -376,24 +376,28 @@ func (s *Service) judgedRecords(ctx context.Context, part, revision string) ([]*
 	if err != nil {
 		return nil, err
 	}
+	// The records are read while the store looks for what is about them.
 	ids := make([]string, len(entries))
+	records, errs := make([]*judged, len(entries)), make([]error, len(entries))
+	var work sync.WaitGroup
 	for i, e := range entries {
 		ids[i] = e.ID
+		work.Go(func() { records[i], errs[i] = judgedRecord(e) })
 	}
+	defer work.Wait()
 	about, err := s.store.About(ctx, ids)
 	if err != nil {
 		return nil, err
 	}
-	records := make([]*judged, len(entries))
-	errs := make([]error, len(entries))
-	var work sync.WaitGroup
-	for i, e := range entries {
-		work.Go(func() { records[i], errs[i] = judgedRecord(e, about[e.ID]) })
-	}
-	work.Wait()
 	inTree, err := s.inTree(ctx, entries, about)
+	work.Wait()
 	if err != nil {
 		return nil, err
+	}
+	for i, r := range records {
+		if errs[i] == nil {
+			errs[i] = r.judge(about[r.entry.ID])
+		}
 	}
 	if err := errors.Join(append(errs, inTree)...); err != nil {
 		s.watch.Altered(err)
@@ -430,7 +434,7 @@ func (s *Service) inTree(ctx context.Context, records []Entry, about map[string]
 
 // judgedRecord reads a record from its bytes and compares what was stored
 // beside them.
-func judgedRecord(e Entry, about []Entry) (*judged, error) {
+func judgedRecord(e Entry) (*judged, error) {
 	is, record, err := sealedEntry(e.Bytes)
 	if err == nil && record == nil {
 		err = errors.New("it is no record")
@@ -443,14 +447,19 @@ func judgedRecord(e Entry, about []Entry) (*judged, error) {
 	}
 	// The terms come from the bytes too: the gate asks them.
 	e.Terms = is.Terms
-	r := &judged{entry: e, recordHead: record, state: stateOf(about), roles: map[string]bool{}}
+	return &judged{entry: e, recordHead: record, roles: map[string]bool{}}, nil
+}
+
+// judge takes what the entries about the record say of it.
+func (r *judged) judge(about []Entry) error {
+	r.state = stateOf(about)
 	for _, a := range about {
 		if err := unaltered(a); err != nil {
-			return nil, err
+			return err
 		}
 		if a.Type == entrySignOff {
 			r.roles[a.Role] = true
 		}
 	}
-	return r, nil
+	return nil
 }

@@ -65,8 +65,11 @@ func Decode(data []byte, into any) error {
 }
 
 // DecodeLoosely reads a document of our own making, nulls included: only some of
-// its members into a struct, or all of it into an any.
-func DecodeLoosely(data []byte, into any) error { return json.Unmarshal(data, into) }
+// its members into a struct, or all of it into an any. That no name stands twice
+// was seen when it was made.
+func DecodeLoosely(data []byte, into any) error {
+	return json.Unmarshal(data, into, jsontext.AllowDuplicateNames(true))
+}
 
 // Lines returns a function from pointers into a document to the lines, from 1,
 // that they stand on; of a member that is missing, the line of what it is
