@@ -26,7 +26,7 @@ var (
 // stress over P/A_net) and on the bearing area (K_tb: over P/(D t)). Outside
 // the range of the fit there is none, and a finding says so.
 func (p *Prepared) StressConcentration() []strength.Working {
-	const most = 8 // steps of a head
+	const most = 12 // steps of a head
 	all := make([]strength.Working, 0, most*len(p.heads()))
 	for _, part := range p.heads() {
 		s := &sheet{record: &record{heading: strength.Working{Member: part.member}, lines: all, others: len(all)}}

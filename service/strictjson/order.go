@@ -1,18 +1,30 @@
 package strictjson
 
 import (
-	"bytes"
 	"slices"
+	"sync"
 )
 
 // inOrder writes JSON that is in the form of RFC 8785 but for the order of
 // members, as Encode writes it, with the members in order. It reads the data
 // once. ok is false where something else is not in that form.
 func inOrder(data []byte) (canonicalForm []byte, ok bool) {
-	o := orderer{canonical: canonical{data: data}, out: make([]byte, 0, len(data))}
+	o := orderers.Get().(*orderer)
+	o.canonical, o.out, o.members = canonical{data: data}, make([]byte, 0, len(data)), o.members[:0]
 	ok = o.value(0) && o.at == len(data)
-	return o.out, ok
+	canonicalForm = o.out
+	if o.canonical, o.out = (canonical{}), nil; cap(o.spare) <= mostSpare {
+		clear(o.members[:cap(o.members)]) // their names are parts of data
+		orderers.Put(o)
+	}
+	return canonicalForm, ok
 }
+
+// orderers are used again, with the shapes that they know.
+var orderers = sync.Pool{New: func() any { return new(orderer) }}
+
+// mostSpare is what an orderer may keep for the next document.
+const mostSpare = 1 << 20
 
 // orderer reads with canonical, and writes.
 type orderer struct {
@@ -21,18 +33,22 @@ type orderer struct {
 	members []member // of the objects that are being written
 	spare   []byte
 	shapes  []shape
+	oldest  int // of shapes, when there is no room for more
 }
 
 // shape is the names of the members of an object as they came, and the places
 // where they stand in order: the objects of a list have one shape as a rule,
-// which is sorted once.
+// and documents of one kind a few, each of which is sorted once.
 type shape struct {
-	names  [][]byte
+	names  []string
 	places []int
 }
 
-// mostShapes are remembered; more are a document without lists.
-const mostShapes = 16
+// How many shapes are remembered, and of how many bytes of names at most.
+const (
+	mostShapes = 32
+	mostNames  = 1 << 10
+)
 
 // member is one of an object: its name as it is written, and where it stands in
 // out.
@@ -143,22 +159,37 @@ func (o *orderer) reorder(members []member, start int) bool {
 // have one name.
 func (o *orderer) places(members []member) (places []int, ok bool) {
 	for i := range o.shapes {
-		if s := &o.shapes[i]; slices.EqualFunc(s.names, members, func(name []byte, m member) bool { return bytes.Equal(name, m.name) }) {
+		if s := &o.shapes[i]; slices.EqualFunc(s.names, members, func(name string, m member) bool { return name == string(m.name) }) {
 			return s.places, true
 		}
 	}
-	s := shape{make([][]byte, len(members)), make([]int, len(members))}
+	places, size := make([]int, len(members)), 0
 	for i, m := range members {
-		s.names[i], s.places[i] = m.name, i
+		places[i] = i
+		size += len(m.name)
 	}
-	slices.SortFunc(s.places, func(a, b int) int { return order(s.names[a], s.names[b]) })
-	for i := range s.places[1:] {
-		if order(s.names[s.places[i]], s.names[s.places[i+1]]) == 0 {
+	slices.SortFunc(places, func(a, b int) int { return order(members[a].name, members[b].name) })
+	for i := range places[1:] {
+		if order(members[places[i]].name, members[places[i+1]].name) == 0 {
 			return nil, false
 		}
 	}
+	if size <= mostNames {
+		o.remember(members, places)
+	}
+	return places, true
+}
+
+// remember keeps a shape, in the place of the oldest when there are many.
+func (o *orderer) remember(members []member, places []int) {
+	s := shape{make([]string, len(members)), places}
+	for i, m := range members {
+		s.names[i] = string(m.name)
+	}
 	if len(o.shapes) < mostShapes {
 		o.shapes = append(o.shapes, s)
+		return
 	}
-	return s.places, true
+	o.shapes[o.oldest] = s
+	o.oldest = (o.oldest + 1) % mostShapes
 }
