@@ -96,18 +96,20 @@ func Lines(data []byte) func(pointer string) int {
 	}
 }
 
+// ours is how our own values are written: maps in order, and the values kept as
+// they came without looking again for names that stand twice.
+var ours = json.JoinOptions(json.Deterministic(true), jsontext.AllowDuplicateNames(true))
+
 // Encode writes v as JSON in the order of its fields; a nil slice is [] and a
 // nil pointer null.
-func Encode(v any) ([]byte, error) { return json.Marshal(v, json.Deterministic(true)) }
+func Encode(v any) ([]byte, error) { return json.Marshal(v, ours) }
 
 // Spread writes v as Encode does, over lines that people can read.
-func Spread(v any) ([]byte, error) {
-	return json.Marshal(v, json.Deterministic(true), jsontext.WithIndent("  "))
-}
+func Spread(v any) ([]byte, error) { return json.Marshal(v, ours, jsontext.WithIndent("  ")) }
 
 // Canonical writes v in the form of RFC 8785.
 func Canonical(v any) ([]byte, error) {
-	data, err := json.Marshal(v, json.Deterministic(true))
+	data, err := json.Marshal(v, ours)
 	if err != nil {
 		return nil, err
 	}
