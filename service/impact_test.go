@@ -5,6 +5,7 @@ import (
 	"encoding/json"
 	"errors"
 	"fmt"
+	"io"
 	"slices"
 	"strings"
 	"sync"
@@ -149,13 +150,13 @@ func (c *set) move(d time.Duration) {
 	c.at = c.at.Add(d)
 }
 
-func openNotifying(t *testing.T, store service.Store, clock service.Clock, watch service.Watch, notify ...string) *service.Service {
+func openNotifying(t *testing.T, store service.Store, signer service.Signer, clock service.Clock, watch service.Watch, notify ...string) *service.Service {
 	t.Helper()
 	policies, err := service.NewPolicies(nil)
 	if err != nil {
 		t.Fatal(err)
 	}
-	s, err := service.New(t.Context(), service.Setup{Store: store, Clock: clock, Signer: storetest.Signer(t), Policies: policies, Watch: watch, Notify: notify})
+	s, err := service.New(t.Context(), service.Setup{Store: store, Clock: clock, Signer: signer, Policies: policies, Watch: watch, Notify: notify})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -169,7 +170,7 @@ func TestWithdrawalsUnderAReleaseAreTold(t *testing.T) {
 	storetest.Each(t, func(t *testing.T, store service.Store) {
 		faulty := storetest.NewFaulty(store)
 		clock, watch := &set{at: time.Date(2026, 3, 1, 8, 0, 0, 0, time.UTC)}, &counting{}
-		s := openNotifying(t, faulty, clock, watch, "vault", "plm")
+		s := openNotifying(t, faulty, storetest.Signer(t), clock, watch, "vault", "plm")
 		waiting := func(when string, want int64) {
 			t.Helper()
 			if n, err := store.NoticesWaiting(t.Context()); err != nil || n != want {
@@ -249,6 +250,91 @@ func TestWithdrawalsUnderAReleaseAreTold(t *testing.T) {
 		}
 		if watch.sent != 2 || watch.failed != 1 {
 			t.Errorf("%d sent and %d failed, want 2 and 1", watch.sent, watch.failed)
+		}
+	})
+}
+
+// A record under a release that does not hold by today's methods is told once,
+// however it is replayed. The records are such as another program might have
+// left: a lug under twice its load that was entered as adequate.
+func TestReplaysThatTurnNegativeAreTold(t *testing.T) {
+	storetest.Each(t, func(t *testing.T, store service.Store) {
+		signer, clock := storetest.Signer(t), &set{at: time.Date(2026, 3, 1, 8, 0, 0, 0, time.UTC)}
+		s := openNotifying(t, store, signer, clock, service.Unwatched{}, "vault")
+		elsewhere := strings.Replace(string(recordOf("x", "", "lug", weakLug)), "SM-1200", "SM-1300", 1)
+		weak, err := store.EntryByID(t.Context(), put(t, s, []byte(elsewhere)))
+		if err != nil {
+			t.Fatal(err)
+		}
+		entered := func(joint string, change ...string) string {
+			t.Helper()
+			id := fmt.Sprintf("00000000-0000-7000-8000-%012x", joint[0])
+			change = append(change, weak.ID, id, `"SM-1300"`, `"SM-1200"`, `"joint":"x"`, `"joint":"`+joint+`"`, `"verdict":"inadequate"`, `"verdict":"adequate"`)
+			appendBytes(t, store, signer, strings.NewReplacer(change...).Replace(string(weak.Bytes)))
+			for _, by := range []struct {
+				caller service.Caller
+				role   string
+			}{{ben, "checked"}, {cleo, "approved"}} {
+				if _, err := sign(t, s, by.caller, id, by.role); err != nil {
+					t.Fatal(err)
+				}
+			}
+			return id
+		}
+		negative := entered("a")
+		refused := entered("b", `"methods":["elementary@1"]`, `"methods":["elementary@9"]`) // which this program does not have
+		unreleased := entered("c", `"revision":"B"`, `"revision":"C"`)
+		sound := put(t, s, recordOf("d", "", "lug", hingeLug), both...)
+		released := judge(t, s, ask("default", "a", "b", "d"))
+		if released.Decision != service.Release {
+			t.Fatal(why(released))
+		}
+		replay := func(id, verdict string) {
+			t.Helper()
+			switch r, err := s.Replay(t.Context(), id); {
+			case verdict == "":
+				if code(t, err) != service.Invalid {
+					t.Errorf("%s: %+v, %v, want it refused", id, r, err)
+				}
+			case err != nil || r.Current.Verdict != verdict:
+				t.Errorf("%s: %+v, %v, want it %s", id, r, err, verdict)
+			}
+		}
+		replay(sound, "adequate")
+		replay(unreleased, "inadequate")
+		if n, err := store.NoticesWaiting(t.Context()); err != nil || n != 0 {
+			t.Fatalf("%d wait, %v, before a record under a release was replayed", n, err)
+		}
+		replay(negative, "inadequate")
+		replay(refused, "")
+		replay(negative, "inadequate")
+		stream, err := s.Replays(t.Context(), []byte(`{"filter": {"part": "SM-1200"}}`))
+		if err != nil {
+			t.Fatal(err)
+		}
+		if err := stream(t.Context(), io.Discard); err != nil {
+			t.Fatal(err)
+		}
+		got, err := store.TakeNotices(t.Context(), "2026-03-02T00:00:00.000Z", "2026-03-03T00:00:00.000Z", 10)
+		if err != nil || len(got) != 2 {
+			t.Fatalf("%d notices, %v, want one of each", len(got), err)
+		}
+		for _, n := range got {
+			var body struct {
+				Type string
+				Data struct {
+					Record, Reason string
+					Releases       []struct{ ID string }
+				}
+			}
+			if err := json.Unmarshal(n.Body, &body); err != nil {
+				t.Fatal(err)
+			}
+			// 34,087.47 lbf of shear-out against 62,100: margin -0.45109.
+			want := map[string]string{negative: "by the methods of today it is inadequate, with the least margin -0.4510", refused: "by the methods of today it is undetermined"}[body.Data.Record]
+			if want == "" || !strings.HasPrefix(body.Data.Reason, want) || body.Type != "record.negative" || len(body.Data.Releases) != 1 || body.Data.Releases[0].ID != *released.ID {
+				t.Errorf("notice %s: %s", n.ID, n.Body)
+			}
 		}
 	})
 }

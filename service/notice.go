@@ -72,13 +72,13 @@ func (s *Service) notices(ctx context.Context, kind, id, at, reason string, reco
 
 // tellReplay notes, once for each version of the program, that an adequate
 // record under a release is not adequate by today's methods.
-func (s *Service) tellReplay(ctx context.Context, record Entry, r *Replay) error {
+func (s *Service) tellReplay(ctx context.Context, record Entry, now ReplayCurrent) error {
 	adequate := strength.Adequate.String()
-	if record.Verdict != adequate || r.Current.Verdict == adequate {
+	if record.Verdict != adequate || now.Verdict == adequate {
 		return nil
 	}
-	reason := "by the methods of today it is " + r.Current.Verdict
-	if m := r.Current.Margin; m != nil {
+	reason := "by the methods of today it is " + now.Verdict
+	if m := now.Margin; m != nil {
 		reason += fmt.Sprintf(", with the least margin %g", *m)
 	}
 	list, err := s.notices(ctx, noticeNegative, "replay-"+Engine+"-"+record.ID, stamp(s.clock.Now()), reason, record)

@@ -573,36 +573,47 @@ func fill(b *testing.B, store service.Store, signer service.Signer, n int) {
 		b.Fatal(err)
 	}
 	for made := 0; made < n; {
-		head, err := store.Head(ctx)
-		if err != nil {
-			b.Fatal(err)
-		}
-		batch := service.Batch{Base: head}
-		var leaves []ledger.Hash
+		var copies []string
 		for range min(256, n-made) {
 			part := fmt.Sprintf("SM-%d", 10_000+made/500)
 			id := fmt.Sprintf("00000000-0000-7000-8000-%012d", made)
-			e, err := service.EntryOf([]byte(strings.NewReplacer(first.ID, id, "SM-1200", part, "joint-0", fmt.Sprintf("joint-%d", made%500)).Replace(string(first.Bytes))))
-			if err != nil {
-				b.Fatal(err)
-			}
-			e.Index = head.Size + int64(len(leaves))
-			batch.Entries, leaves = append(batch.Entries, e), append(leaves, e.Leaf)
+			copies = append(copies, strings.NewReplacer(first.ID, id, "SM-1200", part, "joint-0", fmt.Sprintf("joint-%d", made%500)).Replace(string(first.Bytes)))
 			made++
 		}
-		hashes, _, root, err := ledger.Grow(ledger.Tree{Size: head.Size, Root: head.Root}, leaves, func(indexes []int64) ([]ledger.Hash, error) {
-			return store.Hashes(ctx, indexes)
-		})
+		appendBytes(b, store, signer, copies...)
+	}
+}
+
+// appendBytes appends entries by their bytes, as another program has made them.
+func appendBytes(t testing.TB, store service.Store, signer service.Signer, entries ...string) {
+	t.Helper()
+	ctx := t.Context()
+	head, err := store.Head(ctx)
+	if err != nil {
+		t.Fatal(err)
+	}
+	batch := service.Batch{Base: head}
+	var leaves []ledger.Hash
+	for _, text := range entries {
+		e, err := service.EntryOf([]byte(text))
 		if err != nil {
-			b.Fatal(err)
+			t.Fatal(err)
 		}
-		batch.Hashes, batch.Head = hashes, service.Head{Size: head.Size + int64(len(leaves)), Root: root}
-		if batch.Head.Checkpoint, err = signer.Checkpoint(batch.Head.Size, root); err != nil {
-			b.Fatal(err)
-		}
-		if err := store.Append(ctx, batch); err != nil {
-			b.Fatal(err)
-		}
+		e.Index = head.Size + int64(len(leaves))
+		batch.Entries, leaves = append(batch.Entries, e), append(leaves, e.Leaf)
+	}
+	hashes, _, root, err := ledger.Grow(ledger.Tree{Size: head.Size, Root: head.Root}, leaves, func(indexes []int64) ([]ledger.Hash, error) {
+		return store.Hashes(ctx, indexes)
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	batch.Hashes, batch.Head = hashes, service.Head{Size: head.Size + int64(len(leaves)), Root: root}
+	if batch.Head.Checkpoint, err = signer.Checkpoint(batch.Head.Size, root); err != nil {
+		t.Fatal(err)
+	}
+	if err := store.Append(ctx, batch); err != nil {
+		t.Fatal(err)
 	}
 }
 

@@ -49,10 +49,20 @@ func (s *Service) Replay(ctx context.Context, id string) (*Replay, error) {
 // replayEntry replays a record, and tells of one that does not hold any more.
 func (s *Service) replayEntry(ctx context.Context, entry Entry, substitute *substitution) (*Replay, error) {
 	r, err := s.replay(ctx, entry.Bytes, substitute)
-	if err != nil || substitute != nil {
+	if substitute != nil {
 		return r, err
 	}
-	return r, s.fail(s.tellReplay(ctx, entry, r))
+	var refused *Problem
+	switch {
+	case err == nil:
+		return r, s.fail(s.tellReplay(ctx, entry, r.Current))
+	case errors.As(err, &refused) && refused.Code != Unavailable:
+		// What cannot be computed does not hold either.
+		if untold := s.tellReplay(ctx, entry, ReplayCurrent{Verdict: strength.Undetermined.String()}); untold != nil {
+			return nil, s.fail(untold)
+		}
+	}
+	return nil, err
 }
 
 // replay computes an entry again; the current result with a material in the
