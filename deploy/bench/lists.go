@@ -71,8 +71,8 @@ func listsOn(ctx context.Context, b *bench, data, name string, where []string, o
 	if err != nil {
 		return err
 	}
-	f := &filler{signer: signer}
-	if err := f.sample(); err != nil {
+	f, err := newFiller(signer, service.View{NoWorkings: true, Checks: "governing"})
+	if err != nil {
 		return err
 	}
 	for _, records := range b.records {
@@ -173,21 +173,20 @@ type filler struct {
 	middle string // id of a record in the middle
 }
 
-// sample calculates the record that all others are made of.
-func (f *filler) sample() error {
-	result, err := service.Calculate(service.Lug, []byte(typicalLug), service.View{NoWorkings: true, Checks: "governing"})
+// newFiller calculates the record that all others are made of.
+func newFiller(signer *ledger.Signer, view service.View) (*filler, error) {
+	result, err := service.Calculate(service.Lug, []byte(typicalLug), view)
 	if err != nil {
-		return err
+		return nil, err
 	}
 	text, err := strictjson.Canonical(result)
 	if err != nil {
-		return err
+		return nil, err
 	}
-	f.body = map[string]any{
+	return &filler{signer: signer, body: map[string]any{
 		"geometry_digest": "sha256:00", "kind": "lug", "note": "", "input": strictjson.Raw(typicalLug), "input_digest": result.InputDigest,
 		"result": strictjson.Raw(text), "made_by": map[string]string{"engine": service.Engine, "go": "go", "arch": "amd64"},
-	}
-	return nil
+	}}, nil
 }
 
 // fill appends until there are so many records.
@@ -197,28 +196,12 @@ func (f *filler) fill(ctx context.Context, to service.Store, records int) error 
 		return err
 	}
 	for f.made < records {
-		batch := service.Batch{Base: head}
-		var leaves []ledger.Hash
-		for range min(1000, records-f.made) {
-			entry, err := f.entry(f.made)
-			if err != nil {
-				return err
-			}
-			if f.made == records/2 {
-				f.middle = entry.ID
-			}
-			f.made++
-			entry.Index = head.Size + int64(len(leaves))
-			batch.Entries, leaves = append(batch.Entries, entry), append(leaves, entry.Leaf)
-		}
-		var root ledger.Hash
-		read := func(indexes []int64) ([]ledger.Hash, error) { return to.Hashes(ctx, indexes) }
-		if batch.Hashes, _, root, err = ledger.Grow(ledger.Tree{Size: head.Size, Root: head.Root}, leaves, read); err != nil {
+		batch, err := f.batch(ctx, to, head, min(1000, records-f.made))
+		if err != nil {
 			return err
 		}
-		batch.Head = service.Head{Size: head.Size + int64(len(leaves)), Root: root}
-		if batch.Head.Checkpoint, err = f.signer.Checkpoint(batch.Head.Size, root); err != nil {
-			return err
+		if half := int64(records/2) - int64(f.made-len(batch.Entries)); half >= 0 && half < int64(len(batch.Entries)) {
+			f.middle = batch.Entries[half].ID
 		}
 		if err := to.Append(ctx, batch); err != nil {
 			return err
@@ -226,6 +209,29 @@ func (f *filler) fill(ctx context.Context, to service.Store, records int) error 
 		head = batch.Head
 	}
 	return nil
+}
+
+// batch makes the next records, up to the signed head that they leave.
+func (f *filler) batch(ctx context.Context, to service.Store, head service.Head, records int) (service.Batch, error) {
+	batch := service.Batch{Base: head}
+	var leaves []ledger.Hash
+	for range records {
+		entry, err := f.entry(f.made)
+		if err != nil {
+			return batch, err
+		}
+		f.made++
+		entry.Index = head.Size + int64(len(leaves))
+		batch.Entries, leaves = append(batch.Entries, entry), append(leaves, entry.Leaf)
+	}
+	read := func(indexes []int64) ([]ledger.Hash, error) { return to.Hashes(ctx, indexes) }
+	hashes, _, root, err := ledger.Grow(ledger.Tree{Size: head.Size, Root: head.Root}, leaves, read)
+	if err != nil {
+		return batch, err
+	}
+	batch.Hashes, batch.Head = hashes, service.Head{Size: head.Size + int64(len(leaves)), Root: root}
+	batch.Head.Checkpoint, err = f.signer.Checkpoint(batch.Head.Size, root)
+	return batch, err
 }
 
 func (f *filler) entry(n int) (service.Entry, error) {

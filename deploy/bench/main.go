@@ -42,6 +42,7 @@ var parts = []part{
 	{"calculations", "Calculations against a bare Echo handler", calculations},
 	{"latency", "Latency of single calculations at half load", latency},
 	{"appends", "Records against single-row commits", appends},
+	{"log", "Records that are sealed already, against single-row commits", sealedEntries},
 	{"pure", "Pure code: time of a load case", pure},
 	{"start", "Start, memory, size", starts},
 	{"lists", "Lists, proofs and pages as the ledger grows", lists},

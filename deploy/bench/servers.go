@@ -5,7 +5,6 @@ import (
 	"bytes"
 	"errors"
 	"fmt"
-	"io"
 	"net"
 	"net/http"
 	"os"
@@ -37,9 +36,6 @@ func freeAddress() (string, error) {
 
 // launch starts a server and waits until it answers 200 under a path.
 func launch(path, listen string, cmd *exec.Cmd) (*process, error) {
-	var said bytes.Buffer
-	cmd.Stderr = io.Discard
-	cmd.Stdout = &said
 	// It ends with this process, whose thread must stay for that.
 	runtime.LockOSThread()
 	cmd.SysProcAttr = &syscall.SysProcAttr{Pdeathsig: syscall.SIGKILL}
