@@ -100,11 +100,12 @@ func calculate(kind Kind, input []byte, view View, look lookup) (*calculation, e
 		return nil, malformed(err, "")
 	}
 	var f faults
+	// Before the catalogues' objects stand in it, which are sound.
+	f.check(doc)
 	doc.resolve(look, &f)
 	if f.cause != nil {
 		return nil, f.cause
 	}
-	f.check(doc)
 	p := doc.prepare(&f)
 	if found := f.problem(); found != nil {
 		return nil, found
