@@ -120,7 +120,7 @@ func TestDerivedRanges(t *testing.T) {
 		change      func(*lug.Head)
 	}{
 		{"brittle", "elongation", strength.Bearing, 0, func(h *lug.Head) { h.Material.Elongation = 0.049 }},
-		{"thin", "D/t 5.1 is outside", strength.Bearing, 0, func(h *lug.Head) { h.Thickness = 25 / 5.1 }},
+		{"thin", "D/t 5.1 is above 5, up to which", strength.Bearing, 0, func(h *lug.Head) { h.Thickness = 25 / 5.1 }},
 		{"narrow", "W/D 1.2", strength.Bearing, 0, func(h *lug.Head) { h.Width = 30 }},
 		{"weak in shear", "F_su/F_tu 0.5333", strength.Bearing, 0, func(h *lug.Head) { h.Material.Fsu = 240 }},
 		{"short", "e/D 0.59 is outside 0.6", strength.Bearing, 0, func(h *lug.Head) { h.Shape, h.EdgeDistance = lug.Square, 0.59*25 }},

@@ -80,7 +80,12 @@ func (c *charts) take(s *sheet, name string, chart *Chart, symbol string, a spot
 		y, variable = a.between(chart.Between)
 	}
 	r := chart.read(a.x, y, a.belowFirst)
-	if r.outsideOf != "" {
+	switch {
+	case r.outsideOf == "":
+	case r.outsideOf == chart.Between && r.from == r.upTo && a.belowFirst:
+		s.lack(strength.Say("%s %.4g is above %.4g, up to which chart %s of curve set %s holds", r.outsideOf, r.found, r.upTo, name, c.name))
+		return 0
+	default:
 		s.lack(strength.Say("%s %.4g is outside %.4g to %.4g, the range of chart %s of curve set %s", r.outsideOf, r.found, r.from, r.upTo, name, c.name))
 		return 0
 	}
