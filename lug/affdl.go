@@ -432,8 +432,10 @@ func (c *charts) between(s *sheet, r float64, a spot) float64 {
 	lo := &c.net[k-1]
 	k1 := c.take(s, lo.name, &lo.chart, "K_n1", a)
 	k2 := c.take(s, hi.name, &hi.chart, "K_n2", a)
-	s.option("r_1", lo.r, "curve set "+c.name+", chart "+lo.name, strength.Given)
-	s.option("r_2", hi.r, "curve set "+c.name+", chart "+hi.name, strength.Given)
+	if s.recording() {
+		s.option("r_1", lo.r, "curve set "+c.name+", chart "+lo.name, strength.Given)
+		s.option("r_2", hi.r, "curve set "+c.name+", chart "+hi.name, strength.Given)
+	}
 	return s.apply(&eqNetBetween, k1+float64((r-lo.r)/(hi.r-lo.r)*(k2-k1)))
 }
 

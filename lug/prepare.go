@@ -142,13 +142,14 @@ func (b *builder) check(member string, mode strength.Mode, level strength.Level,
 ) {
 	s := b.sheet()
 	s.mark = source.Mark
-	b.laws = append(b.laws, settled{law: write(s), why: s.why, write: write, place: b.place, safety: safety, special: b.special})
-	b.checks = append(b.checks, strength.Check{
-		Member: member, Mode: mode, Level: level, Unit: unit, Mark: s.mark,
-		Method: b.name, Source: source.source(), Compared: b.choice.Compared,
-	})
-	b.read |= s.read
+	// Filled out where they stand: they are large.
+	b.checks, b.laws = append(b.checks, strength.Check{}), append(b.laws, settled{})
 	c, k := &b.checks[len(b.checks)-1], &b.laws[len(b.laws)-1]
+	k.law = write(s)
+	k.why, k.write, k.place, k.safety, k.special = s.why, write, b.place, safety, b.special
+	c.Member, c.Mode, c.Level, c.Unit, c.Mark = member, mode, level, unit, s.mark
+	c.Method, c.Source, c.Compared = b.name, source.source(), b.choice.Compared
+	b.read |= s.read
 	for i, at := range levels {
 		k.factor[i] = b.factors.Demand(c, at, safety, b.special).Factor()
 	}
