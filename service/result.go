@@ -364,15 +364,7 @@ func (d *distinct) add(steps []strength.Working) {
 	for i := range steps {
 		if w := &steps[i]; !d.has(w) {
 			d.list = append(d.list, *w)
-			if d.last != nil {
-				d.index(len(d.list) - 1)
-			}
-		}
-	}
-	if d.last == nil && len(d.list) > shortList {
-		d.last = make(map[uint64]int32, 2*len(d.list))
-		for i := range d.list {
-			d.index(i)
+			d.index()
 		}
 	}
 }
@@ -394,11 +386,20 @@ func (d *distinct) has(w *strength.Working) bool {
 	return false
 }
 
-// index makes step i of the list found by its hash.
-func (d *distinct) index(i int) {
-	key := hashOf(&d.list[i])
-	d.next = append(d.next, d.last[key])
-	d.last[key] = int32(i + 1)
+// index makes the steps of a list that is not short any more found by their
+// hash.
+func (d *distinct) index() {
+	if len(d.list) <= shortList {
+		return
+	}
+	if d.last == nil {
+		d.last = make(map[uint64]int32, 4*shortList)
+	}
+	for i := len(d.next); i < len(d.list); i++ {
+		key := hashOf(&d.list[i])
+		d.next = append(d.next, d.last[key])
+		d.last[key] = int32(i + 1)
+	}
 }
 
 // working writes one step in the caller's units. What it returns points into the
