@@ -100,9 +100,7 @@ func calculate(kind Kind, input []byte, view View, look lookup) (*calculation, e
 		return nil, malformed(err, "")
 	}
 	var f faults
-	// Before the catalogues' objects stand in it, which are sound.
-	f.check(doc)
-	doc.resolve(look, &f)
+	f.settle(doc, look)
 	if f.cause != nil {
 		return nil, f.cause
 	}

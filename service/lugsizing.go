@@ -63,11 +63,10 @@ func (s *Service) SizeLug(ctx context.Context, body []byte, view View) (*LugSizi
 	var f, inner faults
 	request.check(&f)
 	look := s.registry(ctx)
-	d.resolve(look, &inner)
+	inner.settle(&d, look)
 	if inner.cause != nil {
 		return nil, s.fail(f.under("/input", inner.cause))
 	}
-	inner.check(&d)
 	d.cornersFit(mostSizedCorners, &inner)
 	var found lug.Sized
 	if len(f.list) == 0 && len(inner.list) == 0 {

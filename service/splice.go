@@ -17,7 +17,7 @@ type SpliceDocument struct {
 	Pitches    []float64        `json:"pitches" validate:"max=10000,dive,size"`
 	Rows       []SpliceRow      `json:"rows" validate:"min=1,max=10000,dive"`
 	Compliance string           `json:"compliance" validate:"id"`
-	Compare    *[]string        `json:"compare_compliance,omitzero" validate:"omitnil,max=20,unique"`
+	Compare    *[]string        `json:"compare_compliance,omitzero" validate:"omitnil,max=20"`
 	Symmetric  *bool            `json:"symmetric,omitzero"`
 	Factors    Factors          `json:"factors"`
 	LoadCases  []SpliceLoadCase `json:"load_cases" validate:"min=1,max=100000,dive"`
@@ -168,8 +168,13 @@ func (d *SpliceDocument) resolve(_ lookup, f *faults) {
 		*name = found.Name()
 	}
 	formula(&d.Compliance, "/compliance")
-	for i := range *d.Compare {
-		formula(&(*d.Compare)[i], pointer("compare_compliance", i))
+	for i, name := range *d.Compare {
+		at := pointer("compare_compliance", i)
+		formula(&name, at)
+		if slices.Contains((*d.Compare)[:i], name) {
+			f.add(at, "%s is named twice", name)
+		}
+		(*d.Compare)[i] = name
 	}
 	d.Factors.resolve(names, f)
 }

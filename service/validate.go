@@ -125,6 +125,14 @@ func (f *faults) check(document any) {
 	}
 }
 
+// settle checks a document and resolves it, in this order: the objects that
+// resolve puts into it are those of the catalogues, and sound. A rule about what
+// resolve makes of the caller's own values must stand in resolve.
+func (f *faults) settle(d document, look lookup) {
+	f.check(d)
+	d.resolve(look, f)
+}
+
 // pointerOf turns a validator's namespace, T.lug.charts[Kn@0.8].points[3], into
 // a JSON pointer. The object in the place of a name has no token of its own.
 func pointerOf(namespace string) string {
@@ -216,8 +224,7 @@ func (f *faults) input(raw strictjson.Raw, d document) error {
 		return malformed(err, "/input")
 	}
 	var inner faults
-	d.resolve(noRegistry{}, &inner)
-	inner.check(d)
+	inner.settle(d, noRegistry{})
 	if found := inner.problem(); found != nil {
 		for _, e := range found.Under("/input").Errors {
 			f.add(e.Pointer, "%s", e.Detail)
