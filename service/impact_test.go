@@ -282,21 +282,17 @@ func TestReplaysThatTurnNegativeAreTold(t *testing.T) {
 			return id
 		}
 		negative := entered("a")
-		refused := entered("b", `"methods":["elementary@1"]`, `"methods":["elementary@9"]`) // which this program does not have
-		unreleased := entered("c", `"revision":"B"`, `"revision":"C"`)
-		sound := put(t, s, recordOf("d", "", "lug", hingeLug), both...)
-		released := judge(t, s, ask("default", "a", "b", "d"))
+		refused := entered("b", `"hole_diameter":0.75`, `"hole_diameter":7.5`)              // wider than the lug
+		unknown := entered("c", `"methods":["elementary@1"]`, `"methods":["elementary@9"]`) // which this program does not have
+		unreleased := entered("d", `"revision":"B"`, `"revision":"C"`)
+		sound := put(t, s, recordOf("e", "", "lug", hingeLug), both...)
+		released := judge(t, s, ask("default", "a", "b", "c", "e"))
 		if released.Decision != service.Release {
 			t.Fatal(why(released))
 		}
 		replay := func(id, verdict string) {
 			t.Helper()
-			switch r, err := s.Replay(t.Context(), id); {
-			case verdict == "":
-				if code(t, err) != service.Invalid {
-					t.Errorf("%s: %+v, %v, want it refused", id, r, err)
-				}
-			case err != nil || r.Current.Verdict != verdict:
+			if r, err := s.Replay(t.Context(), id); err != nil || r.Current.Verdict != verdict || r.Recorded.Reproduced != (id == sound) {
 				t.Errorf("%s: %+v, %v, want it %s", id, r, err, verdict)
 			}
 		}
@@ -306,7 +302,8 @@ func TestReplaysThatTurnNegativeAreTold(t *testing.T) {
 			t.Fatalf("%d wait, %v, before a record under a release was replayed", n, err)
 		}
 		replay(negative, "inadequate")
-		replay(refused, "")
+		replay(refused, "undetermined")
+		replay(unknown, "inadequate")
 		replay(negative, "inadequate")
 		stream, err := s.Replays(t.Context(), []byte(`{"filter": {"part": "SM-1200"}}`))
 		if err != nil {
@@ -316,7 +313,7 @@ func TestReplaysThatTurnNegativeAreTold(t *testing.T) {
 			t.Fatal(err)
 		}
 		got, err := store.TakeNotices(t.Context(), "2026-03-02T00:00:00.000Z", "2026-03-03T00:00:00.000Z", 10)
-		if err != nil || len(got) != 2 {
+		if err != nil || len(got) != 3 {
 			t.Fatalf("%d notices, %v, want one of each", len(got), err)
 		}
 		for _, n := range got {
@@ -331,7 +328,8 @@ func TestReplaysThatTurnNegativeAreTold(t *testing.T) {
 				t.Fatal(err)
 			}
 			// 34,087.47 lbf of shear-out against 62,100: margin -0.45109.
-			want := map[string]string{negative: "by the methods of today it is inadequate, with the least margin -0.4510", refused: "by the methods of today it is undetermined"}[body.Data.Record]
+			const negativeNow = "by the methods of today it is inadequate, with the least margin -0.4510"
+			want := map[string]string{negative: negativeNow, unknown: negativeNow, refused: "by the methods of today it cannot be computed"}[body.Data.Record]
 			if want == "" || !strings.HasPrefix(body.Data.Reason, want) || body.Type != "record.negative" || len(body.Data.Releases) != 1 || body.Data.Releases[0].ID != *released.ID {
 				t.Errorf("notice %s: %s", n.ID, n.Body)
 			}

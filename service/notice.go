@@ -71,13 +71,17 @@ func (s *Service) notices(ctx context.Context, kind, id, at, reason string, reco
 }
 
 // tellReplay notes, once for each version of the program, that an adequate
-// record under a release is not adequate by today's methods.
-func (s *Service) tellReplay(ctx context.Context, record Entry, now ReplayCurrent) error {
-	adequate := strength.Adequate.String()
+// record under a release is not adequate by today's methods or cannot be
+// computed by them.
+func (s *Service) tellReplay(ctx context.Context, record Entry, r *Replay) error {
+	adequate, now := strength.Adequate.String(), r.Current
 	if record.Verdict != adequate || now.Verdict == adequate {
 		return nil
 	}
 	reason := "by the methods of today it is " + now.Verdict
+	if r.refused != nil {
+		reason = "by the methods of today it cannot be computed"
+	}
 	if m := now.Margin; m != nil {
 		reason += fmt.Sprintf(", with the least margin %g", *m)
 	}

@@ -21,6 +21,8 @@ const reproducedWithin = 1e-9
 type Replay struct {
 	Recorded ReplayRecorded `json:"recorded"`
 	Current  ReplayCurrent  `json:"current"`
+
+	refused *Problem // why today's methods do not take the input any more
 }
 
 // ReplayRecorded is the recorded input by the recorded revisions.
@@ -49,20 +51,10 @@ func (s *Service) Replay(ctx context.Context, id string) (*Replay, error) {
 // replayEntry replays a record, and tells of one that does not hold any more.
 func (s *Service) replayEntry(ctx context.Context, entry Entry, substitute *substitution) (*Replay, error) {
 	r, err := s.replay(ctx, entry.Bytes, substitute)
-	if substitute != nil {
+	if err != nil || substitute != nil {
 		return r, err
 	}
-	var refused *Problem
-	switch {
-	case err == nil:
-		return r, s.fail(s.tellReplay(ctx, entry, r.Current))
-	case errors.As(err, &refused) && refused.Code != Unavailable:
-		// What cannot be computed does not hold either.
-		if untold := s.tellReplay(ctx, entry, ReplayCurrent{Verdict: strength.Undetermined.String()}); untold != nil {
-			return nil, s.fail(untold)
-		}
-	}
-	return nil, err
+	return r, s.fail(s.tellReplay(ctx, entry, r))
 }
 
 // replay computes an entry again; the current result with a material in the
@@ -74,7 +66,11 @@ func (s *Service) replay(ctx context.Context, canonical []byte, substitute *subs
 		return nil, err
 	}
 	difference, err := recompute(body, look)
-	if err != nil {
+	var refused *Problem
+	if errors.As(err, &refused) && refused.Code == Invalid {
+		// By a revision that this program does not have, say.
+		difference.structure = refused.Error()
+	} else if err != nil {
 		return nil, s.fail(err)
 	}
 	s.watch.Replayed(difference.reproduced())
@@ -87,10 +83,8 @@ func (s *Service) replay(ctx context.Context, canonical []byte, substitute *subs
 		return nil, err
 	}
 	now, err := calculate(body.Kind, input, View{}, look)
-	var refused *Problem
 	if errors.As(err, &refused) && refused.Code == Invalid {
-		// Today's methods do not take this input any more.
-		r.Current.Verdict = strength.Undetermined.String()
+		r.Current.Verdict, r.refused = strength.Undetermined.String(), refused
 		return r, nil
 	}
 	if err != nil {

@@ -185,6 +185,9 @@ func (s *Service) replayItem(ctx context.Context, summary *Summary, substitute *
 		return nil, err
 	}
 	item.Recorded, item.Current = r.Recorded, r.Current
+	if r.refused != nil {
+		item.Problem = text(r.refused.Error())
+	}
 	negative := func(m *float64) bool { return m != nil && *m < 0 }
 	item.SignChanges = item.WasVerdict != r.Current.Verdict || negative(item.WasMargin) != negative(r.Current.Margin)
 	return item, nil
