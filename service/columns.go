@@ -47,7 +47,7 @@ func entryOf(canonical []byte, envelope ledger.Envelope) (Entry, *recordHead, er
 	}
 	var record *recordHead
 	var err error
-	read := func(into any) { err = strictjson.DecodeLoosely(envelope.Body, into) }
+	read := func(into any) { err = strictjson.DecodeSealed(envelope.Body, into) }
 	switch envelope.Type {
 	case entryRecord:
 		record = new(recordHead)

@@ -77,8 +77,8 @@ func openSQLite(ctx context.Context, file, engine string) (*SQLite, error) {
 	return s, nil
 }
 
-// prepare prepares the statements of appends: to do it for each takes longer
-// than to run them.
+// prepare prepares the statements of appends: to do it for each append takes
+// longer than to run them.
 func (s *SQLite) prepare(ctx context.Context) (err error) {
 	if s.answered, err = s.read.PrepareContext(ctx, sqliteAnswered); err != nil {
 		return err

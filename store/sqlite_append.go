@@ -30,7 +30,7 @@ var sqliteAppends = []string{
 	sqliteSwapHead, sqliteAddEntry, sqliteAddTerm, sqliteAddHash, sqliteAddAnswer, sqliteAddNotice, sqliteReplaced, sqliteAddStanding, sqliteJudged,
 }
 
-// sqliteTx is a transaction of an append.
+// sqliteTx is a transaction with the prepared statements.
 type sqliteTx struct {
 	*sql.Tx
 	prepared map[string]*sql.Stmt

@@ -84,15 +84,15 @@ func pureLugs(b *bench) error {
 			{ID: "LC1", Level: strength.Limit, Force: 50000},
 			{ID: "LC2", Level: strength.Limit, Force: 50000, Angle: 37},
 		}
-		choices := []lug.Choice{{Method: m.Name()}}
-		p, faults := lug.Prepare(hinge(), choices, factors, cases)
+		joint, choices := hinge(), []lug.Choice{{Method: m.Name()}}
+		p, faults := lug.Prepare(joint, choices, factors, cases)
 		if len(faults) > 0 {
 			return fmt.Errorf("%s: %v", m.Name(), faults)
 		}
 		margins := make([]strength.Margin, len(p.Checks()))
 		axial, a := timed(func() { p.Margins(0, margins) })
 		oblique, c := timed(func() { p.Margins(1, margins) })
-		prepare, _ := timed(func() { lug.Prepare(hinge(), choices, factors, cases) })
+		prepare, _ := timed(func() { lug.Prepare(joint, choices, factors, cases) })
 		b.report.row(m.Name(), len(margins), axial, oblique, max(a, c), prepare)
 	}
 	b.report.text("melcon-hoblit has no built-in curve set, so most of its checks are undetermined here.")

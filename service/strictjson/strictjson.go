@@ -64,10 +64,13 @@ func Decode(data []byte, into any) error {
 	return nil
 }
 
-// DecodeLoosely reads a document of our own making, nulls included: only some of
-// its members into a struct, or all of it into an any. That no name stands twice
-// was seen when it was made.
-func DecodeLoosely(data []byte, into any) error {
+// DecodeLoosely reads a document that needs no strictness, nulls included: only
+// some of its members into a struct, or all of it into an any.
+func DecodeLoosely(data []byte, into any) error { return json.Unmarshal(data, into) }
+
+// DecodeSealed is DecodeLoosely into a struct, for bytes that this program has
+// sealed: that no name stands twice was seen then.
+func DecodeSealed(data []byte, into any) error {
 	return json.Unmarshal(data, into, jsontext.AllowDuplicateNames(true))
 }
 

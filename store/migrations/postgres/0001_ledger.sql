@@ -141,9 +141,10 @@ BEGIN
     IF NOT FOUND THEN
         RAISE EXCEPTION 'the head is not of % entries any more', base_size USING ERRCODE = 'LD001';
     END IF;
-    -- The statements of an append have one good plan each, by the index whose
-    -- order they ask for. It is made once, perhaps while the tables are empty, and not
-    -- for every batch. It holds for this transaction.
+    -- For this transaction: each statement of an append has one good plan, which
+    -- is made once and not for every batch. It may be made while the tables are
+    -- empty, when a sort of all rows seems no dearer than the index that has
+    -- them in order.
     PERFORM set_config('plan_cache_mode', 'force_generic_plan', true);
     PERFORM set_config('enable_sort', 'off', true);
 END $$;
