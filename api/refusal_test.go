@@ -308,8 +308,11 @@ func TestInvalid(t *testing.T) {
 		{"no compliance where it is given", "/v1/splices", splice, changes{"/rows/2/compliance": removed}, at{"/rows/2/compliance"}},
 		{"a negative compliance", "/v1/splices", splice, changes{"/rows/2/compliance": -1e-6}, at{"/rows/2/compliance"}},
 		{"an unknown formula", "/v1/splices", splice, changes{"/compliance": "soft"}, at{"/compliance"}},
-		{"a formula twice, once by its revision", "/v1/splices", splice, changes{"/compare_compliance": []any{"swift", "swift@1"}},
-			at{"/compare_compliance/1", "/members/0/row_thickness", "/members/1/row_thickness", "/rows/0/e", "/rows/1/e", "/rows/2/e", "/rows/3/e"}},
+		{
+			"a formula twice, once by its revision", "/v1/splices", splice,
+			changes{"/compare_compliance": []any{"swift", "swift@1"}},
+			at{"/compare_compliance/1", "/members/0/row_thickness", "/members/1/row_thickness", "/rows/0/e", "/rows/1/e", "/rows/2/e", "/rows/3/e"},
+		},
 		{"member ids twice", "/v1/splices", splice, changes{"/members/1/id": "cap", "/load_cases/0/ends/1/member": "cap"}, at{"/load_cases/0/ends/1/member", "/members/1/id"}},
 		{"a row outside the splice", "/v1/splices", splice, changes{"/members/0/last_row": 9}, at{"/members/0/last_row"}},
 		{"no diameters to choose from", "/v1/fastener-groups/sizing", sizes, changes{"/diameters": []any{}, "/types": removed}, at{"/diameters"}},
