@@ -1,6 +1,7 @@
 package service
 
 import (
+	"cmp"
 	"fmt"
 	"slices"
 	"strconv"
@@ -128,51 +129,41 @@ func (r *recordHead) columns() (Columns, error) {
 	for _, m := range r.Result.ByMethod {
 		c.Terms = append(c.Terms, Term{termMethod, m.Method})
 	}
-	var input any
-	if err := strictjson.DecodeLoosely(r.Input, &input); err != nil {
+	found, err := inputTerms(r.Input)
+	if err != nil {
 		return Columns{}, err
 	}
-	found := inputTerms(input, nil)
-	slices.SortFunc(found, func(a, b Term) int { return slices.Compare([]string{a.Kind, a.Value}, []string{b.Kind, b.Value}) })
+	slices.SortFunc(found, func(a, b Term) int { return cmp.Or(cmp.Compare(a.Kind, b.Kind), cmp.Compare(a.Value, b.Value)) })
 	c.Terms = append(c.Terms, slices.Compact(found)...)
 	return c, nil
 }
 
 // inputTerms collects the materials and curve sets that an input names,
-// wherever they stand.
-func inputTerms(value any, found []Term) []Term {
-	text := func(object any, name string) string {
-		members, _ := object.(map[string]any)
-		s, _ := members[name].(string)
-		return s
-	}
-	switch value := value.(type) {
-	case []any:
-		for _, v := range value {
-			found = inputTerms(v, found)
+// wherever they stand. What is no object names none.
+func inputTerms(input strictjson.Raw) (found []Term, _ error) {
+	err := strictjson.Members(input, func(name string, value strictjson.Raw) {
+		var is struct {
+			Name    string `json:"name"`
+			ID      string `json:"id"`
+			Version string `json:"version"`
+			Digest  string `json:"digest"`
 		}
-	case map[string]any:
-		for name, v := range value {
-			switch name {
-			case "material":
-				if s := text(v, "name"); s != "" {
-					found = append(found, Term{termMaterial, s})
-				}
-			case "curve_set":
-				if s := text(v, "id"); s != "" {
-					name := s + "@" + text(v, "version")
-					found = append(found, Term{termCurveSet, name})
-					if text(v, "digest") == "" {
-						// A whole set, which can have any name.
-						found = append(found, Term{termInline, name})
-					}
-				}
-			default:
-				found = inputTerms(v, found)
+		if strictjson.DecodeSealed(value, &is) != nil {
+			return
+		}
+		switch {
+		case name == "material" && is.Name != "":
+			found = append(found, Term{termMaterial, is.Name})
+		case name == "curve_set" && is.ID != "":
+			set := is.ID + "@" + is.Version
+			found = append(found, Term{termCurveSet, set})
+			if is.Digest == "" {
+				// A whole set, which can have any name.
+				found = append(found, Term{termInline, set})
 			}
 		}
-	}
-	return found
+	}, "material", "curve_set")
+	return found, err
 }
 
 // unaltered compares what is stored of an entry with what its bytes say.

@@ -74,6 +74,33 @@ func DecodeSealed(data []byte, into any) error {
 	return json.Unmarshal(data, into, jsontext.AllowDuplicateNames(true))
 }
 
+// Members calls found with the value of each member that has one of the names,
+// wherever it stands, but not within another of them.
+func Members(data []byte, found func(name string, value Raw), names ...string) error {
+	d := jsontext.NewDecoder(bytes.NewReader(data), jsontext.AllowDuplicateNames(true))
+	for {
+		token, err := d.ReadToken()
+		if errors.Is(err, io.EOF) {
+			return nil
+		}
+		if err != nil {
+			return err
+		}
+		// Within an object every other token is a name.
+		parent, read := d.StackIndex(d.StackDepth())
+		if token.Kind() != String || parent != Object || read%2 == 0 {
+			continue
+		}
+		if name := token.String(); slices.Contains(names, name) {
+			value, err := d.ReadValue()
+			if err != nil {
+				return err
+			}
+			found(name, value)
+		}
+	}
+}
+
 // Lines returns a function from pointers into a document to the lines, from 1,
 // that they stand on; of a member that is missing, the line of what it is
 // missing from.

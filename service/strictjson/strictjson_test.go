@@ -2,6 +2,7 @@ package strictjson_test
 
 import (
 	"errors"
+	"slices"
 	"strings"
 	"testing"
 
@@ -154,5 +155,24 @@ func TestCompose(t *testing.T) {
 	}
 	if _, err := strictjson.Compose(map[string]any{"f": func() {}}); err == nil {
 		t.Error("what is no JSON was written")
+	}
+}
+
+func TestMembers(t *testing.T) {
+	const document = `{"a": {"b": 1, "a": 2}, "b": "a", "c": ["a", "b", {"b": ["a", {"a": 3}], "d": {"a": null}}], "e": {"\u0061": true}}`
+	var got []string
+	if err := strictjson.Members([]byte(document), func(name string, value strictjson.Raw) {
+		got = append(got, name+" "+string(value))
+	}, "a", "b"); err != nil {
+		t.Fatal(err)
+	}
+	want := []string{`a {"b": 1, "a": 2}`, `b "a"`, `b ["a", {"a": 3}]`, `a null`, `a true`}
+	if !slices.Equal(got, want) {
+		t.Errorf("found %q, want %q", got, want)
+	}
+	for _, broken := range []string{`{"a": `, `{"b": {"a": 1]}`, `[1, `} {
+		if err := strictjson.Members([]byte(broken), func(string, strictjson.Raw) {}, "a"); err == nil {
+			t.Errorf("%s was read to its end", broken)
+		}
 	}
 }
