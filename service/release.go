@@ -372,19 +372,21 @@ func (d *decisionBody) look(j releaseJoint, r *judged, policy Policy, now time.T
 // judgedRecords reads the latest records under a part and revision and checks
 // each of their entries, and the columns that found them, against its bytes.
 func (s *Service) judgedRecords(ctx context.Context, part, revision string) ([]*judged, error) {
-	entries, err := s.store.Latest(ctx, part, revision)
-	if err != nil {
+	// Each record is read while the store goes on to the next, and to what is
+	// about them.
+	var entries []Entry
+	var ids []string
+	var found []*reading
+	var work sync.WaitGroup
+	defer work.Wait()
+	if err := s.store.Latest(ctx, part, revision, func(e Entry) error {
+		r := new(reading)
+		entries, ids, found = append(entries, e), append(ids, e.ID), append(found, r)
+		work.Go(func() { r.record, r.err = judgedRecord(e) })
+		return nil
+	}); err != nil {
 		return nil, err
 	}
-	// The records are read while the store looks for what is about them.
-	ids := make([]string, len(entries))
-	records, errs := make([]*judged, len(entries)), make([]error, len(entries))
-	var work sync.WaitGroup
-	for i, e := range entries {
-		ids[i] = e.ID
-		work.Go(func() { records[i], errs[i] = judgedRecord(e) })
-	}
-	defer work.Wait()
 	about, err := s.store.About(ctx, ids)
 	if err != nil {
 		return nil, err
@@ -394,16 +396,27 @@ func (s *Service) judgedRecords(ctx context.Context, part, revision string) ([]*
 	if err != nil {
 		return nil, err
 	}
-	for i, r := range records {
-		if errs[i] == nil {
-			errs[i] = r.judge(about[r.entry.ID])
+	for i, r := range found {
+		if r.err == nil {
+			work.Go(func() { r.err = r.record.judge(about[ids[i]]) })
 		}
 	}
-	if err := errors.Join(append(errs, inTree)...); err != nil {
+	work.Wait()
+	records, errs := make([]*judged, len(found)), []error{inTree}
+	for i, r := range found {
+		records[i], errs = r.record, append(errs, r.err)
+	}
+	if err := errors.Join(errs...); err != nil {
 		s.watch.Altered(err)
 		return nil, err
 	}
 	return records, nil
+}
+
+// reading is what became of reading a record.
+type reading struct {
+	record *judged
+	err    error
 }
 
 // inTree compares entries, whose leaves are those of their bytes, with the

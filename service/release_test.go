@@ -377,14 +377,13 @@ type altering struct {
 	hashes func([]ledger.Hash)
 }
 
-func (a *altering) Latest(ctx context.Context, part, revision string) ([]service.Entry, error) {
-	found, err := a.Store.Latest(ctx, part, revision)
-	for i := range found {
+func (a *altering) Latest(ctx context.Context, part, revision string, yield func(service.Entry) error) error {
+	return a.Store.Latest(ctx, part, revision, func(e service.Entry) error {
 		if a.record != nil {
-			a.record(&found[i])
+			a.record(&e)
 		}
-	}
-	return found, err
+		return yield(e)
+	})
 }
 
 func (a *altering) About(ctx context.Context, records []string) (map[string][]service.Entry, error) {

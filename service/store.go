@@ -49,9 +49,10 @@ type Store interface {
 	// Records lists record entries, newest first, at most limit of those
 	// under the index before.
 	Records(ctx context.Context, filter Filter, before int64, limit int) ([]Summary, error)
-	// Latest returns the latest record of each joint, aspect and kind under
-	// exactly this part and revision.
-	Latest(ctx context.Context, part, revision string) ([]Entry, error)
+	// Latest calls yield with the latest record of each joint, aspect and kind
+	// under exactly this part and revision, in order, until it fails; without its
+	// terms, which its bytes say too.
+	Latest(ctx context.Context, part, revision string, yield func(Entry) error) error
 
 	// Decisions returns the release decisions that rest on each of the records,
 	// in the order of the log.

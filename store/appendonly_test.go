@@ -134,7 +134,7 @@ func TestStandingIsOnlyAnIndex(t *testing.T) {
 				t.Errorf("after %s: %v, %v", c.change, found, err)
 			}
 		}
-		latest, err := s.Latest(t.Context(), "SM-110", "A")
+		latest, err := latestOf(t, s, "SM-110", "A")
 		if err != nil || len(latest) != 1 || latest[0].Index != 1 {
 			t.Errorf("latest for a release: %+v, %v", latest, err)
 		}

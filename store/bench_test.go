@@ -209,7 +209,7 @@ func BenchmarkRecords(b *testing.B) {
 			}
 			b.Run("release", func(b *testing.B) {
 				for b.Loop() {
-					if found, err := s.Latest(b.Context(), "SM-42", "A"); err != nil || len(found) != 25 {
+					if found, err := latestOf(b, s, "SM-42", "A"); err != nil || len(found) != 25 {
 						b.Fatalf("%d found, %v", len(found), err)
 					}
 				}

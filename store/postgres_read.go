@@ -28,6 +28,15 @@ func scanPostgres(row pgx.CollectableRow, e *service.Entry, more ...any) error {
 
 // entries reads whole entries; rest follows FROM.
 func (s *Postgres) entries(ctx context.Context, rest string, args ...any) ([]service.Entry, error) {
+	found, err := s.withoutTerms(ctx, rest, args...)
+	if err != nil {
+		return nil, err
+	}
+	return found, postgresError(s.addTerms(ctx, found))
+}
+
+// withoutTerms is entries for such as have no terms.
+func (s *Postgres) withoutTerms(ctx context.Context, rest string, args ...any) ([]service.Entry, error) {
 	ctx, cancel := context.WithTimeout(ctx, postgresTimeout)
 	defer cancel()
 	rows, err := s.pool.Query(ctx, `SELECT `+postgresColumns+`, r.bytes FROM `+rest, args...)
@@ -38,14 +47,13 @@ func (s *Postgres) entries(ctx context.Context, rest string, args ...any) ([]ser
 		err = scanPostgres(row, &e, &e.Bytes)
 		return e, err
 	})
-	if err != nil {
-		return nil, postgresError(err)
-	}
-	return found, postgresError(s.addTerms(ctx, found))
+	return found, postgresError(err)
 }
 
 // addTerms reads what records rest on.
 func (s *Postgres) addTerms(ctx context.Context, entries []service.Entry) error {
+	ctx, cancel := context.WithTimeout(ctx, postgresTimeout)
+	defer cancel()
 	at := map[int64]*service.Entry{}
 	var indexes []int64
 	for i := range entries {
@@ -116,7 +124,7 @@ func (s *Postgres) About(ctx context.Context, records []string) (map[string][]se
 	if len(known) == 0 {
 		return about, nil
 	}
-	found, err := s.entries(ctx, `entries r WHERE r.target = ANY ($1) AND r.target <> '' AND r.type IN ('sign-off', 'withdrawal') ORDER BY r.idx`, known)
+	found, err := s.withoutTerms(ctx, `entries r WHERE r.target = ANY ($1) AND r.target <> '' AND r.type IN ('sign-off', 'withdrawal') ORDER BY r.idx`, known)
 	if err != nil {
 		return nil, err
 	}
@@ -138,12 +146,28 @@ func (s *Postgres) CurveSets(ctx context.Context) ([]service.Entry, error) {
 }
 
 // Latest implements service.Store.
-func (s *Postgres) Latest(ctx context.Context, part, revision string) ([]service.Entry, error) {
+func (s *Postgres) Latest(ctx context.Context, part, revision string, yield func(service.Entry) error) error {
 	if !storable(part, revision) {
-		return nil, nil
+		return nil
 	}
-	return s.entries(ctx, `entries r WHERE r.idx IN (SELECT max(idx) FROM entries
+	ctx, cancel := context.WithTimeout(ctx, postgresTimeout)
+	defer cancel()
+	rows, err := s.pool.Query(ctx, `SELECT `+postgresColumns+`, r.bytes FROM entries r WHERE r.idx IN (SELECT max(idx) FROM entries
 		WHERE type = 'record' AND part = $1 AND revision = $2 GROUP BY joint, aspect, kind) ORDER BY r.idx`, part, revision)
+	if err != nil {
+		return postgresError(err)
+	}
+	defer rows.Close()
+	for rows.Next() {
+		var e service.Entry
+		if err := scanPostgres(rows, &e, &e.Bytes); err != nil {
+			return postgresError(err)
+		}
+		if err := yield(e); err != nil {
+			return err
+		}
+	}
+	return postgresError(rows.Err())
 }
 
 // Records implements service.Store.

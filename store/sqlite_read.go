@@ -28,6 +28,17 @@ func scanSQLite(scan func(...any) error, e *service.Entry, more ...any) error {
 
 // entries reads whole entries until they have most bytes; rest follows FROM.
 func (s *SQLite) entries(ctx context.Context, most int, rest string, args ...any) ([]service.Entry, error) {
+	found, err := s.withoutTerms(ctx, most, rest, args...)
+	if err != nil {
+		return nil, err
+	}
+	ctx, cancel := context.WithTimeout(ctx, sqliteTimeout)
+	defer cancel()
+	return found, s.addTerms(ctx, found)
+}
+
+// withoutTerms is entries for such as have no terms.
+func (s *SQLite) withoutTerms(ctx context.Context, most int, rest string, args ...any) ([]service.Entry, error) {
 	ctx, cancel := context.WithTimeout(ctx, sqliteTimeout)
 	defer cancel()
 	rows, err := s.read.QueryContext(ctx, `SELECT `+sqliteColumns+`, r.bytes FROM `+rest, args...)
@@ -49,7 +60,7 @@ func (s *SQLite) entries(ctx context.Context, most int, rest string, args ...any
 	}); err != nil {
 		return nil, err
 	}
-	return found, s.addTerms(ctx, found)
+	return found, nil
 }
 
 // addTerms reads what records rest on.
@@ -131,7 +142,7 @@ func (s *SQLite) About(ctx context.Context, records []string) (map[string][]serv
 		if _, done := about[id]; done || id == "" || !storable(id) {
 			continue
 		}
-		found, err := s.entries(ctx, math.MaxInt, `entries r WHERE r.target = ? AND r.target <> '' AND r.type IN ('sign-off', 'withdrawal') ORDER BY r.idx`, id)
+		found, err := s.withoutTerms(ctx, math.MaxInt, `entries r WHERE r.target = ? AND r.target <> '' AND r.type IN ('sign-off', 'withdrawal') ORDER BY r.idx`, id)
 		if err != nil {
 			return nil, err
 		}
@@ -157,12 +168,24 @@ func (s *SQLite) CurveSets(ctx context.Context) ([]service.Entry, error) {
 }
 
 // Latest implements service.Store.
-func (s *SQLite) Latest(ctx context.Context, part, revision string) ([]service.Entry, error) {
+func (s *SQLite) Latest(ctx context.Context, part, revision string, yield func(service.Entry) error) error {
 	if !storable(part, revision) {
-		return nil, nil
+		return nil
 	}
-	return s.entries(ctx, math.MaxInt, `entries r WHERE r.idx IN (SELECT max(idx) FROM entries INDEXED BY entries_subject
+	ctx, cancel := context.WithTimeout(ctx, sqliteTimeout)
+	defer cancel()
+	rows, err := s.read.QueryContext(ctx, `SELECT `+sqliteColumns+`, r.bytes FROM entries r WHERE r.idx IN (SELECT max(idx) FROM entries INDEXED BY entries_subject
 		WHERE type = 'record' AND part = ? AND revision = ? GROUP BY joint, aspect, kind) ORDER BY r.idx`, part, revision)
+	if err != nil {
+		return sqliteError(err)
+	}
+	return each(rows, func() error {
+		var e service.Entry
+		if err := scanSQLite(rows.Scan, &e, &e.Bytes); err != nil {
+			return err
+		}
+		return yield(e)
+	})
 }
 
 // Records implements service.Store.

@@ -136,8 +136,13 @@ func (m *memory) Decisions(_ context.Context, records []string) ([]service.Resti
 	return resting, nil
 }
 
-func (m *memory) Latest(_ context.Context, part, revision string) ([]service.Entry, error) {
-	return m.pick(func(e service.Entry) bool { return e.Type == "record" && e.Part == part && e.Revision == revision }), nil
+func (m *memory) Latest(_ context.Context, part, revision string, yield func(service.Entry) error) error {
+	for _, e := range m.pick(func(e service.Entry) bool { return e.Type == "record" && e.Part == part && e.Revision == revision }) {
+		if err := yield(e); err != nil {
+			return err
+		}
+	}
+	return nil
 }
 
 func (m *memory) Records(_ context.Context, _ service.Filter, before int64, limit int) ([]service.Summary, error) {

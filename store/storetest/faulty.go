@@ -178,8 +178,9 @@ func (f *Faulty) CurveSets(ctx context.Context) ([]service.Entry, error) {
 }
 
 // Latest implements service.Store.
-func (f *Faulty) Latest(ctx context.Context, part, revision string) ([]service.Entry, error) {
-	return do(f, "Latest", func() ([]service.Entry, error) { return f.inner.Latest(ctx, part, revision) })
+func (f *Faulty) Latest(ctx context.Context, part, revision string, yield func(service.Entry) error) error {
+	_, err := do(f, "Latest", func() (struct{}, error) { return nothing(f.inner.Latest(ctx, part, revision, yield)) })
+	return err
 }
 
 // Key implements service.Store.
