@@ -141,12 +141,6 @@ BEGIN
     IF NOT FOUND THEN
         RAISE EXCEPTION 'the head is not of % entries any more', base_size USING ERRCODE = 'LD001';
     END IF;
-    -- For this transaction: each statement of an append has one good plan, which
-    -- is made once and not for every batch. It may be made while the tables are
-    -- empty, when a sort of all rows seems no dearer than the index that has
-    -- them in order.
-    PERFORM set_config('plan_cache_mode', 'force_generic_plan', true);
-    PERFORM set_config('enable_sort', 'off', true);
 END $$;
 
 CREATE FUNCTION revoke_key(key_id text, revoked_at text) RETURNS void LANGUAGE plpgsql AS $$
