@@ -23,8 +23,8 @@ type Tolerance struct {
 	Plus    float64 `json:"plus"`
 }
 
-// nominal is the dimension itself, 0 for none.
-func nominal(l *Length) float64 {
+// Nominal is the dimension itself, 0 for none.
+func Nominal(l *Length) float64 {
 	switch {
 	case l == nil:
 		return 0

@@ -203,7 +203,7 @@ func (d *LugDocument) resolveOptions(m lug.Method, look lookup, f *faults) lug.O
 // joint turns the document into N, mm and MPa.
 func (d *LugDocument) joint() lug.Joint {
 	mm := d.Units.scale(strength.Length)
-	length := func(l *Length) float64 { return nominal(l) * mm }
+	length := func(l *Length) float64 { return Nominal(l) * mm }
 	head := func(h *LugHead) lug.Head {
 		out := lug.Head{
 			Shape: shapes[h.Shape],

@@ -120,24 +120,24 @@ func (d *LugDocument) setFree(r *LugSizingRequest, x float64) {
 	case lug.FreeEdge:
 		set(&h.EdgeDistance, x)
 	case lug.FreeWidth:
-		ratio := nominal(&h.EdgeDistance) / nominal(&h.Width)
+		ratio := Nominal(&h.EdgeDistance) / Nominal(&h.Width)
 		if r.Ratio != nil {
 			ratio = *r.Ratio
 		}
 		set(&h.Width, x)
 		set(&h.EdgeDistance, ratio*x)
 	case lug.FreeHole:
-		more := x - nominal(&h.HoleDiameter)
+		more := x - Nominal(&h.HoleDiameter)
 		set(&h.HoleDiameter, x)
 		if d.Clevis != nil {
-			set(&d.Clevis.HoleDiameter, nominal(&d.Clevis.HoleDiameter)+more)
+			set(&d.Clevis.HoleDiameter, Nominal(&d.Clevis.HoleDiameter)+more)
 		}
 		switch {
 		case d.Pin == nil:
 		case r.Ratio != nil:
 			set(&d.Pin.Diameter, *r.Ratio*x)
 		default:
-			set(&d.Pin.Diameter, nominal(&d.Pin.Diameter)+more)
+			set(&d.Pin.Diameter, Nominal(&d.Pin.Diameter)+more)
 		}
 	}
 }

@@ -28,10 +28,10 @@ type head struct {
 
 func headOf(h *service.LugHead) head {
 	out := head{
-		shape: string(h.Shape), hole: nominal(&h.HoleDiameter) / 2, end: nominal(&h.EdgeDistance), radius: nominal(h.EndRadius),
-		width: nominal(&h.Width), thickness: nominal(&h.Thickness), bodyWidth: nominal(h.BodyWidth),
+		shape: string(h.Shape), hole: service.Nominal(&h.HoleDiameter) / 2, end: service.Nominal(&h.EdgeDistance), radius: service.Nominal(h.EndRadius),
+		width: service.Nominal(&h.Width), thickness: service.Nominal(&h.Thickness), bodyWidth: service.Nominal(h.BodyWidth),
 	}
-	offset := nominal(h.Offset)
+	offset := service.Nominal(h.Offset)
 	out.upper, out.lower = out.width/2-offset, out.width/2+offset
 	if out.radius == 0 {
 		out.radius = out.end
@@ -102,13 +102,13 @@ func lugPlan(d *service.LugDocument, member string, governing *service.Check) te
 	c.path("solid", h.outline())
 	c.circle("hole", 0, 0, h.hole)
 	if d.Pin != nil {
-		r := nominal(&d.Pin.Diameter) / 2
+		r := service.Nominal(&d.Pin.Diameter) / 2
 		if bushing != nil {
 			c.path("bushing", shape().to("M", h.hole, 0).to("A", h.hole, h.hole, 0, 1, 0, -h.hole, 0).to("A", h.hole, h.hole, 0, 1, 0, h.hole, 0).
 				to("Z").to("M", r, 0).to("A", r, r, 0, 1, 1, -r, 0).to("A", r, r, 0, 1, 1, r, 0).to("Z"))
 		}
 		c.circle("pin", 0, 0, r)
-		if inner := nominal(d.Pin.InnerDiameter) / 2; inner > 0 {
+		if inner := service.Nominal(d.Pin.InnerDiameter) / 2; inner > 0 {
 			c.circle("bore", 0, 0, inner)
 		}
 	}
@@ -307,7 +307,7 @@ func niceBelow(x float64) float64 {
 // pin, and the thickness that is active where the workings have it.
 func jointSection(d *service.LugDocument, r *service.Result) template.HTML {
 	lug, clevis := headOf(&d.Lug), headOf(&d.Clevis.LugHead)
-	gap := nominal(d.Clevis.Gap)
+	gap := service.Nominal(d.Clevis.Gap)
 	single := d.Joint != nil && *d.Joint == "single-shear"
 	type plate struct {
 		h        *head
@@ -331,7 +331,7 @@ func jointSection(d *service.LugDocument, r *service.Result) template.HTML {
 	c := newCanvas(area, room{20, 62, 90, 70})
 	pin := 0.0
 	if d.Pin != nil {
-		pin = nominal(&d.Pin.Diameter) / 2
+		pin = service.Nominal(&d.Pin.Diameter) / 2
 	}
 	for i, p := range plates {
 		class := "cut lug"
@@ -341,7 +341,7 @@ func jointSection(d *service.LugDocument, r *service.Result) template.HTML {
 		c.rect(class, p.from, p.h.hole, p.to-p.from, p.h.upper-p.h.hole)
 		c.rect(class, p.from, -p.h.lower, p.to-p.from, p.h.lower-p.h.hole)
 		if p.bushing != nil && pin > 0 {
-			long := nominal(p.bushing.Length)
+			long := service.Nominal(p.bushing.Length)
 			if long == 0 {
 				long = p.to - p.from
 			}
@@ -352,7 +352,7 @@ func jointSection(d *service.LugDocument, r *service.Result) template.HTML {
 	}
 	if pin > 0 {
 		c.rect("pin", pinFrom, -pin, pinTo-pinFrom, 2*pin)
-		if inner := nominal(d.Pin.InnerDiameter) / 2; inner > 0 {
+		if inner := service.Nominal(d.Pin.InnerDiameter) / 2; inner > 0 {
 			c.rect("bore", pinFrom, -inner, pinTo-pinFrom, 2*inner)
 		}
 	}

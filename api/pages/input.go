@@ -132,7 +132,7 @@ func headTable(title string, h *service.LugHead, u service.Units) inputTable {
 	t.length("edge distance", &h.EdgeDistance, unit)
 	t.length("end radius", h.EndRadius, unit)
 	t.number("taper angle", h.TaperAngle, "°")
-	if h.Offset != nil && nominal(h.Offset) != 0 {
+	if h.Offset != nil && service.Nominal(h.Offset) != 0 {
 		t.length("offset of the hole", h.Offset, unit)
 	}
 	if h.SectionDepths != nil {
@@ -153,7 +153,7 @@ func bushingRows(t *inputTable, name string, b *service.LugBushing, unit string)
 		return
 	}
 	t.length(name+" length", b.Length, unit)
-	if nominal(b.Interference) != 0 {
+	if service.Nominal(b.Interference) != 0 {
 		t.length(name+" interference", b.Interference, unit)
 	}
 }
@@ -178,7 +178,7 @@ func lugInputs(d *service.LugDocument) []inputTable {
 	if d.Pin != nil {
 		pin := dimensions("Pin")
 		pin.length("diameter", &d.Pin.Diameter, unit)
-		if nominal(d.Pin.InnerDiameter) != 0 {
+		if service.Nominal(d.Pin.InnerDiameter) != 0 {
 			pin.length("bore", d.Pin.InnerDiameter, unit)
 		}
 		tables = append(tables, pin)

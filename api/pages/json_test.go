@@ -2,28 +2,35 @@ package pages_test
 
 import (
 	"encoding/json"
+	"slices"
 	"strings"
 	"testing"
 )
 
-// inputOf finds the input in a published case, or in the case of a title.
-func inputOf(t testing.TB, text []byte, title string) string {
+// publishedCase is a published case with what it asks.
+type publishedCase struct {
+	Title string          `json:"title"`
+	Input json.RawMessage `json:"input"`
+}
+
+// casesOf lists the cases of a file that have an input, one that is the file
+// itself first.
+func casesOf(t testing.TB, text []byte) []publishedCase {
 	t.Helper()
-	type one struct {
-		Title string          `json:"title"`
-		Input json.RawMessage `json:"input"`
-	}
 	var file struct {
-		one
-		Cases []one `json:"cases"`
+		publishedCase
+		Cases []publishedCase `json:"cases"`
 	}
 	if err := json.Unmarshal(text, &file); err != nil {
 		t.Fatal(err)
 	}
-	if title == "" && file.Input != nil {
-		return string(file.Input)
-	}
-	for _, c := range file.Cases {
+	return slices.DeleteFunc(append([]publishedCase{file.publishedCase}, file.Cases...), func(c publishedCase) bool { return c.Input == nil })
+}
+
+// inputOf finds the input of the first case whose title begins so.
+func inputOf(t testing.TB, text []byte, title string) string {
+	t.Helper()
+	for _, c := range casesOf(t, text) {
 		if strings.HasPrefix(c.Title, title) {
 			return string(c.Input)
 		}
@@ -32,23 +39,10 @@ func inputOf(t testing.TB, text []byte, title string) string {
 }
 
 // inputsOf finds all inputs of a file of published cases.
-func inputsOf(t testing.TB, text []byte) []string {
+func inputsOf(t testing.TB, text []byte) (all []string) {
 	t.Helper()
-	type one struct {
-		Input json.RawMessage `json:"input"`
-	}
-	var file struct {
-		one
-		Cases []one `json:"cases"`
-	}
-	if err := json.Unmarshal(text, &file); err != nil {
-		t.Fatal(err)
-	}
-	var all []string
-	for _, c := range append(file.Cases, file.one) {
-		if c.Input != nil {
-			all = append(all, string(c.Input))
-		}
+	for _, c := range casesOf(t, text) {
+		all = append(all, string(c.Input))
 	}
 	return all
 }

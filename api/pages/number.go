@@ -105,17 +105,6 @@ func length(l *service.Length) string {
 	return number(l.Plain)
 }
 
-// nominal is the dimension itself, 0 for none.
-func nominal(l *service.Length) float64 {
-	switch {
-	case l == nil:
-		return 0
-	case l.Object != nil:
-		return l.Object.Nominal
-	}
-	return l.Plain
-}
-
 // unit writes the name of a unit with its exponents raised; nothing for 1.
 func unit(name string) string {
 	if name == "1" {
