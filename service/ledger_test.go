@@ -20,13 +20,6 @@ import (
 	"jointledger/store/storetest"
 )
 
-// ticking is a clock that moves on by a second with each reading.
-type ticking struct{ at atomic.Int64 }
-
-func (c *ticking) Now() time.Time {
-	return time.Date(2026, 3, 1, 8, 0, 0, 0, time.UTC).Add(time.Duration(c.at.Add(1)) * time.Second)
-}
-
 // open opens a service on a store; it is closed with the test.
 func open(t testing.TB, store service.Store, signer service.Signer) *service.Service {
 	t.Helper()
@@ -35,7 +28,7 @@ func open(t testing.TB, store service.Store, signer service.Signer) *service.Ser
 		t.Fatal(err)
 	}
 	s, err := service.New(t.Context(), service.Setup{
-		Store: store, Clock: &ticking{}, Signer: signer, Policies: policies, Watch: service.Unwatched{},
+		Store: store, Clock: &storetest.Ticking{Step: time.Second}, Signer: signer, Policies: policies, Watch: service.Unwatched{},
 	})
 	if err != nil {
 		t.Fatal(err)

@@ -8,6 +8,7 @@ import (
 	"strings"
 	"sync"
 	"testing"
+	"time"
 
 	"jointledger/service"
 	"jointledger/service/ledger"
@@ -46,7 +47,7 @@ func openWith(t testing.TB, store service.Store, policies string, watch service.
 		t.Fatal(err)
 	}
 	s, err := service.New(t.Context(), service.Setup{
-		Store: store, Clock: &ticking{}, Signer: storetest.Signer(t), Policies: known, Watch: watch,
+		Store: store, Clock: &storetest.Ticking{Step: time.Second}, Signer: storetest.Signer(t), Policies: known, Watch: watch,
 	})
 	if err != nil {
 		t.Fatal(err)

@@ -108,14 +108,22 @@ func shot(ctx context.Context, t *testing.T, name string) {
 	}
 }
 
-// An auditor who was never here finds the record of a joint, reads it,
-// verifies it and prints it.
-func TestAuditorFindsReadsVerifiesAndPrintsInBrowser(t *testing.T) {
-	s, lug, _, _ := furnished(t)
+// browsed opens a browser on a site, and looks for what the browser complains
+// of.
+func browsed(t *testing.T, s *site) (context.Context, *httptest.Server) {
+	t.Helper()
 	server := httptest.NewServer(s.handler)
 	t.Cleanup(server.Close)
 	ctx := chromium(t)
 	watched(ctx, t)
+	return ctx, server
+}
+
+// An auditor who was never here finds the record of a joint, reads it,
+// verifies it and prints it.
+func TestAuditorFindsReadsVerifiesAndPrintsInBrowser(t *testing.T) {
+	s, lug, _, _ := furnished(t)
+	ctx, server := browsed(t, s)
 	var heading, verdict, least, verified string
 	run(ctx, t, "come", log.Enable(), chromedp.EmulateViewport(1100, 900), chromedp.Navigate(server.URL+"/"))
 	follow(ctx, t, "search", chromedp.SendKeys(`input[name=part]`, "SM-1200"), chromedp.SendKeys(`input[name=joint]`, "hinge-lower"), chromedp.SendKeys(`input[name=revision]`, "A"),
@@ -181,10 +189,7 @@ func textOfPDF(t *testing.T, pdf []byte, name string) []string {
 // The form redraws as one types, and works without a script too.
 func TestFormIsUsedInBrowser(t *testing.T) {
 	s := newSite(t)
-	server := httptest.NewServer(s.handler)
-	t.Cleanup(server.Close)
-	ctx := chromium(t)
-	watched(ctx, t)
+	ctx, server := browsed(t, s)
 	edit := func(name, text string) chromedp.Action {
 		return chromedp.Tasks{chromedp.Click(name), chromedp.KeyEvent("a", chromedp.KeyModifiers(2)), chromedp.KeyEvent(text)}
 	}
@@ -217,10 +222,7 @@ func TestFormIsUsedInBrowser(t *testing.T) {
 // everything, in every page.
 func TestNarrowAndByKeyboardInBrowser(t *testing.T) {
 	s, lug, pattern, splice := furnished(t)
-	server := httptest.NewServer(s.handler)
-	t.Cleanup(server.Close)
-	ctx := chromium(t)
-	watched(ctx, t)
+	ctx, server := browsed(t, s)
 	run(ctx, t, "start", log.Enable(), chromedp.EmulateViewport(360, 740))
 	for name, path := range map[string]string{
 		"home": "/", "lug": "/records/" + lug.ID, "pattern": "/records/" + pattern.ID, "splice": "/records/" + splice.ID, "part": "/parts?part=SM-1200", "materials": "/materials", "fasteners": "/fastener-types",
@@ -257,10 +259,7 @@ func TestNarrowAndByKeyboardInBrowser(t *testing.T) {
 func TestHostileTextsDoNothingInBrowser(t *testing.T) {
 	s := newSite(t)
 	r := s.record(t, hostile, hostile, hostile, service.Lug, strings.Replace(hingeLug, `"boom hinge, lower lug"`, quote(t, hostile), 1))
-	server := httptest.NewServer(s.handler)
-	t.Cleanup(server.Close)
-	ctx := chromium(t)
-	watched(ctx, t)
+	ctx, server := browsed(t, s)
 	var heading, margin string
 	run(ctx, t, "look", log.Enable(), chromedp.Navigate(server.URL+"/records/"+r.ID), chromedp.WaitVisible(`#proof`), chromedp.Text(`h1`, &heading),
 		emulation.SetEmulatedMedia().WithMedia("print"), chromedp.Evaluate(`[...document.styleSheets].find(s => s.href.endsWith("sheet.css")).cssRules[0].cssText`, &margin))

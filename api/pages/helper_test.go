@@ -9,7 +9,6 @@ import (
 	"net/http/httptest"
 	"os"
 	"strings"
-	"sync/atomic"
 	"testing"
 	"time"
 
@@ -17,13 +16,6 @@ import (
 	"jointledger/service"
 	"jointledger/store/storetest"
 )
-
-// ticking is a clock that moves on by a minute with each reading.
-type ticking struct{ at atomic.Int64 }
-
-func (c *ticking) Now() time.Time {
-	return time.Date(2026, 3, 1, 8, 0, 0, 0, time.UTC).Add(time.Duration(c.at.Add(1)) * time.Minute)
-}
 
 var (
 	ada = service.Caller{Name: "ada", Role: service.Analyst}
@@ -45,7 +37,7 @@ func newSite(t testing.TB) *site {
 		t.Fatal(err)
 	}
 	s, err := service.New(t.Context(), service.Setup{
-		Store: storetest.SQLite(t), Clock: &ticking{}, Signer: signer, Policies: policies, Watch: service.Unwatched{},
+		Store: storetest.SQLite(t), Clock: &storetest.Ticking{Step: time.Minute}, Signer: signer, Policies: policies, Watch: service.Unwatched{},
 	})
 	if err != nil {
 		t.Fatal(err)

@@ -68,15 +68,11 @@ func (b *bench) compare(c comparison) error {
 }
 
 func (b *bench) appendsPostgres(ctx context.Context) error {
-	cluster, err := storetest.NewCluster()
+	data, cluster, remove, err := b.ledgers()
 	if err != nil {
 		return err
 	}
-	defer func() { _ = cluster.Remove() }()
-	data, err := os.MkdirTemp(b.dir, "data-")
-	if err != nil {
-		return err
-	}
+	defer remove()
 	p, err := b.serve("--data", data, "--database-url", cluster.URL())
 	if err != nil {
 		return err

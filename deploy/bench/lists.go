@@ -18,20 +18,15 @@ import (
 	"jointledger/service/ledger"
 	"jointledger/service/strictjson"
 	"jointledger/store"
-	"jointledger/store/storetest"
 )
 
 // lists fills a ledger step by step and times what is asked of it at each step.
 func lists(ctx context.Context, b *bench) error {
-	data, err := os.MkdirTemp(b.dir, "data-")
+	data, cluster, remove, err := b.ledgers()
 	if err != nil {
 		return err
 	}
-	cluster, err := storetest.NewCluster()
-	if err != nil {
-		return err
-	}
-	defer func() { _ = cluster.Remove() }()
+	defer remove()
 	b.report.table(append([]string{"ledger", "records"}, questionNames()...)...)
 	for _, engine := range []struct {
 		name  string

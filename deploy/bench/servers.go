@@ -15,6 +15,8 @@ import (
 	"strings"
 	"syscall"
 	"time"
+
+	"jointledger/store/storetest"
 )
 
 // process is a server under measurement.
@@ -59,6 +61,18 @@ func launch(path, listen string, cmd *exec.Cmd) (*process, error) {
 		}
 		time.Sleep(time.Millisecond)
 	}
+}
+
+// ledgers makes a folder and a Postgres cluster for ledgers; the cluster is gone
+// after remove.
+func (b *bench) ledgers() (data string, cluster *storetest.Cluster, remove func(), err error) {
+	if data, err = os.MkdirTemp(b.dir, "data-"); err != nil {
+		return "", nil, nil, err
+	}
+	if cluster, err = storetest.NewCluster(); err != nil {
+		return "", nil, nil, err
+	}
+	return data, cluster, func() { _ = cluster.Remove() }, nil
 }
 
 // serve starts the program with a key on a ledger.

@@ -6,8 +6,6 @@ import (
 	"os"
 	"sync"
 	"time"
-
-	"jointledger/store/storetest"
 )
 
 // starts measures from the start of the process to its readiness, and what it
@@ -17,15 +15,11 @@ func starts(ctx context.Context, b *bench) error {
 	if err != nil {
 		return err
 	}
-	cluster, err := storetest.NewCluster()
+	data, cluster, remove, err := b.ledgers()
 	if err != nil {
 		return err
 	}
-	defer func() { _ = cluster.Remove() }()
-	data, err := os.MkdirTemp(b.dir, "data-")
-	if err != nil {
-		return err
-	}
+	defer remove()
 	b.report.table("ledger", "start to ready, ms", "spread", "idle, MiB", "under load, MiB at most", "")
 	for _, engine := range []struct {
 		name  string
