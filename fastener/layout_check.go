@@ -17,7 +17,7 @@ type span struct {
 type directed struct{ along, across span }
 
 // layoutFindings holds a pattern against a set of rules.
-func (p *PreparedPattern) layoutFindings(set RuleSet, edges [][]edgeDistance, near []neighbour) []strength.Finding {
+func (p *PreparedPattern) layoutFindings(set RuleSet, edges [][]edgeDistance, near []Neighbour) []strength.Finding {
 	var findings []strength.Finding
 	rows := SeveralRows
 	least := math.Inf(1)
@@ -68,11 +68,11 @@ func (p *PreparedPattern) layoutFindings(set RuleSet, edges [][]edgeDistance, ne
 				check(EdgeDistanceAlong, m.distance, f, plate.Thickness, subject, " in plate %q under load case %q", plate.ID, p.cases[m.loadCase].ID)
 			}
 		}
-		if near[i].index >= 0 {
-			other := p.pattern.Fasteners[near[i].index].ID
-			check(Pitch, near[i].distance, f, thinnest, subject, " to fastener %q", other)
+		if near[i].Index >= 0 {
+			other := p.pattern.Fasteners[near[i].Index].ID
+			check(Pitch, near[i].Distance, f, thinnest, subject, " to fastener %q", other)
 			if len(p.pattern.Plates) > 0 {
-				check(PitchMost, near[i].distance, f, thinnest, subject, " to fastener %q", other)
+				check(PitchMost, near[i].Distance, f, thinnest, subject, " to fastener %q", other)
 			}
 		}
 		if across == nil {

@@ -6,10 +6,10 @@ import (
 	"slices"
 )
 
-// neighbour is the nearest other fastener; the index is -1 where there is none.
-type neighbour struct {
-	index    int
-	distance float64
+// Neighbour is the nearest other fastener; the index is -1 where there is none.
+type Neighbour struct {
+	Index    int
+	Distance float64 // between the centres
 }
 
 // grove is a balanced k-d tree laid out in one slice of indices: the middle of
@@ -20,13 +20,13 @@ type grove struct {
 	byY       []bool // how the root at this place splits
 }
 
-// nearestNeighbours finds each fastener's nearest other one in O(n log² n),
+// NearestNeighbours finds each fastener's nearest other one in O(n log² n),
 // however they lie. Of equally near ones it returns any.
-func nearestNeighbours(fasteners []Fastener) []neighbour {
+func NearestNeighbours(fasteners []Fastener) []Neighbour {
 	g := plantGrove(fasteners)
-	near := make([]neighbour, len(fasteners))
+	near := make([]Neighbour, len(fasteners))
 	for i := range near {
-		near[i] = neighbour{-1, math.Inf(1)}
+		near[i] = Neighbour{-1, math.Inf(1)}
 		g.search(0, len(g.order), i, &near[i])
 	}
 	return near
@@ -114,7 +114,7 @@ func (g *grove) plant(from, to int) {
 	g.plant(middle+1, to)
 }
 
-func (g *grove) search(from, to, i int, best *neighbour) {
+func (g *grove) search(from, to, i int, best *Neighbour) {
 	if from >= to {
 		return
 	}
@@ -122,8 +122,8 @@ func (g *grove) search(from, to, i int, best *neighbour) {
 	f := &g.fasteners[i]
 	if root := int(g.order[middle]); root != i {
 		other := &g.fasteners[root]
-		if d := math.Hypot(other.X-f.X, other.Y-f.Y); d < best.distance {
-			*best = neighbour{root, d}
+		if d := math.Hypot(other.X-f.X, other.Y-f.Y); d < best.Distance {
+			*best = Neighbour{root, d}
 		}
 	}
 	ahead := f.X - g.at(middle, false)
@@ -132,13 +132,13 @@ func (g *grove) search(from, to, i int, best *neighbour) {
 	}
 	if ahead < 0 {
 		g.search(from, middle, i, best)
-		if -ahead < best.distance {
+		if -ahead < best.Distance {
 			g.search(middle+1, to, i, best)
 		}
 		return
 	}
 	g.search(middle+1, to, i, best)
-	if ahead <= best.distance {
+	if ahead <= best.Distance {
 		g.search(from, middle, i, best)
 	}
 }

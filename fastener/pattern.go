@@ -122,7 +122,7 @@ func PreparePattern(p Pattern, f strength.Factors, cases []PatternCase) (*Prepar
 	if len(p.Fasteners) == 0 {
 		return nil, append(faults, strength.Fault{Pointer: "/fasteners", Message: strength.Say("a pattern needs at least one fastener")})
 	}
-	near := nearestNeighbours(p.Fasteners)
+	near := NearestNeighbours(p.Fasteners)
 	faults = append(faults, coincidenceFaults(p.Fasteners, near)...)
 	if len(faults) > 0 {
 		return nil, faults
@@ -333,6 +333,7 @@ func (p *PreparedPattern) Cautions() []string {
 		"The attached member is taken as rigid: prying and the flexibility of flanges and plates are left out and may raise the tension and shear of single fasteners.",
 		"Each fastener is taken to fill its hole and to share by stiffness alone: clearances, friction and yielding are left out.",
 	}
+	// 3 D: common practice, no source.
 	if slices.ContainsFunc(p.checks, func(c strength.Check) bool { return c.Mode == strength.ShearOut }) {
 		cautions = append(cautions, "Shear-out runs to the outline as if no other hole stood in its way: where fasteners follow each other along the load at less than 3 D, it is not on the safe side; a rule of pitch tells.")
 	}

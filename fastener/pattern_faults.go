@@ -130,15 +130,15 @@ func (p *PreparedPattern) inputFaults() []strength.Fault {
 }
 
 // coincidenceFaults names fasteners that stand in the hole of an earlier one.
-func coincidenceFaults(fasteners []Fastener, near []neighbour) []strength.Fault {
+func coincidenceFaults(fasteners []Fastener, near []Neighbour) []strength.Fault {
 	var faults []strength.Fault
 	for i, n := range near {
-		if n.index < 0 || n.index > i || n.distance > strength.Within*fasteners[i].Diameter {
+		if n.Index < 0 || n.Index > i || n.Distance > strength.Within*fasteners[i].Diameter {
 			continue
 		}
 		faults = append(faults, strength.Fault{
 			Pointer: field("fasteners", i, "x"),
-			Message: strength.Say("fastener %q stands in the same place as fastener %q", fasteners[i].ID, fasteners[n.index].ID),
+			Message: strength.Say("fastener %q stands in the same place as fastener %q", fasteners[i].ID, fasteners[n.Index].ID),
 		})
 	}
 	return faults

@@ -5,7 +5,7 @@ import (
 )
 
 // allFindings gathers what is to be said, each thing once.
-func (p *PreparedPattern) allFindings(edges [][]edgeDistance, near []neighbour) []strength.Finding {
+func (p *PreparedPattern) allFindings(edges [][]edgeDistance, near []Neighbour) []strength.Finding {
 	var findings []strength.Finding
 	say := func(severity strength.Severity, code, subject, source string, m strength.Message) {
 		findings = append(findings, strength.Finding{Severity: severity, Code: code, Subject: subject, Message: m, Source: source})
@@ -15,13 +15,13 @@ func (p *PreparedPattern) allFindings(edges [][]edgeDistance, near []neighbour) 
 	}
 	for i, n := range near {
 		f := &p.pattern.Fasteners[i]
-		if n.index < 0 {
+		if n.Index < 0 {
 			continue
 		}
-		other := &p.pattern.Fasteners[n.index]
-		if least := (f.Diameter + other.Diameter) / 2; strength.AtMost(n.distance, least) {
+		other := &p.pattern.Fasteners[n.Index]
+		if least := (f.Diameter + other.Diameter) / 2; strength.AtMost(n.Distance, least) {
 			say(strength.Violation, "holes-overlap", "fastener "+f.ID, "", strength.Say(
-				"its hole runs into that of fastener %q: the centres are %v apart", other.ID, strength.Length.Of(n.distance)))
+				"its hole runs into that of fastener %q: the centres are %v apart", other.ID, strength.Length.Of(n.Distance)))
 		}
 	}
 	untyped := 0

@@ -501,15 +501,15 @@ func TestNearestNeighbours(t *testing.T) {
 			fasteners[i].X = float64(rapid.IntRange(-5, 5).Draw(t, "x"))
 			fasteners[i].Y = float64(rapid.IntRange(-20, 20).Draw(t, "y"))
 		}
-		for i, got := range nearestNeighbours(fasteners) {
+		for i, got := range NearestNeighbours(fasteners) {
 			want := math.Inf(1)
 			for j := range fasteners {
 				if j != i {
 					want = min(want, math.Hypot(fasteners[i].X-fasteners[j].X, fasteners[i].Y-fasteners[j].Y))
 				}
 			}
-			if got.distance != want {
-				t.Fatalf("fastener %d: %g, want %g", i, got.distance, want)
+			if got.Distance != want {
+				t.Fatalf("fastener %d: %g, want %g", i, got.Distance, want)
 			}
 		}
 	})

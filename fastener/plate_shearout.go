@@ -15,7 +15,8 @@ type shearOutCheck struct {
 	why   *strength.Message
 }
 
-// The planes of shear-out start on the hole at 40° to the load.
+// The planes of shear-out start on the hole at 40° to the load: common practice,
+// no source, as for lugs.
 var sinShearOut, cosShearOut = math.Sincos(40 * math.Pi / 180)
 
 // addShearOut adds the shear-out check of plate k at fastener i. Without an

@@ -187,6 +187,18 @@ var groupOptions = map[string][]OptionItem{
 
 var applySpecial = OptionItem{Name: "apply_special", Meaning: "fitting and special factors act on this method too", Type: "boolean", Default: false}
 
+// Neighbour is the nearest other fastener of one.
+type Neighbour = fastener.Neighbour
+
+// Neighbours finds the nearest other fastener of each, in the document's units.
+func (d *GroupDocument) Neighbours() []Neighbour {
+	centres := make([]fastener.Fastener, len(d.Fasteners))
+	for i, f := range d.Fasteners {
+		centres[i] = fastener.Fastener{X: f.X, Y: f.Y}
+	}
+	return fastener.NearestNeighbours(centres)
+}
+
 // pattern turns the document into N, mm and MPa.
 func (d *GroupDocument) pattern() fastener.Pattern {
 	mm, stress, stiffness := d.Units.scale(strength.Length), d.Units.scale(strength.Stress), d.Units.scale(strength.Stiffness)

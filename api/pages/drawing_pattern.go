@@ -42,7 +42,8 @@ func patternPlan(d *service.GroupDocument, r *service.Result) template.HTML {
 	for i := range shares {
 		most = max(most, shares[i].ShearResultant)
 	}
-	spacing := patternSpacing(d)
+	near := d.Neighbours()
+	spacing := patternSpacing(d, near)
 	if most > 0 {
 		for i, f := range d.Fasteners {
 			if i < len(shares) {
@@ -57,7 +58,7 @@ func patternPlan(d *service.GroupDocument, r *service.Result) template.HTML {
 		}
 		c.circle(class, f.X, f.Y, f.Diameter/2)
 	}
-	c.brokenRules(d, r)
+	c.brokenRules(d, r, near)
 	few := len(d.Fasteners) <= 40
 	long := 0.9 * spacing * c.scale
 	for i, f := range d.Fasteners {
@@ -85,31 +86,15 @@ func patternPlan(d *service.GroupDocument, r *service.Result) template.HTML {
 
 // patternSpacing is the least distance between two fasteners, or what stands
 // for it.
-func patternSpacing(d *service.GroupDocument) float64 {
+func patternSpacing(d *service.GroupDocument, near []service.Neighbour) float64 {
 	least := math.Inf(1)
-	for i := range d.Fasteners {
-		if j, distance := nearest(d, i); j >= 0 {
-			least = min(least, distance)
-		}
+	for _, n := range near {
+		least = min(least, n.Distance)
 	}
 	if math.IsInf(least, 1) || least == 0 {
 		return 4 * d.Fasteners[0].Diameter
 	}
 	return least
-}
-
-// nearest finds the fastener closest to another; -1 for none.
-func nearest(d *service.GroupDocument, i int) (int, float64) {
-	at, least := -1, math.Inf(1)
-	for j := range d.Fasteners {
-		if j == i {
-			continue
-		}
-		if distance := math.Hypot(d.Fasteners[j].X-d.Fasteners[i].X, d.Fasteners[j].Y-d.Fasteners[i].Y); distance < least {
-			at, least = j, distance
-		}
-	}
-	return at, least
 }
 
 // drawnShares are those of the governing load case, else of the first listed.
@@ -125,7 +110,7 @@ func drawnShares(r *service.Result) ([]service.FastenerShare, string) {
 }
 
 // brokenRules draws each edge distance and pitch that a finding is about.
-func (c *canvas) brokenRules(d *service.GroupDocument, r *service.Result) {
+func (c *canvas) brokenRules(d *service.GroupDocument, r *service.Result, near []service.Neighbour) {
 	if r == nil {
 		return
 	}
@@ -146,7 +131,7 @@ func (c *canvas) brokenRules(d *service.GroupDocument, r *service.Result) {
 				c.line(class, f.X, f.Y, x, y)
 			}
 		case "pitch":
-			if j, _ := nearest(d, i); j >= 0 {
+			if j := near[i].Index; j >= 0 {
 				c.line(class, f.X, f.Y, d.Fasteners[j].X, d.Fasteners[j].Y)
 			}
 		}
