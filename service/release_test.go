@@ -592,24 +592,16 @@ func appendBytes(t testing.TB, store service.Store, signer service.Signer, entri
 	if err != nil {
 		t.Fatal(err)
 	}
-	batch := service.Batch{Base: head}
-	var leaves []ledger.Hash
+	var made []service.Entry
 	for _, text := range entries {
 		e, err := service.EntryOf([]byte(text))
 		if err != nil {
 			t.Fatal(err)
 		}
-		e.Index = head.Size + int64(len(leaves))
-		batch.Entries, leaves = append(batch.Entries, e), append(leaves, e.Leaf)
+		made = append(made, e)
 	}
-	hashes, _, root, err := ledger.Grow(ledger.Tree{Size: head.Size, Root: head.Root}, leaves, func(indexes []int64) ([]ledger.Hash, error) {
-		return store.Hashes(ctx, indexes)
-	})
+	batch, err := storetest.BatchOn(ctx, store, signer, head, made)
 	if err != nil {
-		t.Fatal(err)
-	}
-	batch.Hashes, batch.Head = hashes, service.Head{Size: head.Size + int64(len(leaves)), Root: root}
-	if batch.Head.Checkpoint, err = signer.Checkpoint(batch.Head.Size, root); err != nil {
 		t.Fatal(err)
 	}
 	if err := store.Append(ctx, batch); err != nil {

@@ -106,11 +106,9 @@ func tryAppend(t testing.TB, s service.Store, entries ...service.Entry) error {
 	if err != nil {
 		return err
 	}
-	b, err := batchOn(t.Context(), s, head, entries)
+	key, _ := signer(t)
+	b, err := storetest.BatchOn(t.Context(), s, key, head, entries)
 	if err != nil {
-		return err
-	}
-	if b.Head, err = sign(t, b.Head); err != nil {
 		return err
 	}
 	return s.Append(t.Context(), b)

@@ -1,7 +1,6 @@
 package store_test
 
 import (
-	"context"
 	"crypto/sha256"
 	"errors"
 	"fmt"
@@ -10,6 +9,7 @@ import (
 
 	"jointledger/service"
 	"jointledger/service/ledger"
+	"jointledger/store/storetest"
 )
 
 const origin = "ledger.example.org/saltmarsh"
@@ -72,38 +72,12 @@ func withdrawal(t testing.TB, by, n int, target string) service.Entry {
 // on makes a batch of entries on a head.
 func on(t testing.TB, s service.Store, base service.Head, entries ...service.Entry) service.Batch {
 	t.Helper()
-	b, err := batchOn(t.Context(), s, base, entries)
-	if err != nil {
-		t.Fatal(err)
-	}
-	signed, err := sign(t, b.Head)
-	if err != nil {
-		t.Fatal(err)
-	}
-	b.Head = signed
-	return b
-}
-
-func batchOn(ctx context.Context, s service.Store, base service.Head, entries []service.Entry) (service.Batch, error) {
-	b := service.Batch{Base: base}
-	leaves := make([]ledger.Hash, len(entries))
-	for i, e := range entries {
-		e.Index = base.Size + int64(i)
-		leaves[i] = e.Leaf
-		b.Entries = append(b.Entries, e)
-	}
-	hashes, _, root, err := ledger.Grow(ledger.Tree{Size: base.Size, Root: base.Root}, leaves, func(indexes []int64) ([]ledger.Hash, error) {
-		return s.Hashes(ctx, indexes)
-	})
-	b.Hashes, b.Head = hashes, service.Head{Size: base.Size + int64(len(entries)), Root: root}
-	return b, err
-}
-
-func sign(t testing.TB, head service.Head) (service.Head, error) {
 	key, _ := signer(t)
-	checkpoint, err := key.Checkpoint(head.Size, head.Root)
-	head.Checkpoint = checkpoint
-	return head, err
+	b, err := storetest.BatchOn(t.Context(), s, key, base, entries)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return b
 }
 
 // put appends entries to a log that nobody else appends to.

@@ -18,6 +18,7 @@ import (
 	"jointledger/service/ledger"
 	"jointledger/service/strictjson"
 	"jointledger/store"
+	"jointledger/store/storetest"
 )
 
 // lists fills a ledger step by step and times what is asked of it at each step.
@@ -208,25 +209,16 @@ func (f *filler) fill(ctx context.Context, to service.Store, records int) error 
 
 // batch makes the next records, up to the signed head that they leave.
 func (f *filler) batch(ctx context.Context, to service.Store, head service.Head, records int) (service.Batch, error) {
-	batch := service.Batch{Base: head}
-	var leaves []ledger.Hash
+	var entries []service.Entry
 	for range records {
 		entry, err := f.entry(f.made)
 		if err != nil {
-			return batch, err
+			return service.Batch{}, err
 		}
 		f.made++
-		entry.Index = head.Size + int64(len(leaves))
-		batch.Entries, leaves = append(batch.Entries, entry), append(leaves, entry.Leaf)
+		entries = append(entries, entry)
 	}
-	read := func(indexes []int64) ([]ledger.Hash, error) { return to.Hashes(ctx, indexes) }
-	hashes, _, root, err := ledger.Grow(ledger.Tree{Size: head.Size, Root: head.Root}, leaves, read)
-	if err != nil {
-		return batch, err
-	}
-	batch.Hashes, batch.Head = hashes, service.Head{Size: head.Size + int64(len(leaves)), Root: root}
-	batch.Head.Checkpoint, err = f.signer.Checkpoint(batch.Head.Size, root)
-	return batch, err
+	return storetest.BatchOn(ctx, to, f.signer, head, entries)
 }
 
 func (f *filler) entry(n int) (service.Entry, error) {
