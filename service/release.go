@@ -105,9 +105,13 @@ func (s *Service) Judge(ctx context.Context, caller Caller, body []byte, dryRun 
 	if err := strictjson.Decode(body, &request); err != nil {
 		return nil, false, malformed(err, "")
 	}
+	return s.judgeRequest(ctx, caller, &request, dryRun, idempotency)
+}
+
+func (s *Service) judgeRequest(ctx context.Context, caller Caller, request *releaseRequest, dryRun bool, idempotency Idempotency) (*Decision, bool, error) {
 	setDefault(&request.Policy, DefaultPolicy)
 	var f faults
-	f.check(&request)
+	f.check(request)
 	first := map[string]bool{}
 	for i, j := range request.Joints {
 		if first[j.Joint] {
@@ -127,7 +131,7 @@ func (s *Service) Judge(ctx context.Context, caller Caller, body []byte, dryRun 
 		return nil, false, err
 	}
 	for range mostJudgements {
-		decision, again, err := s.judgeOnce(ctx, caller, &request, policy, digest, dryRun, idempotency)
+		decision, again, err := s.judgeOnce(ctx, caller, request, policy, digest, dryRun, idempotency)
 		if !errors.Is(err, errMoved) {
 			return decision, again, s.fail(err)
 		}
@@ -150,11 +154,7 @@ func (s *Service) GateAsRecorded(ctx context.Context, caller Caller, part, revis
 			request.Joints = append(request.Joints, releaseJoint{r.Joint, r.GeometryDigest})
 		}
 	}
-	body, err := strictjson.Encode(request)
-	if err != nil {
-		return nil, err
-	}
-	decision, _, err := s.Judge(ctx, caller, body, true, Idempotency{})
+	decision, _, err := s.judgeRequest(ctx, caller, &request, true, Idempotency{})
 	return decision, err
 }
 

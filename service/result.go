@@ -2,7 +2,6 @@ package service
 
 import (
 	"cmp"
-	"hash/maphash"
 	"slices"
 	"strings"
 
@@ -333,8 +332,8 @@ func (a assembly) workings(kept []place) []Working {
 // distinct keeps steps in the order of their coming, each once.
 type distinct struct {
 	list []strength.Working
-	next []int32          // of list: the one before it of the same outline, plus one
-	last map[uint64]int32 // by the hash of an outline: the last in list, plus one; nil of a short list
+	next []int32           // of list: the one before it of the same outline, plus one
+	last map[outline]int32 // the last in list, plus one; nil of a short list
 }
 
 // outline is what most steps differ in: hashing the whole of them, texts of
@@ -347,10 +346,8 @@ type outline struct {
 	value                              float64
 }
 
-var outlineSeed = maphash.MakeSeed()
-
-func hashOf(w *strength.Working) uint64 {
-	return maphash.Comparable(outlineSeed, outline{w.Member, w.Fastener, w.LoadCase, w.Symbol, w.Row, w.Mode, w.Level, w.Value})
+func outlineOf(w *strength.Working) outline {
+	return outline{w.Member, w.Fastener, w.LoadCase, w.Symbol, w.Row, w.Mode, w.Level, w.Value}
 }
 
 // A list of up to shortList steps, which most answers have, is searched through
@@ -378,7 +375,7 @@ func (d *distinct) has(w *strength.Working) bool {
 		}
 		return false
 	}
-	for at := d.last[hashOf(w)]; at > 0; at = d.next[at-1] {
+	for at := d.last[outlineOf(w)]; at > 0; at = d.next[at-1] {
 		if d.list[at-1] == *w {
 			return true
 		}
@@ -387,16 +384,16 @@ func (d *distinct) has(w *strength.Working) bool {
 }
 
 // index makes the steps of a list that is not short any more found by their
-// hash.
+// outlines.
 func (d *distinct) index() {
 	if len(d.list) <= shortList {
 		return
 	}
 	if d.last == nil {
-		d.last = make(map[uint64]int32, 4*shortList)
+		d.last = make(map[outline]int32, 4*shortList)
 	}
 	for i := len(d.next); i < len(d.list); i++ {
-		key := hashOf(&d.list[i])
+		key := outlineOf(&d.list[i])
 		d.next = append(d.next, d.last[key])
 		d.last[key] = int32(i + 1)
 	}
@@ -406,10 +403,10 @@ func (d *distinct) index() {
 // step, which must stay as it is.
 func (u Units) working(w *strength.Working) Working {
 	return Working{
-		Member: w.Member, Fastener: part(&w.Fastener), Row: row(w.Row), Method: part(&w.Method),
-		Mode: modeTexts[w.Mode], Level: levelTexts[w.Level], LoadCase: part(&w.LoadCase),
+		Member: w.Member, Fastener: textAt(&w.Fastener), Row: row(w.Row), Method: textAt(&w.Method),
+		Mode: modeTexts[w.Mode], Level: levelTexts[w.Level], LoadCase: textAt(&w.LoadCase),
 		Symbol: w.Symbol, Value: u.out(w.Value, w.Unit), Unit: u.name(w.Unit),
-		Equation: part(&w.Equation), Source: part(&w.Source), Mark: w.Mark.String(),
+		Equation: textAt(&w.Equation), Source: textAt(&w.Source), Mark: w.Mark.String(),
 	}
 }
 
@@ -430,14 +427,6 @@ func textsOf[T interface {
 	return texts
 }
 
-// part is null for an empty text, and else the text where it stands.
-func part(s *string) *string {
-	if *s == "" {
-		return nil
-	}
-	return s
-}
-
 // clone copies an optional number out of where it will be overwritten.
 func clone(x *float64) *float64 {
 	if x == nil {
@@ -448,11 +437,14 @@ func clone(x *float64) *float64 {
 }
 
 // text is null for none.
-func text(s string) *string {
-	if s == "" {
+func text(s string) *string { return textAt(&s) }
+
+// textAt is null for an empty text, and else the text where it stands.
+func textAt(s *string) *string {
+	if *s == "" {
 		return nil
 	}
-	return &s
+	return s
 }
 
 // row is null for none.
