@@ -304,7 +304,8 @@ func TestFastenersInBothUnits(t *testing.T) {
 		}
 		c.do(t, post(what[0], body)).decode(t, http.StatusOK, &us)
 		c.do(t, post(what[0], inSI(t, body))).decode(t, http.StatusOK, &si)
-		if us.Result != si.Result || math.Abs(us.Value*25.4-si.Value) > 1e-9*si.Value || math.Abs(us.After.Peak-si.After.Peak) > 1e-4 {
+		if us.Result != si.Result || math.Abs(us.Value*25.4-si.Value) > 1e-9*si.Value || math.Abs(us.After.Peak-si.After.Peak) > 1e-4 ||
+			math.Abs(us.After.Volume*25.4*25.4*25.4-si.After.Volume) > 1e-4*si.After.Volume || us.Value == 0 && us.After.Volume == 0 {
 			t.Errorf("%s: %+v, in SI %+v", what[0], us, si)
 		}
 	}

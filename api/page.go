@@ -22,7 +22,7 @@ func (v *server) mountPages(e *echo.Echo) {
 		},
 		Report: func(r *http.Request, w http.ResponseWriter, err error) {
 			v.options.Log.LogAttrs(r.Context(), slog.LevelError, "request failed",
-				slog.String("request", w.Header().Get(requestIDHeader)), slog.String("error", err.Error()))
+				append(traceOf(r.Header).attributes(w.Header().Get(requestIDHeader)), slog.String("error", err.Error()))...)
 		},
 	})
 	handler := echo.WrapHandler(p)
@@ -35,7 +35,7 @@ func (v *server) mountPages(e *echo.Echo) {
 
 // admit finds out who visits a page.
 func (v *server) admit(w http.ResponseWriter, r *http.Request, session string) (service.Caller, error) {
-	caller := service.Caller{Name: "local", Role: service.Local}
+	caller := local
 	if mode, _ := r.Context().Value(modeKey{}).(mode); !mode.open {
 		if mode.err != nil {
 			return service.Caller{}, mode.err // perhaps nobody need sign in

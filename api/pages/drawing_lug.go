@@ -9,9 +9,12 @@ import (
 	"jointledger/service"
 )
 
-// Shear-out planes leave the hole so many degrees from the axis, as the
-// workings have them.
-const shearPlaneAngle = 40 * math.Pi / 180
+// Shear-out planes leave the hole so many degrees from the axis: common practice,
+// no source, as the workings have them.
+const (
+	shearPlaneDegrees = 40
+	shearPlaneAngle   = shearPlaneDegrees * math.Pi / 180
+)
 
 // head is the outline of one lug, x from the hole centre toward the free end.
 type head struct {

@@ -250,6 +250,9 @@ func TestPatternIsDrawnAsGiven(t *testing.T) {
 	svg := string(pages.PatternPlan(r.Group, r.Result))
 	circles := drawn(t, svg, "fastener")
 	want := [][3]float64{{0, 0, 0.125}, {2, 0, 0.125}, {0, 1.5, 0.125}, {2, 1.5, 0.125}, {2, 2.1, 0.15625}}
+	if len(circles) != len(want) {
+		t.Fatalf("%d fasteners are drawn, want %d", len(circles), len(want))
+	}
 	for i, c := range circles {
 		got := [3]float64{c.number(t, "cx"), c.number(t, "cy"), c.number(t, "r")}
 		if got != want[i] {

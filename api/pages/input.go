@@ -1,6 +1,7 @@
 package pages
 
 import (
+	"fmt"
 	"html/template"
 	"strings"
 
@@ -223,7 +224,7 @@ func lugFigures(d *service.LugDocument, r *service.Result) []figure {
 
 // governs says what the mark in a drawing of a head means.
 func governs(r *service.Result, head string) string {
-	text := " Dashed: the shear-out planes, 40° from the axis."
+	text := fmt.Sprintf(" Dashed: the shear-out planes, %d° from the axis.", shearPlaneDegrees)
 	if r.Governing != nil && sameMember(r.Governing.Member, head) {
 		text += " Heavy: where the governing check looks, " + words(r.Governing.Mode) + "."
 	}

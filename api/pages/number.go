@@ -1,6 +1,7 @@
 package pages
 
 import (
+	"html"
 	"html/template"
 	"math"
 	"strconv"
@@ -146,8 +147,6 @@ func symbol(s string) template.HTML {
 	return template.HTML("<i>" + escape(name) + "</i><sub>" + escape(index) + "</sub>")
 }
 
-var escaper = strings.NewReplacer("&", "&amp;", "<", "&lt;", ">", "&gt;", `"`, "&#34;", "'", "&#39;")
-
 // escape makes a text safe in HTML and in the attributes of SVG. Characters
 // that XML does not know are replaced.
 func escape(s string) string {
@@ -157,7 +156,7 @@ func escape(s string) string {
 		}
 		return r
 	}, s)
-	return escaper.Replace(s)
+	return html.EscapeString(s)
 }
 
 // equation sets a formula of the workings: indices lowered, exponents raised,

@@ -1,6 +1,7 @@
 package pages
 
 import (
+	"cmp"
 	"html/template"
 	"math"
 	"slices"
@@ -214,15 +215,7 @@ func chartPlot(chart *service.Chart) template.HTML {
 			ends = append(ends, end{a.x(last[0]), a.y(last[1]), *curve.At})
 		}
 	}
-	slices.SortFunc(ends, func(p, q end) int {
-		if p.y < q.y {
-			return -1
-		}
-		if p.y > q.y {
-			return 1
-		}
-		return 0
-	})
+	slices.SortFunc(ends, func(p, q end) int { return cmp.Compare(p.y, q.y) })
 	for _, e := range ends {
 		y := max(e.y+4, lastY+13)
 		if y > a.height-6 {

@@ -120,7 +120,7 @@ var trials = map[service.Kind]struct {
 }{
 	service.Lug: {"/v1/lugs", map[string]string{
 		"units": "SI", "title": "SM-214 boom hinge", "shape": "round", "width": "80", "thickness": "12", "hole_diameter": "20", "edge_distance": "40",
-		"taper_angle": "", "offset": "", "material": "7050-T7451-plate-0.250-1.500-L", "pin_diameter": "20", "pin_material": "", "bushing_material": "",
+		"taper_angle": "", "offset": "", "material": "7050-T7451-plate-0.250-1.500-L", "pin_diameter": "20", "pin_material": "alloy-steel-125-ksi", "bushing_material": "",
 		"clevis_thickness": "7", "gap": "0.5", "clevis_material": "7050-T7451-plate-0.250-1.500-L", "ultimate": "1.5", "fitting": "1.15",
 		"load_cases": "landing limit 42000 0\nbraking limit 30000 0", "methods": "elementary",
 	}, readLug},
@@ -270,13 +270,6 @@ func (p *Pages) tryOf(v *visit) (*tryContent, service.Kind, error) {
 		return nil, "", err
 	}
 	c.Materials = materials.Items
-	if c.Form["pin_material"] == "" && kind == service.Lug && !typed {
-		if i := slices.IndexFunc(c.Materials, func(m service.MaterialItem) bool {
-			return strings.HasPrefix(m.ID, "4") || strings.Contains(m.ID, "steel")
-		}); i >= 0 {
-			c.Form["pin_material"] = c.Materials[i].ID
-		}
-	}
 	return c, kind, nil
 }
 
