@@ -29,11 +29,9 @@ func (r *report) row(cells ...any) {
 	r.WriteString("|\n")
 }
 
-// figure writes three figures.
+// figure writes at least three figures.
 func figure(x float64) string {
 	switch size := math.Abs(x); {
-	case size >= 1000:
-		return fmt.Sprintf("%.0f", x)
 	case size >= 100:
 		return fmt.Sprintf("%.0f", x)
 	case size >= 10:
